@@ -44,7 +44,11 @@ export class InputError extends Error {
   readonly code: ErrorCode
   readonly detail: Readonly<Record<string, unknown>>
 
-  constructor(code: ErrorCode, message: string, options: { detail?: Record<string, unknown>; cause?: unknown } = {}) {
+  constructor(
+    code: ErrorCode,
+    message: string,
+    options: { detail?: Record<string, unknown>; cause?: unknown } = {},
+  ) {
     super(message, options.cause === undefined ? undefined : { cause: options.cause })
     this.name = 'InputError'
     this.code = code

@@ -1,5 +1,6 @@
 export * from './channels.ts'
 export * from './problem.ts'
+export * from './reading.ts'
 export * from './receipt.ts'
 export * from './score-sheet.ts'
 export * from './settings.ts'

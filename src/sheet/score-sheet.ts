@@ -99,12 +99,24 @@ const StaticOffset = Type.Object({
   method: Type.Union([Type.String(), Type.Null()]),
   estimates: Type.Array(Estimate),
   byExponent: Type.Array(
-    Type.Object({ exponent: Type.Number(), estimateDeg: Nullable('d at this exponent'), standingMisalignmentDeg: Nullable('m at this exponent') }),
+    Type.Object({
+      exponent: Type.Number(),
+      estimateDeg: Nullable('d at this exponent'),
+      standingMisalignmentDeg: Nullable('m at this exponent'),
+    }),
   ),
-  changes: Type.Array(Type.Object({ at: IsoTime('when'), fromDeg: Nullable('before'), toDeg: Nullable('after') })),
+  changes: Type.Array(
+    Type.Object({ at: IsoTime('when'), fromDeg: Nullable('before'), toDeg: Nullable('after') }),
+  ),
   signChecked: Type.Boolean(),
-  vaneLogged: Type.Union([Type.Literal('beforeCorrection'), Type.Literal('afterCorrection'), Type.Literal('unknown')]),
-  furtherDays: Nullable('more days of such data until the verdict could be given; null: days will not settle it, or none are needed'),
+  vaneLogged: Type.Union([
+    Type.Literal('beforeCorrection'),
+    Type.Literal('afterCorrection'),
+    Type.Literal('unknown'),
+  ]),
+  furtherDays: Nullable(
+    'more days of such data until the verdict could be given; null: days will not settle it, or none are needed',
+  ),
   furtherNote: Type.String(),
   rows: Count,
   days: Count,
@@ -153,7 +165,12 @@ export const TurbineSheet = Type.Object(
     turbine: Type.String(),
     model: Type.Union([Type.String(), Type.Null()]),
     ratedPowerKw: Nullable('as given or worked out from the log'),
-    verdict: Type.Union([Type.Literal('offset'), Type.Literal('aligned'), Type.Literal('undetermined'), Type.Literal('blocked')]),
+    verdict: Type.Union([
+      Type.Literal('offset'),
+      Type.Literal('aligned'),
+      Type.Literal('undetermined'),
+      Type.Literal('blocked'),
+    ]),
     reason: Type.String({ description: 'one sentence' }),
     reasonCode: Type.String({ description: 'stable code of the reason' }),
     rows: Type.Object({ accepted: Count, used: Count, setAside: Type.Array(SetAside) }),
@@ -212,14 +229,20 @@ export const ScoreSheet = Type.Object(
   {
     replay: Type.String(),
     site: Type.Union([Type.String(), Type.Null()]),
-    window: Type.Object({ from: NullableIsoTime('first row'), to: NullableIsoTime('end of the last row'), intervalS: Nullable('s') }),
+    window: Type.Object({
+      from: NullableIsoTime('first row'),
+      to: NullableIsoTime('end of the last row'),
+      intervalS: Nullable('s'),
+    }),
     rows: Type.Object({ received: Count, accepted: Count, duplicate: Count, rejected: Count }),
     receipt: Receipt,
     provenance: Type.Object({
       version: Type.String(),
       node: Type.String(),
       settings: ScoringSettings,
-      reading: Type.Record(Type.String(), Type.Unknown(), { description: 'how the log was read: zone, stamp, columns' }),
+      reading: Type.Record(Type.String(), Type.Unknown(), {
+        description: 'how the log was read: zone, stamp, columns',
+      }),
       inputs: Type.Array(Type.Object({ name: Type.String(), sha256: Type.String(), rows: Count })),
       seed: Type.Integer(),
     }),

@@ -4,23 +4,65 @@ import { Nullable } from './common.ts'
 /** What the estimation can be told: printed in every sheet, so that it can be made again. */
 export const ScoringSettings = Type.Object(
   {
-    exponent: Type.Number({ minimum: 0.5, maximum: 6, description: 'p: power below rated follows the power curve at u cos(g)^(p/3)' }),
-    actionThresholdDeg: Type.Number({ minimum: 0.1, maximum: 45, description: 'standing misalignment from which someone should act' }),
-    resamples: Type.Integer({ minimum: 200, maximum: 100000, description: 'resamples of the day bootstrap, for each block length' }),
+    exponent: Type.Number({
+      minimum: 0.5,
+      maximum: 6,
+      description: 'p: power below rated follows the power curve at u cos(g)^(p/3)',
+    }),
+    actionThresholdDeg: Type.Number({
+      minimum: 0.1,
+      maximum: 45,
+      description: 'standing misalignment from which someone should act',
+    }),
+    resamples: Type.Integer({
+      minimum: 200,
+      maximum: 100000,
+      description: 'resamples of the day bootstrap, for each block length',
+    }),
     seed: Type.Integer({ minimum: 0, maximum: 4294967295, description: 'seed of the day weights' }),
-    assumedResponsePctPerDeg: Nullable('response of the anemometer to the vane, % per degree, taken as known; null: unknown'),
+    assumedResponsePctPerDeg: Nullable(
+      'response of the anemometer to the vane, % per degree, taken as known; null: unknown',
+    ),
     responseSpreadPctPerDeg: Type.Number({
       minimum: 0,
       maximum: 2,
       description: 'standard deviation of the unknown response of the anemometer to the vane, % per degree',
     }),
-    windMinMs: Type.Number({ minimum: 2, maximum: 12, description: 'lowest wind speed of the rows used for the static offset, m/s' }),
-    vaneMaxDeg: Type.Number({ minimum: 5, maximum: 60, description: 'largest |vane - median vane| of the rows used for the static offset' }),
-    yawMoveMaxDeg: Type.Number({ minimum: 0.5, maximum: 90, description: 'a yaw of more inside one interval sets the row aside' }),
-    fastDirectionDeg: Type.Number({ minimum: 1, maximum: 180, description: 'a change of direction against the row before of more sets the row aside' }),
-    fastSpeedMs: Type.Number({ minimum: 0.1, maximum: 30, description: 'a change of wind speed against the row before of more sets the row aside, m/s' }),
-    minimumRows: Type.Integer({ minimum: 20, maximum: 100000, description: 'fewest rows a static offset is estimated from' }),
-    minimumDays: Type.Integer({ minimum: 2, maximum: 400, description: 'fewest days with used rows a static offset is estimated from' }),
+    windMinMs: Type.Number({
+      minimum: 2,
+      maximum: 12,
+      description: 'lowest wind speed of the rows used for the static offset, m/s',
+    }),
+    vaneMaxDeg: Type.Number({
+      minimum: 5,
+      maximum: 60,
+      description: 'largest |vane - median vane| of the rows used for the static offset',
+    }),
+    yawMoveMaxDeg: Type.Number({
+      minimum: 0.5,
+      maximum: 90,
+      description: 'a yaw of more inside one interval sets the row aside',
+    }),
+    fastDirectionDeg: Type.Number({
+      minimum: 1,
+      maximum: 180,
+      description: 'a change of direction against the row before of more sets the row aside',
+    }),
+    fastSpeedMs: Type.Number({
+      minimum: 0.1,
+      maximum: 30,
+      description: 'a change of wind speed against the row before of more sets the row aside, m/s',
+    }),
+    minimumRows: Type.Integer({
+      minimum: 20,
+      maximum: 100000,
+      description: 'fewest rows a static offset is estimated from',
+    }),
+    minimumDays: Type.Integer({
+      minimum: 2,
+      maximum: 400,
+      description: 'fewest days with used rows a static offset is estimated from',
+    }),
   },
   { additionalProperties: false, description: 'Settings in force' },
 )

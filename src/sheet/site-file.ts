@@ -6,25 +6,42 @@ const Name = Type.String({ minLength: 1, maxLength: 100, pattern: '^[^\\u0000-\\
 export const TurbineSetup = Type.Object(
   {
     turbine: Name,
-    model: Type.Optional(Type.String({ maxLength: 100, description: 'turbines of one model share what is learned about their anemometers' })),
+    model: Type.Optional(
+      Type.String({
+        maxLength: 100,
+        description: 'turbines of one model share what is learned about their anemometers',
+      }),
+    ),
     ratedPowerKw: Type.Optional(Type.Number({ exclusiveMinimum: 0, maximum: 50000, description: 'kW' })),
     rotorDiameterM: Type.Optional(Type.Number({ exclusiveMinimum: 0, maximum: 500 })),
     hubHeightM: Type.Optional(Type.Number({ exclusiveMinimum: 0, maximum: 500 })),
-    altitudeM: Type.Optional(Type.Number({ minimum: -500, maximum: 6000, description: 'of the foot of the tower, above sea level' })),
+    altitudeM: Type.Optional(
+      Type.Number({ minimum: -500, maximum: 6000, description: 'of the foot of the tower, above sea level' }),
+    ),
     eastingM: Type.Optional(Type.Number()),
     northingM: Type.Optional(Type.Number()),
     vane: Type.Optional(
       Type.Object(
         {
           logged: Type.Optional(
-            Type.Union([Type.Literal('beforeCorrection'), Type.Literal('afterCorrection'), Type.Literal('unknown')], {
-              description: "whether the logged vane already contains the controller's own correction",
+            Type.Union(
+              [Type.Literal('beforeCorrection'), Type.Literal('afterCorrection'), Type.Literal('unknown')],
+              {
+                description: "whether the logged vane already contains the controller's own correction",
+              },
+            ),
+          ),
+          correctionDeg: Type.Optional(
+            Type.Number({
+              minimum: -180,
+              maximum: 180,
+              description: "the controller's vane offset in force",
             }),
           ),
-          correctionDeg: Type.Optional(Type.Number({ minimum: -180, maximum: 180, description: "the controller's vane offset in force" })),
           sign: Type.Optional(
             Type.Union([Type.Literal(1), Type.Literal(-1)], {
-              description: '1: positive = wind from clockwise of the axis, seen from above; -1: the reverse. Stated here it counts as checked',
+              description:
+                '1: positive = wind from clockwise of the axis, seen from above; -1: the reverse. Stated here it counts as checked',
             }),
           ),
         },
@@ -45,7 +62,10 @@ export const TurbineSetup = Type.Object(
           { windSpeedMs: Type.Number({ minimum: 0, maximum: 60 }), powerKw: Type.Number() },
           { additionalProperties: false },
         ),
-        { maxItems: 500, description: "the maker's curve at 1.225 kg/m3; shown for comparison, never used for the offset" },
+        {
+          maxItems: 500,
+          description: "the maker's curve at 1.225 kg/m3; shown for comparison, never used for the offset",
+        },
       ),
     ),
   },
@@ -57,10 +77,21 @@ export type TurbineSetup = Static<typeof TurbineSetup>
 export const SiteFile = Type.Object(
   {
     site: Type.Optional(Name),
-    timezone: Type.Optional(Type.String({ minLength: 1, maxLength: 60, examples: ['Europe/Berlin'], description: 'IANA name' })),
-    stamp: Type.Optional(Type.Union([Type.Literal('begin'), Type.Literal('end')], { description: 'which edge of its interval a time stamp marks' })),
+    timezone: Type.Optional(
+      Type.String({ minLength: 1, maxLength: 60, examples: ['Europe/Berlin'], description: 'IANA name' }),
+    ),
+    stamp: Type.Optional(
+      Type.Union([Type.Literal('begin'), Type.Literal('end')], {
+        description: 'which edge of its interval a time stamp marks',
+      }),
+    ),
     intervalS: Type.Optional(Type.Number({ exclusiveMinimum: 0, maximum: 3600 })),
-    runningStatus: Type.Optional(Type.Array(Type.String(), { maxItems: 200, description: 'values of `status` in which the turbine runs normally' })),
+    runningStatus: Type.Optional(
+      Type.Array(Type.String(), {
+        maxItems: 200,
+        description: 'values of `status` in which the turbine runs normally',
+      }),
+    ),
     turbines: Type.Optional(Type.Array(TurbineSetup, { maxItems: 5000 })),
     corrections: Type.Optional(
       Type.Array(
