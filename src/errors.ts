@@ -29,10 +29,14 @@ export const ERRORS = {
   UNSUPPORTED_MEDIA_TYPE: { status: 415, exit: 2, title: 'Content type not taken here' },
   NOT_FOUND: { status: 404, exit: 2, title: 'Nothing under this address' },
   REPLAY_NOT_FOUND: { status: 404, exit: 2, title: 'No such replay' },
+  SITE_NOT_FOUND: { status: 404, exit: 2, title: 'No such site' },
+  TURBINE_NOT_FOUND: { status: 404, exit: 2, title: 'No such turbine' },
+  BATCH_NOT_FOUND: { status: 404, exit: 2, title: 'No such log of this site' },
   METHOD_NOT_ALLOWED: { status: 405, exit: 2, title: 'Method not allowed here' },
   // the service itself
   BAD_CONFIG: { status: 500, exit: 2, title: 'A setting has a wrong value' },
   STORAGE_FULL: { status: 507, exit: 1, title: 'The data folder is full' },
+  INTERRUPTED: { status: 503, exit: 1, title: 'The service stopped before this was done' },
   NOT_READY: { status: 503, exit: 1, title: 'The service is not ready' },
   INTERNAL: { status: 500, exit: 1, title: 'A fault of this program' },
 } as const satisfies Record<string, { status: number; exit: number; title: string }>
