@@ -1,0 +1,33 @@
+import { InputError } from '../errors.ts'
+import { SiteFile } from '../sheet/index.ts'
+import { checkShape } from './check-shape.ts'
+
+/**
+ * A site file from its text.
+ *
+ * @param json   JSON, with or without a byte order mark.
+ * @param place  name that errors start with: `site`, or the file as the caller named it.
+ * @throws InputError BAD_SITE
+ */
+export function parseSite(json: string, place: string): SiteFile {
+  let value: unknown
+  try {
+    value = JSON.parse(json.replace(/^\uFEFF/, ''))
+  } catch (cause) {
+    throw new InputError('BAD_SITE', `${place}: expected JSON, got text that is none (${(cause as Error).message})`, {
+      cause,
+    })
+  }
+  const site = checkShape(SiteFile, value, { code: 'BAD_SITE', place })
+  const seen = new Set<string>()
+  for (const [index, { turbine }] of (site.turbines ?? []).entries()) {
+    if (seen.has(turbine)) {
+      throw new InputError(
+        'BAD_SITE',
+        `${place}.turbines[${index}].turbine: expected every turbine once, got "${turbine}" again`,
+      )
+    }
+    seen.add(turbine)
+  }
+  return site
+}
