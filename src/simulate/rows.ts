@@ -1,0 +1,191 @@
+/** States of a turbine, in the order of their codes; the log's `status` is the one that held longest in the row. */
+export const STATES = ['run', 'limited', 'idle', 'stop', 'storm', 'untwist'] as const
+export const STATE = { run: 0, limited: 1, idle: 2, stop: 3, storm: 4, untwist: 5 } as const
+
+/** Numbers of a row, by canonical column; NaN = not logged. */
+export const ROW_COLUMNS = [
+  'wind_speed',
+  'wind_speed_sd',
+  'vane',
+  'vane_sd',
+  'nacelle_position',
+  'yaw_active',
+  'power',
+  'power_sd',
+  'pitch',
+  'rotor_speed',
+  'power_limit',
+  'air_temperature',
+  'air_pressure',
+  'reference_yaw_error',
+  'reference_wind_speed',
+] as const
+export type RowColumn = (typeof ROW_COLUMNS)[number]
+
+/** The rows of one turbine: every array has one entry for each row. */
+export interface TurbineRows {
+  /** Start of the row, UTC epoch ms. */
+  timeMs: Float64Array
+  columns: Record<RowColumn, Float64Array>
+  /** Code of the state that held longest, see STATES. */
+  state: Uint8Array
+  /** Known only in a made-up farm: mean true yaw error (degrees) and mean rotor-effective wind speed (m/s). */
+  trueYawErrorDeg: Float64Array
+  trueRotorWindMs: Float64Array
+}
+
+export function emptyRows(startMs: number, rateS: number, rows: number): TurbineRows {
+  const columns = Object.fromEntries(
+    ROW_COLUMNS.map((name) => [name, new Float64Array(rows).fill(NaN)]),
+  ) as Record<RowColumn, Float64Array>
+  return {
+    timeMs: Float64Array.from({ length: rows }, (_, i) => startMs + i * rateS * 1000),
+    columns,
+    state: new Uint8Array(rows),
+    trueYawErrorDeg: new Float64Array(rows),
+    trueRotorWindMs: new Float64Array(rows),
+  }
+}
+
+const DEG_PER_RAD = 180 / Math.PI
+const RAD_PER_DEG = Math.PI / 180
+
+/**
+ * Makes rows of seconds, as a logger does: means and standard deviations (divisor n), directions by their unit vectors,
+ * the spread of directions by Yamartino's formula. One object for each turbine; `add` is called once a second.
+ *
+ * @source Yamartino (1984), A comparison of several single-pass estimators of the standard deviation of wind direction
+ */
+export class RowMaker {
+  readonly #rows: TurbineRows
+  readonly #rateS: number
+  readonly #northOffsetDeg: number
+  readonly #nacelleScale: 'wrapped' | 'signed' | 'wound'
+  readonly #averageAcrossNorth: boolean
+  readonly #stateS = new Int32Array(STATES.length)
+  #row = 0
+  #n = 0
+  #wind = 0
+  #windSquares = 0
+  #vaneSin = 0
+  #vaneCos = 0
+  #lastHeading = NaN
+  #headingSin = 0
+  #headingCos = 0
+  #headingReading = 0
+  #nacelleSin = 0
+  #nacelleCos = 0
+  #nacelle = 0
+  #yawing = 0
+  #power = 0
+  #powerSquares = 0
+  #pitch = 0
+  #rotor = 0
+  #limit = 0
+  #yawError = 0
+  #rotorWind = 0
+
+  constructor(
+    rows: TurbineRows,
+    logger: {
+      rateS: number
+      northOffsetDeg: number
+      nacelleScale: 'wrapped' | 'signed' | 'wound'
+      averageAcrossNorth: boolean
+    },
+  ) {
+    this.#rows = rows
+    this.#rateS = logger.rateS
+    this.#northOffsetDeg = logger.northOffsetDeg
+    this.#nacelleScale = logger.nacelleScale
+    this.#averageAcrossNorth = logger.averageAcrossNorth
+  }
+
+  add(
+    windMs: number,
+    vaneDeg: number,
+    headingDeg: number,
+    yawing: number,
+    powerKw: number,
+    pitchDeg: number,
+    rotorRpm: number,
+    limitKw: number,
+    state: number,
+    yawErrorDeg: number,
+    rotorWindMs: number,
+  ): void {
+    if (headingDeg !== this.#lastHeading) {
+      // The nacelle stands still most of the time: its sine is not worked out anew each second.
+      this.#lastHeading = headingDeg
+      this.#headingReading = headingDeg + this.#northOffsetDeg
+      if (this.#nacelleScale === 'wrapped') this.#headingReading = turn360(this.#headingReading)
+      if (this.#nacelleScale === 'signed') {
+        this.#headingReading = turn360(this.#headingReading + 180) - 180
+      }
+      this.#headingSin = Math.sin(this.#headingReading * RAD_PER_DEG)
+      this.#headingCos = Math.cos(this.#headingReading * RAD_PER_DEG)
+    }
+    this.#n++
+    this.#wind += windMs
+    this.#windSquares += windMs * windMs
+    this.#vaneSin += Math.sin(vaneDeg * RAD_PER_DEG)
+    this.#vaneCos += Math.cos(vaneDeg * RAD_PER_DEG)
+    this.#nacelleSin += this.#headingSin
+    this.#nacelleCos += this.#headingCos
+    this.#nacelle += this.#headingReading
+    this.#yawing += yawing
+    this.#power += powerKw
+    this.#powerSquares += powerKw * powerKw
+    this.#pitch += pitchDeg
+    this.#rotor += rotorRpm
+    this.#limit += limitKw
+    this.#stateS[state]!++
+    this.#yawError += yawErrorDeg
+    this.#rotorWind += rotorWindMs
+    if (this.#n === this.#rateS) this.#finish()
+  }
+
+  #finish(): void {
+    const { columns } = this.#rows
+    const row = this.#row++
+    const n = this.#n
+    const wind = this.#wind / n
+    const power = this.#power / n
+    columns.wind_speed[row] = wind
+    columns.vane[row] = Math.atan2(this.#vaneSin, this.#vaneCos) * DEG_PER_RAD
+    if (n > 1) {
+      columns.wind_speed_sd[row] = Math.sqrt(Math.max(0, this.#windSquares / n - wind * wind))
+      columns.power_sd[row] = Math.sqrt(Math.max(0, this.#powerSquares / n - power * power))
+      const epsilon = Math.sqrt(Math.max(0, 1 - (this.#vaneSin ** 2 + this.#vaneCos ** 2) / (n * n)))
+      columns.vane_sd[row] = Math.asin(epsilon) * (1 + 0.1547 * epsilon ** 3) * DEG_PER_RAD
+    }
+    const turn = Math.atan2(this.#nacelleSin, this.#nacelleCos) * DEG_PER_RAD
+    if (this.#nacelleScale === 'wound' || this.#averageAcrossNorth) {
+      columns.nacelle_position[row] = this.#nacelle / n
+    } else {
+      columns.nacelle_position[row] = this.#nacelleScale === 'signed' ? turn : turn360(turn)
+    }
+    columns.yaw_active[row] = this.#yawing / n
+    columns.power[row] = power
+    columns.pitch[row] = this.#pitch / n
+    columns.rotor_speed[row] = this.#rotor / n
+    columns.power_limit[row] = this.#limit / n
+    this.#rows.trueYawErrorDeg[row] = this.#yawError / n
+    this.#rows.trueRotorWindMs[row] = this.#rotorWind / n
+    let longest = 0
+    for (let i = 1; i < this.#stateS.length; i++) {
+      if (this.#stateS[i]! > this.#stateS[longest]!) longest = i
+    }
+    this.#rows.state[row] = longest
+    this.#stateS.fill(0)
+    this.#n = this.#wind = this.#windSquares = this.#vaneSin = this.#vaneCos = 0
+    this.#nacelleSin = this.#nacelleCos = this.#nacelle = this.#yawing = 0
+    this.#power = this.#powerSquares = this.#pitch = this.#rotor = this.#limit = 0
+    this.#yawError = this.#rotorWind = 0
+  }
+}
+
+function turn360(angleDeg: number): number {
+  const turned = angleDeg - 360 * Math.floor(angleDeg / 360)
+  return turned >= 360 ? 0 : turned
+}
