@@ -1,0 +1,207 @@
+import { wrap180, wrap360 } from '../kernel/angle/index.ts'
+import { medianOf } from '../kernel/stats/index.ts'
+import {
+  airDensity,
+  kneeSpeed,
+  measuredPowerCurve,
+  normalisedSpeed,
+  powerAt,
+  pressureFromAltitude,
+  ratedPowerFrom,
+} from '../kernel/wind/index.ts'
+import type { ScoringSettings, SiteFile, TurbineSetup } from '../sheet/index.ts'
+import { buildCalendar, type Calendar } from './calendar.ts'
+import type { Frame, TurbineColumns, TurbineFrame } from './frame.ts'
+import { setAsideBeforeCurve, setAsideByRange } from './set-aside.ts'
+
+/** Share of rated power up to which rows are used: the knee itself answers less and less to the wind. */
+const KNEE_SHARE = 0.8
+/** Upper end of the wind speeds used where the log shows no rated power, m/s. */
+const WIND_MAX_WITHOUT_KNEE_MS = 10
+
+export interface FrameRequest {
+  readonly site: SiteFile
+  readonly settings: ScoringSettings
+  /** Length of the rows' interval, s. */
+  readonly intervalS: number
+  /** For turbines whose site file gives none, kW. */
+  readonly ratedPowerKw?: number | undefined
+}
+
+/**
+ * The frame of a farm: clean columns brought to the signs and units of the questions, each row used or set aside for one reason.
+ *
+ * @param farm  one entry per turbine, rows sorted by time; at least one row in all.
+ */
+export function buildFrame(farm: readonly TurbineColumns[], request: FrameRequest): Frame {
+  const intervalMs = request.intervalS * 1000
+  let fromMs = Infinity
+  let toMs = -Infinity
+  for (const { time } of farm) {
+    if (time.length === 0) continue
+    fromMs = Math.min(fromMs, time[0]!)
+    toMs = Math.max(toMs, time[time.length - 1]! + intervalMs)
+  }
+  const calendar = buildCalendar(request.site.timezone ?? 'UTC', fromMs, toMs)
+  const setups = new Map((request.site.turbines ?? []).map((setup) => [setup.turbine, setup]))
+  return {
+    intervalS: request.intervalS,
+    fromMs,
+    toMs,
+    calendar,
+    turbines: farm.map((columns) =>
+      buildTurbine(columns, setups.get(columns.turbine) ?? { turbine: columns.turbine }, calendar, request),
+    ),
+  }
+}
+
+function buildTurbine(
+  columns: TurbineColumns,
+  setup: TurbineSetup,
+  calendar: Calendar,
+  request: FrameRequest,
+): TurbineFrame {
+  const { time, numbers, texts } = columns
+  const { settings } = request
+  const n = time.length
+  const missing = new Float64Array(n).fill(NaN)
+  const windSpeed = numbers['wind_speed'] ?? missing
+  const power = numbers['power'] ?? missing
+  const sign = setup.vane?.sign ?? 1
+  const vane = (numbers['vane'] ?? missing).map((angle) => wrap180(sign * angle))
+  const nacelle = numbers['nacelle_position']
+  const indicatedDirection = nacelle
+    ? nacelle.map((position, i) => wrap360(position + vane[i]!))
+    : (numbers['wind_direction'] ?? missing)
+  const air = airOf(columns, setup)
+  const normalised = windSpeed.map((speed, i) =>
+    Number.isNaN(air.density[i]!) ? speed : normalisedSpeed(speed, air.density[i]!),
+  )
+  const rated = ratedPowerOf(power, setup, request.ratedPowerKw)
+  const notes = [...air.notes]
+
+  const { reason, running, limited } = setAsideBeforeCurve(
+    {
+      time,
+      intervalMs: request.intervalS * 1000,
+      ratedPowerKw: rated.powerKw,
+      windSpeed,
+      vane,
+      power,
+      powerMin: numbers['power_min'],
+      powerLimit: numbers['power_limit'],
+      pitch: numbers['pitch'],
+      rotorSpeed: numbers['rotor_speed'],
+      nacellePosition: nacelle,
+      nacelleMin: numbers['nacelle_position_min'],
+      nacelleMax: numbers['nacelle_position_max'],
+      direction: nacelle || numbers['wind_direction'] ? indicatedDirection : undefined,
+      status: texts['status'],
+      runningStatus: request.site.runningStatus,
+      availability: texts['availability_category'],
+      excluded: (request.site.exclude ?? [])
+        .filter((window) => window.turbine === undefined || window.turbine === columns.turbine)
+        .map((window) => [Date.parse(window.from), Date.parse(window.to)] as const),
+    },
+    settings,
+  )
+  if (texts['status'] && !request.site.runningStatus) {
+    notes.push(
+      'status is in the log but runningStatus is not in the site file: running is judged by power, pitch and rotor speed',
+    )
+  }
+  const curve = measuredPowerCurve(
+    normalised.filter((_, i) => reason[i] === 0),
+    power.filter((_, i) => reason[i] === 0),
+  )
+  const knee = kneeSpeed(curve, rated.powerKw, KNEE_SHARE)
+  const windMaxMs = Number.isNaN(knee) ? WIND_MAX_WITHOUT_KNEE_MS : knee
+  setAsideByRange(reason, normalised, vane, {
+    minMs: settings.windMinMs,
+    maxMs: windMaxMs,
+    vaneMaxDeg: settings.vaneMaxDeg,
+    isCovered: (speed) => !Number.isNaN(powerAt(curve, speed)),
+  })
+
+  const turbulence = (numbers['wind_speed_sd'] ?? missing).map((sd, i) =>
+    windSpeed[i]! > 0 ? sd / windSpeed[i]! : NaN,
+  )
+  return {
+    turbine: columns.turbine,
+    setup,
+    model: setup.model ?? 'unknown',
+    intervalS: request.intervalS,
+    ratedPowerKw: rated.powerKw,
+    ratedPowerSource: rated.source,
+    time,
+    day: Int32Array.from(time, (at) => calendar.dayOf(at)),
+    night: Uint8Array.from(time, (at) => (calendar.hourOf(at) >= 19 || calendar.hourOf(at) < 7 ? 1 : 0)),
+    windSpeed,
+    density: air.density,
+    normalisedSpeed: normalised,
+    turbulence,
+    vane,
+    vaneSd: numbers['vane_sd'] ?? missing,
+    power,
+    nacellePosition: nacelle ?? missing,
+    indicatedDirection,
+    densitySource: air.source,
+    reason,
+    running,
+    limited,
+    curve,
+    windMinMs: settings.windMinMs,
+    windMaxMs,
+    notes,
+  }
+}
+
+/** Density row by row. A gap in temperature or pressure takes the median of the log, so that one lost cell moves no row by percents. */
+function airOf(
+  columns: TurbineColumns,
+  setup: TurbineSetup,
+): { density: Float64Array; source: string; notes: string[] } {
+  const temperature = columns.numbers['air_temperature']
+  const usualTemperature = temperature ? medianOf(temperature) : NaN
+  const n = columns.time.length
+  if (!temperature || Number.isNaN(usualTemperature)) {
+    return {
+      density: new Float64Array(n).fill(NaN),
+      source: 'none: wind speed as read',
+      notes: ['no air temperature in the log: wind speed is not normalised to a density'],
+    }
+  }
+  const pressure = columns.numbers['air_pressure']
+  const usualPressure = pressure ? medianOf(pressure) : NaN
+  const height = (setup.altitudeM ?? 0) + (setup.hubHeightM ?? 0)
+  const standard = pressureFromAltitude(height)
+  const hasPressure = pressure !== undefined && !Number.isNaN(usualPressure)
+  const density = new Float64Array(n)
+  for (let i = 0; i < n; i++) {
+    const temperatureC = orElse(temperature[i]!, usualTemperature)
+    const pressureHpa = hasPressure ? orElse(pressure[i]!, usualPressure) : standard
+    density[i] = airDensity({ pressureHpa, temperatureC })
+  }
+  if (hasPressure) return { density, source: 'air temperature and pressure of the log', notes: [] }
+  const stated = setup.altitudeM === undefined ? 'sea level (no altitude given)' : `${setup.altitudeM} m`
+  return {
+    density,
+    source: `air temperature of the log, pressure of the standard atmosphere at ${stated}`,
+    notes: [],
+  }
+}
+
+function orElse(value: number, fallback: number): number {
+  return Number.isNaN(value) ? fallback : value
+}
+
+function ratedPowerOf(
+  power: Float64Array,
+  setup: TurbineSetup,
+  requested: number | undefined,
+): { powerKw: number; source: TurbineFrame['ratedPowerSource'] } {
+  if (setup.ratedPowerKw !== undefined) return { powerKw: setup.ratedPowerKw, source: 'site file' }
+  if (requested !== undefined) return { powerKw: requested, source: 'request' }
+  const powerKw = ratedPowerFrom(power)
+  return Number.isNaN(powerKw) ? { powerKw, source: 'unknown' } : { powerKw, source: 'log' }
+}

@@ -1,0 +1,11 @@
+export * from './build-frame.ts'
+export * from './calendar.ts'
+export * from './frame.ts'
+export {
+  countReasons,
+  REASON_CODE,
+  setAsideBeforeCurve,
+  setAsideByRange,
+  type EarlySetAside,
+  type SetAsideInput,
+} from './set-aside.ts'

@@ -1,0 +1,5 @@
+export * from './day-cell-sums.ts'
+export * from './day-weights.ts'
+export * from './random.ts'
+export * from './robust.ts'
+export * from './student.ts'

@@ -1,0 +1,83 @@
+import {
+  energyLoss,
+  powerCurveTable,
+  readiness,
+  score,
+  staticOffset,
+  vaneStatistics,
+  verdictOf,
+  yawError,
+  type Block,
+  type DayWeights,
+  type StaticOffsetAnswer,
+  type Verdict,
+} from '../analysis/index.ts'
+import { countReasons, type TurbineFrame } from '../frame/index.ts'
+import { SET_ASIDE_REASONS, type ScoringSettings, type TurbineSheet } from '../sheet/index.ts'
+import { adviceFor } from './advice.ts'
+import { CAUTIONS } from './cautions.ts'
+
+/** Everything that scoring one turbine needs; plain data, so that it can travel to a worker thread. */
+export interface ScoreTask {
+  readonly frame: TurbineFrame
+  readonly settings: ScoringSettings
+  readonly dayWeights: readonly DayWeights[]
+  readonly days: number
+}
+
+/** Runs the questions about one turbine, in order, and writes its part of the sheet. NaN stands for missing. */
+export function scoreTurbine(task: ScoreTask): TurbineSheet {
+  const { frame, settings } = task
+  const counts = countReasons(frame.reason)
+  const block = readiness(frame)
+  const answer = staticOffset(frame, task, block)
+  const { sheet: offset, standing } = answer
+  const verdict = judge(block, answer, settings)
+  const settled = verdict.verdict === 'offset' || verdict.verdict === 'aligned'
+  const scored = settled && standing ? score(frame, standing.offsetDeg) : null
+  return {
+    turbine: frame.turbine,
+    model: frame.setup.model ?? null,
+    ratedPowerKw: frame.ratedPowerKw,
+    verdict: verdict.verdict,
+    reason: verdict.text,
+    reasonCode: verdict.code,
+    rows: {
+      accepted: frame.time.length,
+      used: counts.used,
+      setAside: SET_ASIDE_REASONS.filter((reason) => counts[reason] > 0).map((reason) => ({
+        reason,
+        rows: counts[reason],
+      })),
+    },
+    score: scored?.score ?? null,
+    scoreAt10min: `from means of ${frame.intervalS} s: what the yaw error does inside an interval is not in it`,
+    scoreWithinInterval: scored?.withinInterval ?? null,
+    vane: vaneStatistics(frame),
+    yawError: yawError(frame, offset.estimateDeg),
+    staticOffset: offset,
+    energyLoss: energyLoss(frame, {
+      exponent: settings.exponent,
+      offset: standing,
+      byExponent: answer.byExponent,
+    }),
+    powerCurve: powerCurveTable(frame),
+    sensors: block ? [block.finding] : [],
+    yawActivity: {},
+    advice: adviceFor(verdict, offset),
+    cautions: [...CAUTIONS],
+  }
+}
+
+function judge(block: Block | null, answer: StaticOffsetAnswer, settings: ScoringSettings): Verdict {
+  if (block) return { verdict: 'blocked', code: block.code, text: block.text }
+  if (answer.standing) {
+    return verdictOf(
+      answer.standing.standingDeg,
+      answer.standing.standingInterval95Deg,
+      settings.actionThresholdDeg,
+    )
+  }
+  const failure = answer.failure ?? { code: 'no-fit', text: 'no estimate' }
+  return { verdict: 'undetermined', code: failure.code, text: failure.text }
+}
