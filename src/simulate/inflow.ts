@@ -1,8 +1,9 @@
+import { airDensity, REFERENCE_DENSITY } from '../kernel/wind/index.ts'
 import { STOP, type Orders } from './operation.ts'
 import { PURPOSE, RandomStream } from './random.ts'
 import type { FarmScenario, TurbinePlan } from './scenario.ts'
 import { thrustAt, wakeDeficit } from './wake.ts'
-import { dryDensity, PAD_MIN, Reverting, type Weather } from './weather.ts'
+import { PAD_MIN, Reverting, type Weather } from './weather.ts'
 
 /** What comes upon one turbine, one value a minute from the first second of the window. */
 export interface Inflow {
@@ -67,8 +68,11 @@ export function turbineInflow(
     inflow.speedMs[i] = speed * (1 - deficit)
     inflow.directionDeg[i] = between(weather.directionDeg, at)
     inflow.turbulence[i] = Math.hypot(between(weather.turbulence, at), 0.4 * deficit)
-    const density = dryDensity(weather.temperatureC[i + PAD_MIN]!, weather.pressureHpa[i + PAD_MIN]!)
-    inflow.densityFactor[i] = Math.cbrt(density / 1.225)
+    const density = airDensity({
+      pressureHpa: weather.pressureHpa[i + PAD_MIN]!,
+      temperatureC: weather.temperatureC[i + PAD_MIN]!,
+    })
+    inflow.densityFactor[i] = Math.cbrt(density / REFERENCE_DENSITY)
     inflow.performance[i] = 1 + scenario.performanceDrift * drift.step()
   }
   return inflow

@@ -1,5 +1,5 @@
-/** Weights of splitmix32: the finaliser of a Weyl sequence. */
-const WEYL = 0x9e3779b9
+import { createRandom, type RandomSource } from '../kernel/stats/index.ts'
+
 const LAYERS = 128
 /** Right edge of the lowest layer and area of each layer of a ziggurat with 128 layers. */
 const TAIL_START = 3.442619855899
@@ -23,26 +23,22 @@ const LAYER_Y = new Float64Array(LAYERS + 1)
  * A stream of pseudo-random numbers that depends on its keys and on nothing else: one for each purpose and turbine, so
  * that a further turbine, or a further draw for one purpose, leaves every other stream as it was.
  *
- * @source xoshiro128** 1.1 of Blackman & Vigna (2021), seeded by splitmix32; normal deviates by the ziggurat of
- *   Marsaglia & Tsang (2000), with separate bits for layer, sign and abscissa (Doornik 2005).
+ * @source the kernel's xoshiro128**; normal deviates by the ziggurat of Marsaglia & Tsang (2000), with separate bits for
+ *   layer, sign and abscissa (Doornik 2005).
  */
 export class RandomStream {
-  readonly #state = new Int32Array(4)
+  readonly #source: RandomSource
 
   /** @param keys whole numbers, taken modulo 2^32; their order counts. */
   constructor(...keys: number[]) {
     let mix = 0
-    for (const key of keys) mix = scramble((mix ^ key) + WEYL)
-    for (let i = 0; i < 4; i++) {
-      mix = (mix + WEYL) | 0
-      this.#state[i] = scramble(mix)
-    }
-    this.#state[0]! |= 1 // all zero is the one state that xoshiro never leaves
+    for (const key of keys) mix = scramble(mix ^ key)
+    this.#source = createRandom(mix >>> 0)
   }
 
   /** A number in [0, 1) with 32 random bits. */
   uniform(): number {
-    return this.#next() / 4294967296
+    return this.#source.uint32() / 4294967296
   }
 
   /** A number in [from, to). */
@@ -53,7 +49,7 @@ export class RandomStream {
   /** A deviate of the standard normal distribution. */
   normal(): number {
     for (;;) {
-      const bits = this.#next()
+      const bits = this.#source.uint32()
       const layer = bits & (LAYERS - 1)
       const sign = bits & LAYERS ? -1 : 1
       const u = (bits >>> 8) / 16777216
@@ -77,27 +73,11 @@ export class RandomStream {
       if (2 * y > x * x) return TAIL_START + x
     }
   }
-
-  #next(): number {
-    const state = this.#state
-    const s0 = state[0]!,
-      s1 = state[1]!,
-      s2 = state[2]!,
-      s3 = state[3]!
-    const scaled = Math.imul(s1, 5)
-    const result = Math.imul((scaled << 7) | (scaled >>> 25), 9)
-    const x2 = s2 ^ s0,
-      x3 = s3 ^ s1
-    state[1] = s1 ^ x2
-    state[0] = s0 ^ x3
-    state[2] = x2 ^ (s1 << 9)
-    state[3] = (x3 << 11) | (x3 >>> 21)
-    return result >>> 0
-  }
 }
 
-function scramble(seed: number): number {
-  let z = seed | 0
+/** One to one on 32 bits, and close keys come out far apart: a step of splitmix32 with other multipliers. */
+function scramble(key: number): number {
+  let z = (key + 0x9e3779b9) | 0
   z = Math.imul(z ^ (z >>> 16), 0x21f0aaad)
   z = Math.imul(z ^ (z >>> 15), 0x735a2d97)
   return z ^ (z >>> 15)

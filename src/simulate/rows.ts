@@ -1,3 +1,5 @@
+import { DEG_PER_RAD, RAD_PER_DEG, wrap180, wrap360, yamartinoSigma } from '../kernel/angle/index.ts'
+
 /** States of a turbine, in the order of their codes; the log's `status` is the one that held longest in the row. */
 export const STATES = ['run', 'limited', 'idle', 'stop', 'storm', 'untwist'] as const
 export const STATE = { run: 0, limited: 1, idle: 2, stop: 3, storm: 4, untwist: 5 } as const
@@ -47,14 +49,9 @@ export function emptyRows(startMs: number, rateS: number, rows: number): Turbine
   }
 }
 
-const DEG_PER_RAD = 180 / Math.PI
-const RAD_PER_DEG = Math.PI / 180
-
 /**
  * Makes rows of seconds, as a logger does: means and standard deviations (divisor n), directions by their unit vectors,
  * the spread of directions by Yamartino's formula. One object for each turbine; `add` is called once a second.
- *
- * @source Yamartino (1984), A comparison of several single-pass estimators of the standard deviation of wind direction
  */
 export class RowMaker {
   readonly #rows: TurbineRows
@@ -118,10 +115,8 @@ export class RowMaker {
       // The nacelle stands still most of the time: its sine is not worked out anew each second.
       this.#lastHeading = headingDeg
       this.#headingReading = headingDeg + this.#northOffsetDeg
-      if (this.#nacelleScale === 'wrapped') this.#headingReading = turn360(this.#headingReading)
-      if (this.#nacelleScale === 'signed') {
-        this.#headingReading = turn360(this.#headingReading + 180) - 180
-      }
+      if (this.#nacelleScale === 'wrapped') this.#headingReading = wrap360(this.#headingReading)
+      if (this.#nacelleScale === 'signed') this.#headingReading = wrap180(this.#headingReading)
       this.#headingSin = Math.sin(this.#headingReading * RAD_PER_DEG)
       this.#headingCos = Math.cos(this.#headingReading * RAD_PER_DEG)
     }
@@ -156,14 +151,13 @@ export class RowMaker {
     if (n > 1) {
       columns.wind_speed_sd[row] = Math.sqrt(Math.max(0, this.#windSquares / n - wind * wind))
       columns.power_sd[row] = Math.sqrt(Math.max(0, this.#powerSquares / n - power * power))
-      const epsilon = Math.sqrt(Math.max(0, 1 - (this.#vaneSin ** 2 + this.#vaneCos ** 2) / (n * n)))
-      columns.vane_sd[row] = Math.asin(epsilon) * (1 + 0.1547 * epsilon ** 3) * DEG_PER_RAD
+      columns.vane_sd[row] = yamartinoSigma(this.#vaneSin / n, this.#vaneCos / n)
     }
     const turn = Math.atan2(this.#nacelleSin, this.#nacelleCos) * DEG_PER_RAD
     if (this.#nacelleScale === 'wound' || this.#averageAcrossNorth) {
       columns.nacelle_position[row] = this.#nacelle / n
     } else {
-      columns.nacelle_position[row] = this.#nacelleScale === 'signed' ? turn : turn360(turn)
+      columns.nacelle_position[row] = this.#nacelleScale === 'signed' ? turn : wrap360(turn)
     }
     columns.yaw_active[row] = this.#yawing / n
     columns.power[row] = power
@@ -183,9 +177,4 @@ export class RowMaker {
     this.#power = this.#powerSquares = this.#pitch = this.#rotor = this.#limit = 0
     this.#yawError = this.#rotorWind = 0
   }
-}
-
-function turn360(angleDeg: number): number {
-  const turned = angleDeg - 360 * Math.floor(angleDeg / 360)
-  return turned >= 360 ? 0 : turned
 }

@@ -113,7 +113,6 @@ export function runTurbine(
   let nextChange = 0
   let limit = rated
   let limitSpeed = speedAtPower(table, 0.97 * rated)
-  let stop = 0
 
   // Values at the end of the running ten seconds; the first second starts from them.
   let nodeWind = inflow.speedMs[0]!
@@ -198,7 +197,7 @@ export function runTurbine(
       const gustSize = weight5 * turbulence
       const veerSize = weight5 * turnSd
 
-      stop = orders.stop[minute]!
+      const stop = orders.stop[minute]!
       if (orders.limitKw[minute]! !== limit) {
         limit = orders.limitKw[minute]!
         limitSpeed = speedAtPower(table, Math.min(limit, 0.97 * rated))

@@ -110,8 +110,3 @@ export class Reverting {
     return this.value
   }
 }
-
-/** Air density in kg/m3 from temperature in degrees C and pressure in hPa, dry air. */
-export function dryDensity(temperatureC: number, pressureHpa: number): number {
-  return (pressureHpa * 100) / (287.05 * (temperatureC + 273.15))
-}
