@@ -1,0 +1,3 @@
+export { openapiYaml } from './openapi.ts'
+export { buildServer, type ServerParts } from './server.ts'
+export { clearUploads } from './upload.ts'
