@@ -3,7 +3,7 @@ import { STOP, type Orders } from './operation.ts'
 import { COS_POWER_PER_DEG, cosPowerTable, powerTable, speedAtPower } from './power-curve.ts'
 import { PURPOSE, RandomStream } from './random.ts'
 import { RowMaker, STATE, type TurbineRows } from './rows.ts'
-import { scenarioSeconds, type FarmScenario, type TurbinePlan } from './scenario.ts'
+import { changesOf, scenarioSeconds, type FarmScenario, type TurbinePlan } from './scenario.ts'
 import { Reverting } from './weather.ts'
 
 /** Seconds in a block of random numbers, and between two values of the slower processes. */
@@ -104,10 +104,11 @@ export function runTurbine(
   const keepMinute = Math.exp(-1 / 30)
   const codeStep = scenario.vaneBits > 0 ? 360 / 2 ** scenario.vaneBits : 0
   const gain = scenario.vaneGain
-  const loggedShift = scenario.vaneLogged === 'beforeCorrection' ? plan.correctionDeg : 0
-  const changes = scenario.offsetChanges
-    .filter((change) => change.turbine === plan.index)
-    .sort((a, b) => a.atS - b.atS)
+  let loggedShift = scenario.vaneLogged === 'beforeCorrection' ? plan.correctionDeg : 0
+  const changes = changesOf(scenario, plan.index)
+
+  const { vaneNoiseDeg, anemometerNoiseMs, yawRateDegS, yawThresholdDeg, yawHoldS, yawStopDeg } = scenario
+  const { anemometerGain, responsePerDeg } = plan
 
   let offset = plan.offsetDeg
   let nextChange = 0
@@ -203,6 +204,10 @@ export function runTurbine(
         limitSpeed = speedAtPower(table, Math.min(limit, 0.97 * rated))
       }
       if (nextChange < changes.length && changes[nextChange]!.atS < endS) {
+        // A correction that was entered is one that the vane before correction does not show.
+        if (changes[nextChange]!.entered && scenario.vaneLogged === 'beforeCorrection') {
+          loggedShift += offset - changes[nextChange]!.toDeg
+        }
         offset = changes[nextChange]!.toDeg
         nextChange++
       }
@@ -218,21 +223,17 @@ export function runTurbine(
 
         // Yaw error as the rotor feels it, and as the point of the vane does.
         let error = nodeTurn - heading
-        error -= 360 * Math.floor((error + 180) / 360)
+        error -= 360 * Math.floor((error + 180) * (1 / 360))
         const flow = gain * (error + veerSize * veer) - offset
-        let vane = flow + nodeVane + scenario.vaneNoiseDeg * vaneNoise[i]!
+        let vane = flow + nodeVane + vaneNoiseDeg * vaneNoise[i]!
         if (codeStep > 0) vane = Math.round(vane / codeStep) * codeStep
-        vane -= 360 * Math.floor((vane + 180) / 360)
+        vane -= 360 * Math.floor((vane + 180) * (1 / 360))
 
         const bend =
           flow > RESPONSE_MAX_DEG ? RESPONSE_MAX_DEG : flow < -RESPONSE_MAX_DEG ? -RESPONSE_MAX_DEG : flow
         let wind =
-          nodeWind *
-            (1 + gustSize * gust) *
-            plan.anemometerGain *
-            (1 + plan.responsePerDeg * bend) *
-            (1 + nodeError) +
-          scenario.anemometerNoiseMs * windNoise[i]!
+          nodeWind * (1 + gustSize * gust) * anemometerGain * (1 + responsePerDeg * bend) * (1 + nodeError) +
+          anemometerNoiseMs * windNoise[i]!
         if (wind < 0) wind = 0
         windMean = keepMinute * windMean + (1 - keepMinute) * wind
 
@@ -248,15 +249,15 @@ export function runTurbine(
         vaneShort = keepStop * vaneShort + (1 - keepStop) * vane
         if (untwisting) {
           const left = untwistTo - heading
-          if (left > scenario.yawRateDegS) heading += scenario.yawRateDegS
-          else if (left < -scenario.yawRateDegS) heading -= scenario.yawRateDegS
+          if (left > yawRateDegS) heading += yawRateDegS
+          else if (left < -yawRateDegS) heading -= yawRateDegS
           else untwistTo = NaN
           yawing = 0
           vaneMean = vane
         } else if (yawing !== 0) {
-          heading += yawing * scenario.yawRateDegS
-          sums.yawTravelDeg += scenario.yawRateDegS
-          if (vaneShort * yawing < scenario.yawStopDeg || stop === STOP.maintenance) {
+          heading += yawing * yawRateDegS
+          sums.yawTravelDeg += yawRateDegS
+          if (vaneShort * yawing < yawStopDeg || stop === STOP.maintenance) {
             yawing = 0
             vaneMean = vaneShort
             holdS = 0
@@ -265,10 +266,10 @@ export function runTurbine(
             }
           }
         } else {
-          const threshold = running ? scenario.yawThresholdDeg : 2 * scenario.yawThresholdDeg
+          const threshold = running ? yawThresholdDeg : 2 * yawThresholdDeg
           const off = vaneMean > threshold || vaneMean < -threshold
           holdS = off ? holdS + 1 : 0
-          if (holdS > scenario.yawHoldS && windMean > IDLE_MS - 0.4 && stop !== STOP.maintenance) {
+          if (holdS > yawHoldS && windMean > IDLE_MS - 0.4 && stop !== STOP.maintenance) {
             yawing = vaneMean > 0 ? 1 : -1
             sums.yawMoves++
           }
@@ -287,7 +288,7 @@ export function runTurbine(
         if (available > rated) available = rated
         if (ramp === 1 && limit >= rated) {
           let rest = error - standing
-          rest -= 360 * Math.floor((rest + 180) / 360)
+          rest -= 360 * Math.floor((rest + 180) * (1 / 360))
           at = (rest < 0 ? -rest : rest) * COS_POWER_PER_DEG
           k = at | 0
           at = effective * (cosPower[k]! + (at - k) * (cosPower[k + 1]! - cosPower[k]!)) * perMs
@@ -314,7 +315,7 @@ export function runTurbine(
 
         const allowed = available < limit ? available : limit
         const targetPower = running ? allowed * ramp + CONSUMPTION_KW * (1 - ramp) : CONSUMPTION_KW
-        power += (targetPower - power) / ROTOR_S
+        power += (targetPower - power) * (1 / ROTOR_S)
         if (power > 0) produced += power
         const excess = along - limitSpeed
         const targetPitch = running
@@ -324,13 +325,13 @@ export function runTurbine(
           : stop !== 0
             ? 88
             : 60
-        pitch += (targetPitch - pitch) / PITCH_S
+        pitch += (targetPitch - pitch) * (1 / PITCH_S)
         let targetSpeed = 0.3
         if (running) {
           const tip = 1.47 * along
           targetSpeed = ramp * (tip > 14.6 ? 14.6 : tip < 7 ? 7 : tip)
         } else if (stop !== 0) targetSpeed = 0
-        rotorSpeed += (targetSpeed - rotorSpeed) / SPEED_S
+        rotorSpeed += (targetSpeed - rotorSpeed) * (1 / SPEED_S)
 
         let logged = vane - loggedShift
         if (loggedShift !== 0) logged -= 360 * Math.floor((logged + 180) / 360)

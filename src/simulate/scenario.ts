@@ -283,6 +283,11 @@ export function scenarioSeconds(scenario: FarmScenario): number {
   return Math.round(scenario.days * 86400)
 }
 
+/** The changes of one turbine's offset, in order of time. */
+export function changesOf(scenario: FarmScenario, turbine: number): OffsetChange[] {
+  return scenario.offsetChanges.filter((change) => change.turbine === turbine).sort((a, b) => a.atS - b.atS)
+}
+
 /** What one turbine is, once drawn. */
 export interface TurbinePlan {
   index: number

@@ -4,6 +4,7 @@ import { PURPOSE, RandomStream } from './random.ts'
 import { emptyRows, STATES, type TurbineRows } from './rows.ts'
 import { runTurbine, type TurbineSums } from './run-turbine.ts'
 import {
+  changesOf,
   farmScenario,
   planTurbines,
   scenarioSeconds,
@@ -96,15 +97,20 @@ function addReference(rows: TurbineRows, logger: RandomStream): void {
 }
 
 function truthOf(scenario: FarmScenario, plan: TurbinePlan, sums: TurbineSums): TurbineTruth {
-  const ownDeg = scenario.vaneLogged === 'beforeCorrection' ? plan.correctionDeg : 0
-  const changes = scenario.offsetChanges
-    .filter((change) => change.turbine === plan.index)
-    .sort((a, b) => a.atS - b.atS)
-  const offsets = [{ atS: 0, toDeg: plan.offsetDeg }, ...changes].map(({ atS, toDeg }) => ({
-    fromS: atS,
-    offsetDeg: toDeg + ownDeg,
-    standingDeg: toDeg / scenario.vaneGain,
-  }))
+  const before = scenario.vaneLogged === 'beforeCorrection'
+  let correctionDeg = before ? plan.correctionDeg : 0
+  let controllerDeg = plan.offsetDeg
+  const period = (fromS: number) => ({
+    fromS,
+    offsetDeg: controllerDeg + correctionDeg,
+    standingDeg: controllerDeg / scenario.vaneGain,
+  })
+  const offsets = [period(0)]
+  for (const change of changesOf(scenario, plan.index)) {
+    if (before && change.entered) correctionDeg += controllerDeg - change.toDeg
+    controllerDeg = change.toDeg
+    offsets.push(period(change.atS))
+  }
   return {
     turbine: plan.name,
     offsetDeg: offsets[0]!.offsetDeg,
