@@ -21,7 +21,13 @@ interface Entry<T> {
 
 const PLAIN_NUMBER = /^[+-]?(\d+\.?\d*|\.\d+)(e[+-]?\d+)?$/i
 
-function number(range: { min: number; max: number; default: number; unit: string; text: string }): Entry<number> {
+function number(range: {
+  min: number
+  max: number
+  default: number
+  unit: string
+  text: string
+}): Entry<number> {
   return {
     text: range.text,
     unit: range.unit,
@@ -34,7 +40,13 @@ function number(range: { min: number; max: number; default: number; unit: string
   }
 }
 
-function integer(range: { min: number; max: number; default: number; unit: string; text: string }): Entry<number> {
+function integer(range: {
+  min: number
+  max: number
+  default: number
+  unit: string
+  text: string
+}): Entry<number> {
   const asNumber = number(range)
   return {
     ...asNumber,
@@ -238,7 +250,9 @@ export function readConfig(
     }
   }
   const known = new Set(Object.keys(SETTINGS).map(environmentName))
-  const unknownNames = Object.keys(environment).filter((name) => name.startsWith('YAWLEDGER_') && !known.has(name))
+  const unknownNames = Object.keys(environment).filter(
+    (name) => name.startsWith('YAWLEDGER_') && !known.has(name),
+  )
   return { config: values as unknown as Config, unknownNames: unknownNames.sort() }
 }
 

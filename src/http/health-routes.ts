@@ -46,5 +46,8 @@ export function healthRoutes(app: TypedServer, ready: ReadyCheck): void {
 }
 
 function okResponse(description: string, status: string): object {
-  return { description, content: { 'application/json': { schema: Type.Object({ status: Type.Literal(status) }) } } }
+  return {
+    description,
+    content: { 'application/json': { schema: Type.Object({ status: Type.Literal(status) }) } },
+  }
 }

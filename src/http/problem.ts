@@ -1,6 +1,7 @@
 import type { FastifyReply, FastifyRequest } from 'fastify'
 import { ERRORS, InputError, type ErrorCode } from '../errors.ts'
 import type { Problem } from '../sheet/index.ts'
+import { LOG_MEDIA_TYPES } from './media-types.ts'
 
 /**
  * Codes of the framework that are the caller's mistake in this program's words. Every other one below 500 is a BAD_REQUEST.
@@ -16,13 +17,21 @@ const FRAMEWORK_CODES: Readonly<Record<string, ErrorCode>> = {
 }
 
 /** Any error as the caller's mistake, or undefined when it is a fault of this program. */
-export function asInputError(error: unknown): InputError | undefined {
+export function asInputError(error: unknown, contentType?: string): InputError | undefined {
   if (error instanceof InputError) return error
   if (!(error instanceof Error)) return undefined
   const { code, statusCode } = error as Error & { code?: unknown; statusCode?: unknown }
   const known = typeof code === 'string' ? FRAMEWORK_CODES[code] : undefined
   if (known === 'STORAGE_FULL') {
     return new InputError(known, 'data folder: expected room to write, got a full disk', { cause: error })
+  }
+  if (known === 'UNSUPPORTED_MEDIA_TYPE') {
+    const got = contentType === undefined ? 'none' : `"${contentType.slice(0, 100)}"`
+    return new InputError(
+      known,
+      `Content-Type: expected ${[...LOG_MEDIA_TYPES, 'multipart/form-data'].join(' | ')}, got ${got}`,
+      { cause: error },
+    )
   }
   if (known !== undefined) return new InputError(known, error.message, { cause: error })
   if (typeof statusCode === 'number' && statusCode >= 400 && statusCode < 500) {
@@ -42,7 +51,7 @@ export function sendProblem(
   error: unknown,
   hiddenFolder: string,
 ): FastifyReply {
-  const mistake = asInputError(error)
+  const mistake = asInputError(error, request.headers['content-type'])
   if (mistake === undefined) {
     request.log.error({ err: error }, 'fault while answering a request')
   } else {
@@ -93,7 +102,10 @@ export function problemResponse(codes: readonly ErrorCode[], schemas = 'Problem#
     content: {
       'application/problem+json': {
         schema: {
-          allOf: [{ $ref: schemas }, { type: 'object', properties: { code: { type: 'string', enum: [...codes] } } }],
+          allOf: [
+            { $ref: schemas },
+            { type: 'object', properties: { code: { type: 'string', enum: [...codes] } } },
+          ],
         },
       },
     },

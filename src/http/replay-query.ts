@@ -72,8 +72,12 @@ function parseColumns(json: string | undefined): unknown {
   try {
     return JSON.parse(json) as unknown
   } catch (cause) {
-    throw new InputError('BAD_OPTION', `columns: expected a JSON object, got ${JSON.stringify(json.slice(0, 80))}`, {
-      cause,
-    })
+    throw new InputError(
+      'BAD_OPTION',
+      `columns: expected a JSON object, got ${JSON.stringify(json.slice(0, 80))}`,
+      {
+        cause,
+      },
+    )
   }
 }

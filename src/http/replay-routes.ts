@@ -4,10 +4,11 @@ import type { ErrorCode } from '../errors.ts'
 import type { ReplayRecord, Replays } from '../replay/contract.ts'
 import { ReplayState, type ScoringSettings } from '../sheet/index.ts'
 import { entityTag, matchesTag } from './etag.ts'
+import { LOG_MEDIA_TYPES } from './media-types.ts'
 import { problemResponses } from './problem.ts'
 import { ReplayQuery, replayOptions } from './replay-query.ts'
 import type { TypedServer } from './typed-server.ts'
-import { LOG_MEDIA_TYPES, receiveUpload, type UploadLimits } from './upload.ts'
+import { receiveUpload, type UploadLimits } from './upload.ts'
 
 export interface ReplayRouteParts {
   readonly replays: Replays
@@ -146,7 +147,9 @@ export function replayRoutes(app: TypedServer, parts: ReplayRouteParts): void {
             description: 'The score sheet, or the state of a replay that is not done',
             headers: ETAG,
             content: {
-              'application/json': { schema: { anyOf: [{ $ref: 'ScoreSheet#' }, { $ref: 'ReplaySummary#' }] } },
+              'application/json': {
+                schema: { anyOf: [{ $ref: 'ScoreSheet#' }, { $ref: 'ReplaySummary#' }] },
+              },
             },
           },
           304: { description: 'The sheet at hand is the same' },
@@ -225,13 +228,22 @@ export function replayRoutes(app: TypedServer, parts: ReplayRouteParts): void {
 
 /** The body is a stream that no validator may read: the schema describes it, and upload.ts checks it. */
 function requestBodies(): { content: Record<string, { schema: object }> } {
-  const log = { type: 'string', format: 'binary', description: 'the log; may be gzip, by itself or by Content-Encoding' }
+  const log = {
+    type: 'string',
+    format: 'binary',
+    description: 'the log; may be gzip, by itself or by Content-Encoding',
+  }
   const form = {
     type: 'object',
     required: ['log'],
     properties: {
       site: { $ref: 'SiteFile#' },
-      log: { type: 'array', minItems: 1, items: { type: 'string', format: 'binary' }, description: 'one part each' },
+      log: {
+        type: 'array',
+        minItems: 1,
+        items: { type: 'string', format: 'binary' },
+        description: 'one part each',
+      },
     },
   }
   const plain = LOG_MEDIA_TYPES.map((type) => [type, { schema: log }] as const)

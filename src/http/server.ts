@@ -8,11 +8,12 @@ import { checkShape } from '../setup/index.ts'
 import { Problem, ScoreSheet, SiteFile } from '../sheet/index.ts'
 import { healthRoutes, type ReadyCheck } from './health-routes.ts'
 import { KnownAddresses } from './known-addresses.ts'
+import { LOG_MEDIA_TYPES } from './media-types.ts'
 import { documentInfo } from './openapi.ts'
 import { sendProblem } from './problem.ts'
 import { ReplaySummary, replayRoutes, type ReplayRouteParts } from './replay-routes.ts'
 import type { TypedServer } from './typed-server.ts'
-import { FORM_LIMITS, LOG_MEDIA_TYPES } from './upload.ts'
+import { FORM_LIMITS } from './upload.ts'
 
 export interface ServerParts extends ReplayRouteParts {
   readonly ready: ReadyCheck
@@ -77,7 +78,8 @@ export async function buildServer(parts: ServerParts): Promise<TypedServer> {
   app.addHook('onRequest', async (request, reply) => {
     reply.header('x-request-id', request.id)
     reply.header('x-content-type-options', 'nosniff')
-    if (closing) throw new InputError('NOT_READY', 'service: expected to be running, got one that is stopping')
+    if (closing)
+      throw new InputError('NOT_READY', 'service: expected to be running, got one that is stopping')
     return Promise.resolve()
   })
   app.addHook('onSend', (request, _reply, payload) => {
@@ -89,7 +91,8 @@ export async function buildServer(parts: ServerParts): Promise<TypedServer> {
       request.log.info({ detail: (error as Error).message }, 'the sender broke off')
       return reply.code(499).send()
     }
-    if (error instanceof InputError && error.code === 'UNSUPPORTED_MEDIA_TYPE') reply.header('accept-encoding', 'gzip')
+    if (error instanceof InputError && error.code === 'UNSUPPORTED_MEDIA_TYPE')
+      reply.header('accept-encoding', 'gzip')
     return sendProblem(request as FastifyRequest, reply as FastifyReply, error, hiddenFolder)
   })
   app.setNotFoundHandler((request, reply) => {

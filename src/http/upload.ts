@@ -13,14 +13,6 @@ import { parseSite } from '../setup/index.ts'
 import type { SiteFile } from '../sheet/index.ts'
 import { storeStream, tooLarge, type ByteBudget } from './store-stream.ts'
 
-export const LOG_MEDIA_TYPES = [
-  'text/csv',
-  'text/plain',
-  'text/tab-separated-values',
-  'application/octet-stream',
-  'application/gzip',
-] as const
-
 /** A site file of 5000 turbines with power curves is below 4 MB. */
 const SITE_LIMIT_BYTES = 8_000_000
 
@@ -101,7 +93,10 @@ async function receiveBody(
   encoding: 'gzip' | 'identity',
 ): Promise<LogFile> {
   const path = join(folder, 'log-1')
-  const name = fileName(/filename="?([^";]+)"?/i.exec(request.headers['content-disposition'] ?? '')?.[1], 'log')
+  const name = fileName(
+    /filename="?([^";]+)"?/i.exec(request.headers['content-disposition'] ?? '')?.[1],
+    'log',
+  )
   const bytes = request.body instanceof Readable ? await storeStream(request.body, path, budget) : 0
   if (bytes === 0) throw new InputError('LOG_EMPTY', 'body: expected a log, got no bytes')
   return encoding === 'gzip' ? { name, path: await peelEncoding(path, budget.limitBytes) } : { name, path }
@@ -124,7 +119,9 @@ async function peelEncoding(path: string, limitBytes: number): Promise<string> {
     await storeStream(unpacked, peeled, { limitBytes, usedBytes: 0 })
   } catch (cause) {
     if (cause instanceof InputError) throw cause
-    throw new InputError('LOG_CORRUPT', 'body: expected whole gzip data, got a damaged or truncated one', { cause })
+    throw new InputError('LOG_CORRUPT', 'body: expected whole gzip data, got a damaged or truncated one', {
+      cause,
+    })
   } finally {
     unpacked.destroy()
     await broken
@@ -156,26 +153,50 @@ async function receiveForm(
 ): Promise<{ logs: LogFile[]; site: SiteFile }> {
   const logs: LogFile[] = []
   let site: SiteFile | undefined
-  for await (const part of request.parts()) {
+  for await (const part of wellFormedParts(request)) {
     if (part.fieldname === 'log' && part.type === 'file') {
       const name = fileName(part.filename, `log ${logs.length + 1}`)
       const path = join(folder, `log-${logs.length + 1}`)
-      const bytes = await storeStream(part.file, path, budget)
+      const bytes = await storeStream(part.file, path, budget).catch((cause: unknown) => {
+        throw asFormMistake(cause)
+      })
       if (bytes === 0) throw new InputError('LOG_EMPTY', `${name}: expected a log, got no bytes`)
       logs.push({ name, path })
     } else if (part.fieldname === 'site') {
       if (site !== undefined) throw new InputError('BAD_REQUEST', 'form: expected one part "site", got two')
       site = parseSite(await partText(part), 'site')
     } else {
-      throw new InputError('BAD_REQUEST', `form: expected parts "site" and "log", got "${part.fieldname.slice(0, 80)}"`)
+      throw new InputError(
+        'BAD_REQUEST',
+        `form: expected parts "site" and "log", got "${part.fieldname.slice(0, 80)}"`,
+      )
     }
   }
   if (logs.length === 0) throw new InputError('LOG_EMPTY', 'form: expected at least one part "log", got none')
   return { logs, site: site ?? {} }
 }
 
+/** The parts of a form; what the form parser throws is a plain Error, and the sender's mistake. */
+async function* wellFormedParts(request: FastifyRequest): AsyncGenerator<MultipartFile | MultipartValue> {
+  try {
+    yield* request.parts()
+  } catch (cause) {
+    throw asFormMistake(cause)
+  }
+}
+
+function asFormMistake(cause: unknown): unknown {
+  if (!(cause instanceof Error) || cause.constructor !== Error || 'code' in cause) return cause
+  return new InputError('BAD_REQUEST', `form: expected whole multipart data, got "${cause.message}"`, {
+    cause,
+  })
+}
+
 async function partText(part: MultipartFile | MultipartValue): Promise<string> {
-  const oversize = new InputError('BAD_SITE', `site: expected at most ${SITE_LIMIT_BYTES / 1_000_000} MB, got more`)
+  const oversize = new InputError(
+    'BAD_SITE',
+    `site: expected at most ${SITE_LIMIT_BYTES / 1_000_000} MB, got more`,
+  )
   if (part.type === 'field') {
     if (part.valueTruncated) throw oversize
     return typeof part.value === 'string' ? part.value : JSON.stringify(part.value)
@@ -204,6 +225,9 @@ export const FORM_LIMITS = {
 /** The last part of a name from outside, without control characters: it is printed in receipts, and never opened. */
 function fileName(raw: string | undefined, fallback: string): string {
   // eslint-disable-next-line no-control-regex -- control characters are what is taken out
-  const name = basename((raw ?? '').replaceAll('\\', '/').replaceAll(/[\u0000-\u001f\u007f]/g, '')).slice(0, 200)
+  const name = basename((raw ?? '').replaceAll('\\', '/').replaceAll(/[\u0000-\u001f\u007f]/g, '')).slice(
+    0,
+    200,
+  )
   return name.trim() === '' ? fallback : name
 }

@@ -11,7 +11,10 @@ const coercingAjv = new Ajv({ allErrors: false, strict: false, verbose: true, co
 addFormats(strictAjv)
 addFormats(coercingAjv)
 
-const compiled = { strict: new WeakMap<object, ValidateFunction>(), coercing: new WeakMap<object, ValidateFunction>() }
+const compiled = {
+  strict: new WeakMap<object, ValidateFunction>(),
+  coercing: new WeakMap<object, ValidateFunction>(),
+}
 
 export interface ShapeOptions {
   /** Code of the error when the value does not fit. */
@@ -91,7 +94,8 @@ const ARTICLES: Readonly<Record<string, string>> = {
 function expectation(error: ErrorObject): string {
   const schema = (error.parentSchema ?? {}) as Record<string, unknown>
   if (error.keyword === 'const') return JSON.stringify(schema['const'])
-  if (error.keyword === 'enum') return (schema['enum'] as unknown[]).map((one) => JSON.stringify(one)).join(' or ')
+  if (error.keyword === 'enum')
+    return (schema['enum'] as unknown[]).map((one) => JSON.stringify(one)).join(' or ')
   if (error.keyword === 'format') return `a ${String(schema['format'])}`
   if (error.keyword === 'pattern') return `text that matches ${String(schema['pattern'])}`
   if (error.keyword === 'minLength') return `at least ${String(schema['minLength'])} character`
@@ -123,6 +127,7 @@ function joinPlace(root: string, pointer: string, property?: string): string {
 const MAX_SHOWN = 80
 
 function shown(value: unknown): string {
-  const json = value === undefined ? 'nothing' : (JSON.stringify(value) as string | undefined) ?? typeof value
+  const json =
+    value === undefined ? 'nothing' : ((JSON.stringify(value) as string | undefined) ?? typeof value)
   return json.length > MAX_SHOWN ? `${json.slice(0, MAX_SHOWN)}...` : json
 }

@@ -14,9 +14,13 @@ export function parseSite(json: string, place: string): SiteFile {
   try {
     value = JSON.parse(json.replace(/^\uFEFF/, ''))
   } catch (cause) {
-    throw new InputError('BAD_SITE', `${place}: expected JSON, got text that is none (${(cause as Error).message})`, {
-      cause,
-    })
+    throw new InputError(
+      'BAD_SITE',
+      `${place}: expected JSON, got text that is none (${(cause as Error).message})`,
+      {
+        cause,
+      },
+    )
   }
   const site = checkShape(SiteFile, value, { code: 'BAD_SITE', place })
   const seen = new Set<string>()

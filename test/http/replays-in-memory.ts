@@ -1,0 +1,58 @@
+import { readFile } from 'node:fs/promises'
+import { InputError } from '../../src/errors.ts'
+import type { OneShotRequest, ReplayRecord, Replays } from '../../src/replay/contract.ts'
+import { sheetExample } from './sheet-example.ts'
+
+/** Keeps what it is asked, reads the logs, and answers a made-up sheet: what is tested is the way there and back. */
+export class ReplaysInMemory implements Replays {
+  readonly requests: OneShotRequest[] = []
+  readonly bodies: Buffer[][] = []
+  readonly records = new Map<string, ReplayRecord>()
+  /** What the next one-shot throws. */
+  failure: Error | undefined
+  #next = 1
+
+  async oneShot(request: OneShotRequest) {
+    this.requests.push(request)
+    this.bodies.push(await Promise.all(request.logs.map((log) => readFile(log.path))))
+    if (this.failure !== undefined) throw this.failure
+    const id = `replay-${this.#next++}`
+    const sheet = sheetExample(id)
+    // Two spaces of indent: an answer that is the same byte for byte can only have come from here.
+    this.add({ id, state: 'done', finishedMs: 2_000, sheet: JSON.stringify(sheet, null, 2) })
+    return sheet
+  }
+
+  add(record: Partial<ReplayRecord> & { id: string }): void {
+    const blank = {
+      state: 'queued',
+      site: null,
+      createdMs: 1_000,
+      finishedMs: null,
+      sheet: null,
+      problem: null,
+    } as const
+    this.records.set(record.id, { ...blank, ...record })
+  }
+
+  get(id: string): Promise<ReplayRecord> {
+    const record = this.records.get(id)
+    if (record === undefined) {
+      return Promise.reject(new InputError('REPLAY_NOT_FOUND', `replay: expected a known id, got "${id}"`))
+    }
+    return Promise.resolve(record)
+  }
+
+  list({ after, limit }: { after?: string; limit: number }) {
+    const all = [...this.records.values()]
+    const start = after === undefined ? 0 : all.findIndex((record) => record.id === after) + 1
+    const replays = all.slice(start, start + limit)
+    const next = start + limit < all.length ? (replays.at(-1)?.id ?? null) : null
+    return Promise.resolve({ replays, next })
+  }
+
+  async remove(id: string): Promise<void> {
+    await this.get(id)
+    this.records.delete(id)
+  }
+}
