@@ -1,6 +1,5 @@
 import { InputError } from '../../errors.ts'
-
-const RAD_PER_DEG = Math.PI / 180
+import { RAD_PER_DEG } from '../angle/index.ts'
 
 /**
  * Share of the power of an aligned rotor that is left at a yaw error, below rated: max(cos g, 0)^p.

@@ -1,13 +1,15 @@
 import { InputError } from '../../errors.ts'
+import { RAD_PER_DEG } from '../angle/index.ts'
 import { cosineLaw } from './cosine-law.ts'
 import { integrate } from './integrate.ts'
 
-const RAD_PER_DEG = Math.PI / 180
 const HALF_PI = Math.PI / 2
 /** Beyond this many standard deviations a normal density holds 2e-19 of its weight. */
 const NORMAL_REACH = 9
 /** A wrapped normal of this spread is uniform to 1e-34, so that a wider one need not be told from it. */
 const WIDEST_SIGMA_RAD = 4 * Math.PI
+/** A narrower spread changes the mean by less than 1e-16. */
+const NARROWEST_SIGMA_RAD = 1e-9
 /** A von Mises density is cut where it has fallen by exp(-42), 6e-19. */
 const VON_MISES_REACH = 42
 
@@ -29,7 +31,7 @@ export function expectedCosinePower(meanDeg: number, sigmaDeg: number, exponent:
   if (sigmaDeg < 0) throw new InputError('OUT_OF_RANGE', `sigmaDeg: expected >= 0, got ${sigmaDeg}`)
   const unspread = cosineLaw(meanDeg, exponent)
   if (Number.isNaN(unspread) || Number.isNaN(sigmaDeg)) return NaN
-  if (sigmaDeg === 0) return unspread
+  if (sigmaDeg * RAD_PER_DEG < NARROWEST_SIGMA_RAD) return unspread
   const mean = distanceFromNorth(meanDeg)
   const sigma = Math.min(sigmaDeg * RAD_PER_DEG, WIDEST_SIGMA_RAD)
   if (mean + NORMAL_REACH * sigma < HALF_PI) {
@@ -38,21 +40,19 @@ export function expectedCosinePower(meanDeg: number, sigmaDeg: number, exponent:
     if (exponent === 2) return (1 + cosine(2)) / 2
     if (exponent === 3) return (3 * cosine(1) + cosine(3)) / 4
   }
-  const from = mean - NORMAL_REACH * sigma
-  const to = mean + NORMAL_REACH * sigma
+  // Over z = (angle - mean) / sigma, one stretch for each forward half-turn in reach.
+  const firstTurn = Math.round((mean - NORMAL_REACH * sigma) / (2 * Math.PI))
+  const lastTurn = Math.round((mean + NORMAL_REACH * sigma) / (2 * Math.PI))
   let sum = 0
-  for (let turn = Math.round(from / (2 * Math.PI)); turn <= Math.round(to / (2 * Math.PI)); turn++) {
-    const centre = turn * 2 * Math.PI
+  for (let turn = firstTurn; turn <= lastTurn; turn++) {
+    const offset = mean - turn * 2 * Math.PI
     sum += integrate(
-      (angle) => {
-        const z = (angle - mean) / sigma
-        return Math.pow(Math.max(Math.cos(angle - centre), 0), exponent) * Math.exp((-z * z) / 2)
-      },
-      Math.max(from, centre - HALF_PI),
-      Math.min(to, centre + HALF_PI),
+      (z) => Math.pow(Math.max(Math.cos(offset + sigma * z), 0), exponent) * Math.exp((-z * z) / 2),
+      Math.max((-HALF_PI - offset) / sigma, -NORMAL_REACH),
+      Math.min((HALF_PI - offset) / sigma, NORMAL_REACH),
     )
   }
-  return Math.min(sum / (sigma * Math.sqrt(2 * Math.PI)), 1)
+  return Math.min(sum / Math.sqrt(2 * Math.PI), 1)
 }
 
 /**
@@ -68,18 +68,18 @@ export function expectedCosinePowerVonMises(meanDeg: number, kappa: number, expo
   if (kappa < 0) throw new InputError('OUT_OF_RANGE', `kappa: expected >= 0, got ${kappa}`)
   const unspread = cosineLaw(meanDeg, exponent)
   if (Number.isNaN(unspread) || Number.isNaN(kappa)) return NaN
-  if (kappa === Infinity) return unspread
+  if (kappa > 1 / NARROWEST_SIGMA_RAD ** 2) return unspread
   const mean = distanceFromNorth(meanDeg)
   // kappa (cos t - 1) = -2 kappa sin^2(t/2), which keeps its digits and cannot overflow.
   const halfSine = Math.sqrt(VON_MISES_REACH / (2 * kappa))
   const reach = halfSine < 1 ? 2 * Math.asin(halfSine) : Math.PI
   const density = (t: number) => Math.exp(-2 * kappa * Math.sin(t / 2) ** 2)
   let sum = 0
-  for (const centre of [0, 2 * Math.PI]) {
+  for (const offset of [mean, mean - 2 * Math.PI]) {
     sum += integrate(
-      (angle) => Math.pow(Math.max(Math.cos(angle - centre), 0), exponent) * density(angle - mean),
-      Math.max(mean - reach, centre - HALF_PI),
-      Math.min(mean + reach, centre + HALF_PI),
+      (t) => Math.pow(Math.max(Math.cos(offset + t), 0), exponent) * density(t),
+      Math.max(-reach, -HALF_PI - offset),
+      Math.min(reach, HALF_PI - offset),
     )
   }
   return Math.min(sum / (2 * integrate(density, 0, reach)), 1)

@@ -13,7 +13,7 @@ const KNEE_SHARE = 0.95
 const CLEAR_FALL = 2
 
 export interface CurveOptions {
-  /** Width of a bin, m/s, > 0. Default 0.5; the centres are multiples of it. */
+  /** Width of a bin, m/s, > 0.01. Default 0.5; the centres are multiples of it. */
   binWidthMs?: number
   /** Rows that a bin must have, >= 1. Default 3. */
   minimumCount?: number
@@ -57,7 +57,7 @@ export interface MeasuredCurve {
  * @param speedsMs  m/s; length n. A row with a NaN, infinite or negative value, or above 100 m/s, is skipped.
  * @param powersKw  kW; length n; may be negative (own consumption). A row with NaN or infinity is skipped.
  * @returns a curve without points when no bin has enough rows.
- * @throws InputError LENGTH_MISMATCH; OUT_OF_RANGE for a bin width not above 0 or a minimum count below 1.
+ * @throws InputError LENGTH_MISMATCH; OUT_OF_RANGE for a bin width not above 0.01 or a minimum count below 1.
  */
 export function measuredPowerCurve(
   speedsMs: ArrayLike<number>,
@@ -137,14 +137,10 @@ export function powerAt(curve: MeasuredCurve, speedMs: number): number {
   const n = speedsMs.length
   const half = binWidthMs / 2
   if (n === 0 || !(speedMs >= speedsMs[0]! - half && speedMs <= speedsMs[n - 1]! + half)) return NaN
-  // The last point at or below the speed, -1 before the first.
-  let i = -1
-  let above = n
-  while (above - i > 1) {
-    const middle = (i + above) >> 1
-    if (speedsMs[middle]! <= speedMs) i = middle
-    else above = middle
-  }
+  // The last point at or below the speed, -1 before the first. The point of the speed's own bin stands at this place or, where
+  // bins are missing, before it.
+  let i = Math.min(Math.floor(speedMs / binWidthMs + 0.5) - bins[0]!, n - 1)
+  while (i >= 0 && speedsMs[i]! > speedMs) i--
   if (i < 0) return fittedKw[0]! + (speedMs - speedsMs[0]!) * slopes[0]!
   if (i === n - 1) return fittedKw[i]! + (speedMs - speedsMs[i]!) * slopes[i]!
   if (bins[i + 1]! - bins[i]! > 2 && speedMs > speedsMs[i]! + half && speedMs < speedsMs[i + 1]! - half)
