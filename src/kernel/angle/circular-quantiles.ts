@@ -4,9 +4,9 @@ import { wrap180 } from './wrap.ts'
 
 /**
  * Quantiles about the mean direction: the circle is cut opposite the mean, the differences to the mean, in [-180, 180),
- * are taken as numbers on a line, and their quantiles (type 7, linear between order statistics, as in R's default) are put
- * back on the circle. The half-quantile is not the circular median where the two halves of the circle are cut
- * differently; see {@link circularMedian}.
+ * are taken as numbers on a line, and their quantiles (type 7, linear between order statistics, as in R's `quantile`) are
+ * put back on the circle. R's package `circular` cuts opposite the median instead, which matters only when angles lie
+ * between the two cuts; then the half-quantile here is not the {@link circularMedian} either.
  *
  * @param anglesDeg      degrees, any turn; not finite = missing
  * @param probabilities  0 to 1

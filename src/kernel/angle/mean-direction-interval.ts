@@ -40,7 +40,8 @@ export function meanDirectionInterval(
 
 /**
  * Confidence interval of the mean direction for von Mises angles, from small samples (n from 8): Zar's arccosine form, in
- * one formula below a resultant length of 0.9 and another from there on. The angles must be independent.
+ * one formula below a resultant length of 0.9 and another from there on. It errs to the wide side: for large n by 32 % just
+ * below 0.9, by 6 % at 0.9, less the closer the angles lie. The angles must be independent.
  *
  * @param anglesDeg       degrees, any turn; not finite = missing
  * @param normalQuantile  z > 0; z^2 is the chi-square quantile with one degree of freedom; 95 % by default
