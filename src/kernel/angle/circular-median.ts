@@ -47,7 +47,7 @@ export function circularMedian(anglesDeg: ArrayLike<number>): number {
  * two numbers always belong together.
  *
  * @param anglesDeg  degrees, any turn; not finite = missing
- * @source Fisher (1993), eq. 2.36
+ * @source Fisher (1993), sec. 2.3
  * @example meanDeviation([350, 0, 40]) // 16.666666666666668
  */
 export function meanDeviation(anglesDeg: ArrayLike<number>): number {

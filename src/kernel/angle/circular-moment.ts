@@ -18,7 +18,7 @@ export interface CircularMoment {
  * @param anglesDeg  degrees, any turn; not finite = missing
  * @param order      p, a whole number >= 1
  * @throws InputError OUT_OF_RANGE for another order
- * @source Fisher (1993), eq. 2.23 to 2.26
+ * @source Fisher (1993), sec. 2.3
  * @example circularMoment([10, 190], 2).direction // 20
  */
 export function circularMoment(anglesDeg: ArrayLike<number>, order: number): CircularMoment {

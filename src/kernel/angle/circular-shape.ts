@@ -9,7 +9,7 @@ const MIN_VARIANCE = 1e-20
  * the variance in square radians. NaN when nothing is known or the angles cancel.
  *
  * @param anglesDeg  degrees, any turn; not finite = missing
- * @source Fisher (1993), eq. 2.28
+ * @source Fisher (1993), sec. 2.3
  */
 export function circularDispersion(anglesDeg: ArrayLike<number>): number {
   const { variance, halfSineFourth, halfSineSkew } = centredMoments(anglesDeg)
@@ -27,7 +27,7 @@ export function circularDispersion(anglesDeg: ArrayLike<number>): number {
  * angles cancel.
  *
  * @param anglesDeg  degrees, any turn; not finite = missing
- * @source Fisher (1993), eq. 2.29; Pewsey, Neuhaeuser & Ruxton (2013), Circular Statistics in R, ch. 3
+ * @source Fisher (1993), sec. 2.3; Pewsey, Neuhaeuser & Ruxton (2013), Circular Statistics in R, ch. 3
  */
 export function circularSkewness(anglesDeg: ArrayLike<number>): number {
   const { variance, halfSineSkew } = centredMoments(anglesDeg)
@@ -39,7 +39,7 @@ export function circularSkewness(anglesDeg: ArrayLike<number>): number {
  * different angles and where the angles cancel.
  *
  * @param anglesDeg  degrees, any turn; not finite = missing
- * @source Fisher (1993), eq. 2.30; Pewsey, Neuhaeuser & Ruxton (2013), ch. 3
+ * @source Fisher (1993), sec. 2.3; Pewsey, Neuhaeuser & Ruxton (2013), ch. 3
  */
 export function circularKurtosis(anglesDeg: ArrayLike<number>): number {
   const { variance, halfSineFourth } = centredMoments(anglesDeg)

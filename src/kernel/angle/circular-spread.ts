@@ -6,7 +6,7 @@ import { DEG_PER_RAD } from './radians.ts'
  * Circular variance 1 - R, no unit, 0 to 1. (Some books call 2 (1 - R) by this name.) NaN when nothing is known.
  *
  * @param anglesDeg  degrees, any turn; not finite = missing
- * @source Fisher (1993), Statistical Analysis of Circular Data, eq. 2.11
+ * @source Fisher (1993), Statistical Analysis of Circular Data, sec. 2.3
  * @example circularVariance([40, 400]) // 0
  */
 export function circularVariance(anglesDeg: ArrayLike<number>): number {
@@ -18,7 +18,7 @@ export function circularVariance(anglesDeg: ArrayLike<number>): number {
  * standard deviation of a wrapped normal; divisor n, so nothing is corrected for small n. NaN when nothing is known.
  *
  * @param anglesDeg  degrees, any turn; not finite = missing
- * @source Fisher (1993), eq. 2.12; Zar's s0
+ * @source Fisher (1993), sec. 2.3; Zar's s0
  * @example circularSd([0, 180]) // Infinity
  */
 export function circularSd(anglesDeg: ArrayLike<number>): number {

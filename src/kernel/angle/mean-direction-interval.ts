@@ -25,7 +25,7 @@ export interface MeanDirectionInterval {
  * @param normalQuantile  z > 0, standard normal quantile of the two-sided interval; 95 % by default
  * @returns whole circle (180) where the argument of the arcsine passes 1. One angle alone: NaN half-width.
  * @throws InputError OUT_OF_RANGE for a z that is not > 0
- * @source Fisher (1993), eq. 4.22
+ * @source Fisher (1993), ch. 4
  */
 export function meanDirectionInterval(
   anglesDeg: ArrayLike<number>,

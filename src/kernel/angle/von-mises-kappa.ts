@@ -17,7 +17,7 @@ const LAST_STEP = 1e-9
  * @param resultant  no unit; 0 gives 0, 1 and above (rounding) Infinity, NaN gives NaN
  * @returns kappa, no unit, 0 to Infinity
  * @throws InputError OUT_OF_RANGE for a resultant below 0
- * @source Mardia & Jupp (2000), eq. 5.3.5
+ * @source Mardia & Jupp (2000), sec. 5.3
  * @example vonMisesKappa(0) // 0
  */
 export function vonMisesKappa(resultant: number): number {
@@ -44,7 +44,7 @@ export function vonMisesKappa(resultant: number): number {
  * @param count      n, how many angles the resultant came from; 1 and more
  * @throws InputError OUT_OF_RANGE for a resultant below 0 or a count below 1
  * @source Best & Fisher (1981), The bias of the maximum likelihood estimators of the von Mises-Fisher concentration
- *   parameters; Fisher (1993), eq. 4.41
+ *   parameters; Fisher (1993), ch. 4
  */
 export function vonMisesKappaCorrected(resultant: number, count: number): number {
   if (!(count >= 1)) throw new InputError('OUT_OF_RANGE', `count: expected >= 1, got ${count}`)
