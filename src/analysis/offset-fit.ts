@@ -1,184 +1,227 @@
-import { powerAt, steepnessAt } from '../kernel/wind/index.ts'
+import { RAD_PER_DEG } from '../kernel/angle/index.ts'
 import {
   biweight,
+  cellLevels,
+  dayCells,
   dayCellSums,
   huberWeight,
   robustSd,
+  serialNoise,
   slopeWithinCells,
+  whiten,
+  type DayCells,
   type DayCellSums,
+  type SerialNoise,
 } from '../kernel/stats/index.ts'
-import type { TurbineFrame } from '../frame/index.ts'
+import type { OffsetRows } from './offset-rows.ts'
 
-const RAD_PER_DEG = Math.PI / 180
 const MAX_ITERATIONS = 40
-/** Of the offset, radians: far below what any log can tell. */
-const CONVERGED_RAD = 1e-7
+/** Of the offset, radians: a ten-thousandth of a degree, far below what any log can tell. */
+const CONVERGED_RAD = 2e-6
+/** Iterations in which the scatter of the bands and the memory of the noise are measured. */
+const SETTLING_ITERATIONS = 3
 /** Iterations with Huber's weights before the biweight, which needs a good start, takes over. */
-const HUBER_ITERATIONS = 4
+const HUBER_ITERATIONS = 2
+/** Residuals beyond so many standard deviations count as that many for the memory of the noise. */
+const CLIP = 3
 /** Rows below which a wind-speed band takes the scatter of all bands. */
 const MIN_ROWS_FOR_SCATTER = 30
 /** Beyond this yaw error the cosine law is no longer trusted and its logarithm runs away, radians. */
-const MAX_YAW_ERROR_RAD = (60 * Math.PI) / 180
+const MAX_YAW_ERROR_RAD = 60 * RAD_PER_DEG
 
-/** The rows of one turbine that tell its static offset. All arrays of length n. */
-export interface OffsetRows {
-  readonly days: number
-  readonly cells: number
-  readonly day: Int32Array
-  /** Level group: wind speed by whole m/s, tercile of turbulence, day or night. */
-  readonly cell: Int32Array
-  /** Band of whole m/s, 0 = lowest. */
-  readonly band: Int32Array
-  readonly bands: number
-  /** Vane, radians. */
-  readonly vane: Float64Array
-  /** d ln P / d ln u of the measured curve at the row's wind speed. */
-  readonly steepness: Float64Array
-  /** ln of power over the measured curve. */
-  readonly logRatio: Float64Array
+export interface OffsetModel {
+  /** p. */
+  readonly exponent: number
+  /** a: the anemometer reads u (1 + a v) with v in degrees of vane; taken as known. */
+  readonly responsePerDeg: number
+}
+
+/** What is known of the noise of ln P: it does not depend on the exponent. */
+export interface OffsetNoise {
+  /** SD of ln P row by row: that of the band of wind speed. */
+  readonly scale: Float64Array
+  /** Robust SD over all rows. */
+  readonly scatter: number
+  readonly serial: SerialNoise
 }
 
 export interface OffsetFit {
-  /** d, radians. */
+  /** d, radians; NaN where the vane does not vary inside any group. */
   readonly offset: number
   readonly converged: boolean
-  /** Weights of the rows at the end; length n. */
-  readonly weight: Float64Array
-  /** Sums at the end: their slope is the last step of d (0 when converged), so resampled slopes are deviations of d. */
+  /** Sums at the end: their slope is the last step of d, so resampled slopes are deviations of d. */
   readonly sums: DayCellSums
   /** Change of d per unit of anemometer response (relative change of wind speed per degree of vane), radians. */
   readonly perResponse: number
-  /** Robust SD of what remains of ln P. */
-  readonly scatter: number
-}
-
-/** Picks the used rows of a frame and puts them in level groups. */
-export function offsetRows(frame: TurbineFrame, days: number): OffsetRows {
-  const used: number[] = []
-  for (let i = 0; i < frame.time.length; i++) if (frame.reason[i] === 0) used.push(i)
-  const n = used.length
-  const lowest = Math.floor(frame.windMinMs)
-  const band = Int32Array.from(used, (i) => Math.floor(frame.normalisedSpeed[i]!) - lowest)
-  const bands = band.reduce((most, b) => Math.max(most, b + 1), 0)
-  const tercile = turbulenceTerciles(
-    used.map((i) => frame.turbulence[i]!),
-    band,
-    bands,
-  )
-  const curve = frame.curve
-  return {
-    days,
-    cells: bands * 6,
-    day: Int32Array.from(used, (i) => frame.day[i]!),
-    cell: Int32Array.from({ length: n }, (_, k) => (band[k]! * 3 + tercile[k]!) * 2 + frame.night[used[k]!]!),
-    band,
-    bands,
-    vane: Float64Array.from(used, (i) => frame.vane[i]! * RAD_PER_DEG),
-    steepness: Float64Array.from(used, (i) => steepnessAt(curve, frame.normalisedSpeed[i]!)),
-    logRatio: Float64Array.from(used, (i) =>
-      Math.log(frame.power[i]! / powerAt(curve, frame.normalisedSpeed[i]!)),
-    ),
-  }
+  readonly noise: OffsetNoise
 }
 
 /**
- * Least squares for d in  ln P = level(group) + ln P(u cos(v + d)^(p/3)) + noise,  with the local steepness s of the
- * measured curve: the yaw term is s (p/3) ln cos(v + d). Bands of wind speed count by the inverse of their scatter;
- * outliers lose weight only by what is left after the yaw term.
+ * Generalised least squares for d in  ln P = level(group) + ln P(u cos(v + d)^(p/3)) + noise,  with the local steepness
+ * s of the measured curve: the yaw term is s (p/3) ln cos(v + d).
  *
- * @param model.exponent  p.
- * @param model.responsePerDeg  a: the anemometer reads u (1 + a v) with v in degrees of vane; taken as known.
- * @returns offset NaN where the vane does not vary inside any group.
- * @source Gauss-Newton on the model of the design's section on the static offset; weights by Huber (1964), Beaton & Tukey (1974).
+ * Bands of wind speed count by the inverse of their scatter. The error of an anemometer against the rotor's mean wind
+ * lasts for tens of minutes, the vane does not: what the rows before foretell of the noise is taken out first. Outliers
+ * lose weight only by what is left after the yaw term.
+ *
+ * @param known  start value and noise of an earlier fit to the same rows; without it both are worked out.
+ * @source Gauss-Newton on the model above; weights by Huber (1964) and Beaton & Tukey (1974).
  */
-export function fitOffset(rows: OffsetRows, model: { exponent: number; responsePerDeg: number }): OffsetFit {
+export function fitOffset(
+  rows: OffsetRows,
+  model: OffsetModel,
+  known?: { offset: number; noise: OffsetNoise },
+): OffsetFit {
   const n = rows.vane.length
-  const third = model.exponent / 3
+  const layout = dayCells(rows.day, rows.cell, rows)
   const x = new Float64Array(n)
   const y = new Float64Array(n)
-  const weight = new Float64Array(n).fill(1)
-  let offset = 0
-  let sums = dayCellSums({ day: rows.day, cell: rows.cell, x, y, weight }, rows)
-  let scatter = NaN
+  const bySpeed = new Float64Array(n)
+  for (let i = 0; i < n; i++) bySpeed[i] = rows.steepness[i]! * (rows.vane[i]! / RAD_PER_DEG)
+  let noise = known?.noise ?? {
+    scale: new Float64Array(n).fill(1),
+    scatter: NaN,
+    serial: { share: 0, persistence: 0 },
+  }
+  let offset = known?.offset ?? 0
+  let weight = new Float64Array(n).fill(1)
+  let sums = dayCellSums(layout, x, y, weight)
   let converged = false
 
-  for (let iteration = 0; iteration < MAX_ITERATIONS && !converged; iteration++) {
-    for (let i = 0; i < n; i++) {
-      const s = rows.steepness[i]!
-      const error = Math.max(-MAX_YAW_ERROR_RAD, Math.min(MAX_YAW_ERROR_RAD, rows.vane[i]! + offset))
-      const byAnemometer = s * model.responsePerDeg * (rows.vane[i]! / RAD_PER_DEG)
-      x[i] = -s * third * Math.tan(error)
-      y[i] = rows.logRatio[i]! + byAnemometer - s * third * Math.log(Math.cos(error))
-    }
-    sums = dayCellSums({ day: rows.day, cell: rows.cell, x, y, weight }, rows)
+  const first = known ? SETTLING_ITERATIONS : 0
+  for (let iteration = first; iteration < MAX_ITERATIONS && !converged; iteration++) {
+    fillYawTerm(rows, model, offset, bySpeed, x, y)
+    const levelX = withoutLevels(rows, x, noise.scale, weight)
+    const levelY = withoutLevels(rows, y, noise.scale, weight)
+    const [whiteX, whiteY] = whiten([levelX, levelY], rows, noise.serial) as [Float64Array, Float64Array]
+    sums = dayCellSums(layout, whiteX, whiteY, weight)
     const step = slopeWithinCells(sums)
-    if (Number.isNaN(step)) return { offset: NaN, converged: false, weight, sums, perResponse: NaN, scatter }
-    offset = Math.max(-MAX_YAW_ERROR_RAD, Math.min(MAX_YAW_ERROR_RAD, offset + step))
-    scatter = reweigh(rows, x, y, step, sums, weight, iteration < HUBER_ITERATIONS ? huberWeight : biweight)
-    converged = iteration > HUBER_ITERATIONS && Math.abs(step) < CONVERGED_RAD
+    if (Number.isNaN(step)) return { offset: NaN, converged: false, sums, perResponse: NaN, noise }
+    offset = clamp(offset + step, MAX_YAW_ERROR_RAD)
+    if (iteration < SETTLING_ITERATIONS) {
+      noise = measureNoise(rows, levelX, levelY, step, noise.scale)
+    } else {
+      const biweightFrom = SETTLING_ITERATIONS + HUBER_ITERATIONS
+      weight = robustWeights(
+        rows,
+        whiteX,
+        whiteY,
+        step,
+        sums,
+        iteration < biweightFrom ? huberWeight : biweight,
+      )
+      converged = iteration > biweightFrom && Math.abs(step) < CONVERGED_RAD
+    }
   }
-  const bySpeed = rows.steepness.map((s, i) => s * (rows.vane[i]! / RAD_PER_DEG))
-  const perResponse = slopeWithinCells(
-    dayCellSums({ day: rows.day, cell: rows.cell, x, y: bySpeed, weight }, rows),
-  )
-  return { offset, converged, weight, sums, perResponse, scatter }
+  return {
+    offset,
+    converged,
+    sums,
+    perResponse: perResponseOf(rows, layout, x, bySpeed, noise, weight),
+    noise,
+  }
 }
 
-/** New weights from the residuals, in place: inverse variance of the band times the robust weight. Returns the scatter of all. */
-function reweigh(
+/** x = derivative of the yaw term by d; y = what is left of ln P with d as it stands. */
+function fillYawTerm(
+  rows: OffsetRows,
+  model: OffsetModel,
+  offset: number,
+  bySpeed: Float64Array,
+  x: Float64Array,
+  y: Float64Array,
+): void {
+  const third = model.exponent / 3
+  for (let i = 0; i < x.length; i++) {
+    const s = rows.steepness[i]! * third
+    const error = clamp(rows.vane[i]! + offset, MAX_YAW_ERROR_RAD)
+    x[i] = -s * Math.tan(error)
+    y[i] = rows.logRatio[i]! + model.responsePerDeg * bySpeed[i]! - s * Math.log(Math.cos(error))
+  }
+}
+
+/** How d moves with the response: the same regression with the effect of a response in place of ln P. */
+function perResponseOf(
+  rows: OffsetRows,
+  layout: DayCells,
+  x: Float64Array,
+  bySpeed: Float64Array,
+  noise: OffsetNoise,
+  weight: Float64Array,
+): number {
+  const levelled = [x, bySpeed].map((values) => withoutLevels(rows, values, noise.scale, weight))
+  const [whiteX, whiteBySpeed] = whiten(levelled, rows, noise.serial) as [Float64Array, Float64Array]
+  return slopeWithinCells(dayCellSums(layout, whiteX, whiteBySpeed, weight))
+}
+
+/** Values minus the weighted mean of their cell, over the scatter of their band. */
+function withoutLevels(
+  rows: OffsetRows,
+  values: Float64Array,
+  scale: Float64Array,
+  weight: Float64Array,
+): Float64Array {
+  const sum = new Float64Array(rows.cells)
+  const count = new Float64Array(rows.cells)
+  for (let i = 0; i < values.length; i++) {
+    sum[rows.cell[i]!]! += weight[i]! * values[i]!
+    count[rows.cell[i]!]! += weight[i]!
+  }
+  const out = new Float64Array(values.length)
+  for (let i = 0; i < values.length; i++) {
+    const cell = rows.cell[i]!
+    out[i] = count[cell]! > 0 ? (values[i]! - sum[cell]! / count[cell]!) / scale[i]! : 0
+  }
+  return out
+}
+
+/** Scatter by band of wind speed, and memory, of what the yaw term leaves. */
+function measureNoise(
+  rows: OffsetRows,
+  levelX: Float64Array,
+  levelY: Float64Array,
+  step: number,
+  oldScale: Float64Array,
+): OffsetNoise {
+  const n = levelX.length
+  const residual = new Float64Array(n)
+  const byBand = Array.from({ length: rows.bands }, (): number[] => [])
+  for (let i = 0; i < n; i++) {
+    residual[i] = (levelY[i]! - step * levelX[i]!) * oldScale[i]!
+    byBand[rows.band[i]!]!.push(residual[i]!)
+  }
+  const scatter = robustSd(residual)
+  const scale = new Float64Array(n).fill(1)
+  // Noise-free rows all count alike, and have no memory.
+  if (!(scatter > 0)) return { scale, scatter, serial: { share: 0, persistence: 0 } }
+  const bandScatter = byBand.map((inBand) => {
+    const sd = robustSd(inBand)
+    return inBand.length >= MIN_ROWS_FOR_SCATTER && sd > 0.2 * scatter ? sd : scatter
+  })
+  for (let i = 0; i < n; i++) {
+    scale[i] = bandScatter[rows.band[i]!]!
+    residual[i] = clamp(residual[i]! / scale[i]!, CLIP)
+  }
+  return { scale, scatter, serial: serialNoise(residual, rows) }
+}
+
+function robustWeights(
   rows: OffsetRows,
   x: Float64Array,
   y: Float64Array,
   slope: number,
   sums: DayCellSums,
-  weight: Float64Array,
   robust: (standardised: number) => number,
-): number {
-  const n = x.length
+): Float64Array<ArrayBuffer> {
   const level = cellLevels(sums, slope)
-  const residual = new Float64Array(n)
-  for (let i = 0; i < n; i++) residual[i] = y[i]! - slope * x[i]! - level[rows.cell[i]!]!
-  const overall = robustSd(residual)
-  if (!(overall > 0)) return overall // noise-free: every weight stays as it is
-  const byBand = Array.from({ length: rows.bands }, (_, b) => {
-    const inBand = residual.filter((_, i) => rows.band[i] === b)
-    const sd = robustSd(inBand)
-    return inBand.length >= MIN_ROWS_FOR_SCATTER && sd > 0.2 * overall ? sd : overall
-  })
-  for (let i = 0; i < n; i++) {
-    const sd = byBand[rows.band[i]!]!
-    weight[i] = (robust(residual[i]! / sd) * (overall * overall)) / (sd * sd)
-  }
-  return overall
+  const weight = new Float64Array(x.length).fill(1)
+  const residual = new Float64Array(x.length)
+  for (let i = 0; i < x.length; i++) residual[i] = y[i]! - slope * x[i]! - level[rows.cell[i]!]!
+  const sd = robustSd(residual)
+  if (sd > 0) for (let i = 0; i < x.length; i++) weight[i] = robust(residual[i]! / sd)
+  return weight
 }
 
-function cellLevels(sums: DayCellSums, slope: number): Float64Array {
-  const level = new Float64Array(sums.cells)
-  for (let c = 0; c < sums.cells; c++) {
-    let w = 0
-    let remainder = 0
-    for (let k = sums.cellStart[c]!; k < sums.cellStart[c + 1]!; k++) {
-      w += sums.w[k]!
-      remainder += sums.wy[k]! - slope * sums.wx[k]!
-    }
-    level[c] = w > 0 ? remainder / w : 0
-  }
-  return level
-}
-
-/** 0, 1, 2 by turbulence inside each band; all 0 where no SD of the wind speed is logged, 1 where a single value is missing. */
-function turbulenceTerciles(turbulence: readonly number[], band: Int32Array, bands: number): Uint8Array {
-  const tercile = new Uint8Array(turbulence.length)
-  for (let b = 0; b < bands; b++) {
-    const known = turbulence.filter((value, k) => band[k] === b && !Number.isNaN(value)).sort((p, q) => p - q)
-    if (known.length === 0) continue
-    const low = known[Math.floor(known.length / 3)]!
-    const high = known[Math.floor((2 * known.length) / 3)]!
-    for (let k = 0; k < turbulence.length; k++) {
-      if (band[k] !== b) continue
-      const value = turbulence[k]!
-      tercile[k] = Number.isNaN(value) ? 1 : value < low ? 0 : value < high ? 1 : 2
-    }
-  }
-  return tercile
+function clamp(value: number, most: number): number {
+  return Math.max(-most, Math.min(most, value))
 }

@@ -3,7 +3,8 @@ import { resampledSlopes, studentQuantile, type DayWeights } from '../kernel/sta
 import { powerAt } from '../kernel/wind/index.ts'
 import type { TurbineFrame } from '../frame/index.ts'
 import type { ScoringSettings, TurbineSheet } from '../sheet/index.ts'
-import { fitOffset, offsetRows, type OffsetRows } from './offset-fit.ts'
+import { fitOffset } from './offset-fit.ts'
+import { offsetRows, type OffsetRows } from './offset-rows.ts'
 import type { Block } from './readiness.ts'
 import { runningBelowRated } from './vane-statistics.ts'
 
@@ -77,7 +78,10 @@ export function staticOffset(
   const half = Math.hypot(statistical.offset, response)
   const standingHalf = Math.hypot(statistical.standing, response)
   const byExponent = SHOWN_EXPONENTS.map((exponent) => {
-    const shown = exponent === settings.exponent ? fit : fitOffset(rows, { exponent, responsePerDeg })
+    const shown =
+      exponent === settings.exponent
+        ? fit
+        : fitOffset(rows, { exponent, responsePerDeg }, { offset: fit.offset, noise: fit.noise })
     const shownDeg = shown.converged ? shown.offset * DEG_PER_RAD : NaN
     return { exponent, offsetDeg: shownDeg, standingDeg: wrap180(shownDeg + vane.meanDeg) }
   })

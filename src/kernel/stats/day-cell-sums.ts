@@ -1,84 +1,103 @@
 import { InputError } from '../../errors.ts'
 import type { DayWeights } from './day-weights.ts'
 
+/** Sums kept for a pair: of w, wx, wy, wxx, wxy. */
+const SUMS = 5
+
 /**
- * Weighted sums of a regression per cell and day. Rows of one cell share a level; rows of one day are drawn together.
- * From these sums a slope over any choice of days costs as much as there are pairs of cell and day, not rows.
+ * Which pair of cell and day each row of a regression belongs to. Rows of one cell share a level; rows of one day are
+ * drawn together. Only pairs with rows are kept.
  */
-export interface DayCellSums {
+export interface DayCells {
   readonly days: number
   readonly cells: number
   /** Pairs of cell `c` lie at [cellStart[c], cellStart[c + 1]). */
   readonly cellStart: Int32Array
+  /** Day of each pair. */
   readonly day: Int32Array
-  readonly w: Float64Array
-  readonly wx: Float64Array
-  readonly wy: Float64Array
-  readonly wxx: Float64Array
-  readonly wxy: Float64Array
-}
-
-/** Rows of a regression; all of length n. A row with weight 0 has no say. */
-export interface RegressionRows {
-  /** 0 to days - 1. */
-  readonly day: ArrayLike<number>
-  /** 0 to cells - 1. */
-  readonly cell: ArrayLike<number>
-  readonly x: ArrayLike<number>
-  readonly y: ArrayLike<number>
-  /** >= 0. */
-  readonly weight: ArrayLike<number>
+  /** Pair of each row; length n. */
+  readonly pairOf: Int32Array
 }
 
 /**
- * @param size.days   number of days, cells: number of cells; indices of the rows lie below them.
+ * Weighted sums of a regression per pair of cell and day. From these a slope over any choice of days costs as much as
+ * there are pairs, not rows.
+ */
+export interface DayCellSums {
+  readonly layout: DayCells
+  /** Sums of w, wx, wy, wxx and wxy of pair k at [5 k, 5 k + 5). */
+  readonly sums: Float64Array
+}
+
+/**
+ * @param day   0 to days - 1, integer; length n.
+ * @param cell  0 to cells - 1, integer; length n.
  * @throws InputError LENGTH_MISMATCH, OUT_OF_RANGE
  */
-export function dayCellSums(rows: RegressionRows, size: { days: number; cells: number }): DayCellSums {
-  const n = rows.x.length
-  for (const key of ['day', 'cell', 'y', 'weight'] as const) {
-    if (rows[key].length !== n)
-      throw new InputError('LENGTH_MISMATCH', `${key}: expected ${n} values, got ${rows[key].length}`)
-  }
+export function dayCells(
+  day: ArrayLike<number>,
+  cell: ArrayLike<number>,
+  size: { days: number; cells: number },
+): DayCells {
+  const n = day.length
+  if (cell.length !== n)
+    throw new InputError('LENGTH_MISMATCH', `cell: expected ${n} values, got ${cell.length}`)
   const { days, cells } = size
-  const slotOf = new Int32Array(days * cells).fill(-1)
+  const slot = new Int32Array(days * cells).fill(-1)
   for (let i = 0; i < n; i++) {
-    const day = rows.day[i]!
-    const cell = rows.cell[i]!
-    if (!(day >= 0 && day < days))
-      throw new InputError('OUT_OF_RANGE', `day[${i}]: expected 0 to ${days - 1}, got ${day}`)
-    if (!(cell >= 0 && cell < cells))
-      throw new InputError('OUT_OF_RANGE', `cell[${i}]: expected 0 to ${cells - 1}, got ${cell}`)
-    slotOf[cell * days + day] = 0
+    const d = day[i]!
+    const c = cell[i]!
+    if (!(d >= 0 && d < days))
+      throw new InputError('OUT_OF_RANGE', `day[${i}]: expected 0 to ${days - 1}, got ${d}`)
+    if (!(c >= 0 && c < cells))
+      throw new InputError('OUT_OF_RANGE', `cell[${i}]: expected 0 to ${cells - 1}, got ${c}`)
+    slot[c * days + d] = 0
   }
   const cellStart = new Int32Array(cells + 1)
-  let pairs = 0
+  const pairDays: number[] = []
   for (let c = 0; c < cells; c++) {
-    cellStart[c] = pairs
-    for (let d = 0; d < days; d++) if (slotOf[c * days + d] === 0) slotOf[c * days + d] = pairs++
+    cellStart[c] = pairDays.length
+    for (let d = 0; d < days; d++) {
+      if (slot[c * days + d] === 0) slot[c * days + d] = pairDays.push(d) - 1
+    }
   }
-  cellStart[cells] = pairs
-  const day = new Int32Array(pairs)
-  for (let c = 0; c < cells; c++) {
-    for (let d = 0; d < days; d++) if (slotOf[c * days + d]! >= 0) day[slotOf[c * days + d]!] = d
+  cellStart[cells] = pairDays.length
+  const pairOf = new Int32Array(n)
+  for (let i = 0; i < n; i++) pairOf[i] = slot[cell[i]! * days + day[i]!]!
+  return { days, cells, cellStart, day: Int32Array.from(pairDays), pairOf }
+}
+
+/**
+ * @param x, y, weight  length n, as the layout; weight >= 0: a row with weight 0 has no say.
+ * @throws InputError LENGTH_MISMATCH
+ */
+export function dayCellSums(
+  layout: DayCells,
+  x: Float64Array,
+  y: Float64Array,
+  weight: Float64Array,
+): DayCellSums {
+  const n = layout.pairOf.length
+  for (const [name, values] of [
+    ['x', x],
+    ['y', y],
+    ['weight', weight],
+  ] as const) {
+    if (values.length !== n)
+      throw new InputError('LENGTH_MISMATCH', `${name}: expected ${n} values, got ${values.length}`)
   }
-  const w = new Float64Array(pairs)
-  const wx = new Float64Array(pairs)
-  const wy = new Float64Array(pairs)
-  const wxx = new Float64Array(pairs)
-  const wxy = new Float64Array(pairs)
+  const sums = new Float64Array(layout.day.length * SUMS)
   for (let i = 0; i < n; i++) {
-    const slot = slotOf[rows.cell[i]! * days + rows.day[i]!]!
-    const weight = rows.weight[i]!
-    const x = rows.x[i]!
-    const y = rows.y[i]!
-    w[slot]! += weight
-    wx[slot]! += weight * x
-    wy[slot]! += weight * y
-    wxx[slot]! += weight * x * x
-    wxy[slot]! += weight * x * y
+    const at = layout.pairOf[i]! * SUMS
+    const w = weight[i]!
+    const wx = w * x[i]!
+    sums[at]! += w
+    sums[at + 1]! += wx
+    sums[at + 2]! += w * y[i]!
+    sums[at + 3]! += wx * x[i]!
+    sums[at + 4]! += wx * y[i]!
   }
-  return { days, cells, cellStart, day, w, wx, wy, wxx, wxy }
+  return { layout, sums }
 }
 
 /**
@@ -98,16 +117,36 @@ export function slopeWithinCells(sums: DayCellSums): number {
  * @throws InputError LENGTH_MISMATCH when weights and sums are of different windows
  */
 export function resampledSlopes(sums: DayCellSums, weights: DayWeights): Float64Array {
-  if (weights.days !== sums.days) {
-    throw new InputError('LENGTH_MISMATCH', `weights: expected ${sums.days} days, got ${weights.days}`)
+  const { days } = sums.layout
+  if (weights.days !== days) {
+    throw new InputError('LENGTH_MISMATCH', `weights: expected ${days} days, got ${weights.days}`)
   }
   const slopes = new Float64Array(weights.resamples)
-  for (let r = 0; r < weights.resamples; r++) slopes[r] = slopeOver(sums, weights.counts, r * weights.days)
+  for (let r = 0; r < weights.resamples; r++) slopes[r] = slopeOver(sums, weights.counts, r * days)
   return slopes
 }
 
-function slopeOver(sums: DayCellSums, counts: Uint16Array | undefined, base: number): number {
-  const { cells, cellStart, day, w, wx, wy, wxx, wxy } = sums
+/**
+ * Mean of y - slope x in each cell, all days counted once.
+ *
+ * @returns length `cells`; 0 for a cell without weight.
+ */
+export function cellLevels({ layout, sums }: DayCellSums, slope: number): Float64Array {
+  const level = new Float64Array(layout.cells)
+  for (let c = 0; c < layout.cells; c++) {
+    let w = 0
+    let remainder = 0
+    for (let k = layout.cellStart[c]!; k < layout.cellStart[c + 1]!; k++) {
+      w += sums[k * SUMS]!
+      remainder += sums[k * SUMS + 2]! - slope * sums[k * SUMS + 1]!
+    }
+    level[c] = w > 0 ? remainder / w : 0
+  }
+  return level
+}
+
+function slopeOver({ layout, sums }: DayCellSums, counts: Uint16Array | undefined, base: number): number {
+  const { cells, cellStart, day } = layout
   let spread = 0
   let joint = 0
   for (let c = 0; c < cells; c++) {
@@ -119,11 +158,12 @@ function slopeOver(sums: DayCellSums, counts: Uint16Array | undefined, base: num
     for (let k = cellStart[c]!, end = cellStart[c + 1]!; k < end; k++) {
       const times = counts ? counts[base + day[k]!]! : 1
       if (times === 0) continue
-      n += times * w[k]!
-      x += times * wx[k]!
-      y += times * wy[k]!
-      xx += times * wxx[k]!
-      xy += times * wxy[k]!
+      const at = k * SUMS
+      n += times * sums[at]!
+      x += times * sums[at + 1]!
+      y += times * sums[at + 2]!
+      xx += times * sums[at + 3]!
+      xy += times * sums[at + 4]!
     }
     if (n > 0) {
       spread += xx - (x * x) / n

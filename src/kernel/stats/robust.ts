@@ -19,9 +19,8 @@ export function medianOf(values: ArrayLike<number>): number {
  * @returns NaN without any value.
  */
 export function quantileOf(values: ArrayLike<number>, q: number): number {
-  const sorted = Float64Array.from(values).filter((value) => !Number.isNaN(value))
+  const sorted = sortedKnown(values)
   if (sorted.length === 0) return NaN
-  sorted.sort()
   const position = (sorted.length - 1) * q
   const lower = Math.floor(position)
   const upper = Math.min(lower + 1, sorted.length - 1)
@@ -35,9 +34,39 @@ export function quantileOf(values: ArrayLike<number>, q: number): number {
  * @returns NaN without any value, 0 when more than half are equal.
  */
 export function robustSd(values: ArrayLike<number>): number {
-  const centre = medianOf(values)
-  if (Number.isNaN(centre)) return NaN
-  return MAD_TO_SD * medianOf(Float64Array.from(values, (value) => Math.abs(value - centre)))
+  const sorted = sortedKnown(values)
+  const n = sorted.length
+  if (n === 0) return NaN
+  const centre = (sorted[(n - 1) >> 1]! + sorted[n >> 1]!) / 2
+  // The deviations are already in order on either side of the centre: walk outwards to their middle.
+  let right = n >> 1
+  while (right > 0 && sorted[right - 1]! >= centre) right--
+  let left = right - 1
+  let before = 0
+  let last = 0
+  for (let taken = 0; taken <= n >> 1; taken++) {
+    const toLeft = left >= 0 ? centre - sorted[left]! : Infinity
+    const toRight = right < n ? sorted[right]! - centre : Infinity
+    before = last
+    if (toLeft <= toRight) {
+      last = toLeft
+      left--
+    } else {
+      last = toRight
+      right++
+    }
+  }
+  return MAD_TO_SD * (n % 2 === 1 ? last : (before + last) / 2)
+}
+
+function sortedKnown(values: ArrayLike<number>): Float64Array {
+  const known = new Float64Array(values.length)
+  let n = 0
+  for (let i = 0; i < values.length; i++) {
+    const value = values[i]!
+    if (!Number.isNaN(value)) known[n++] = value
+  }
+  return known.subarray(0, n).sort()
 }
 
 /**
