@@ -8,6 +8,7 @@ export {
   type FarmScenario,
   type LimitSpell,
   type OffsetChange,
+  type SensorFault,
   type Spell,
 } from './scenario.ts'
 export {

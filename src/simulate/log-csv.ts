@@ -8,6 +8,7 @@ const DECIMALS: Record<RowColumn, number> = {
   wind_speed_sd: 2,
   vane: 2,
   vane_sd: 2,
+  vane_2: 2,
   nacelle_position: 1,
   yaw_active: 3,
   power: 1,
@@ -48,9 +49,12 @@ export function* logCsv(farm: SimulatedFarm, account: LogAccount): Generator<str
   const names = ROW_COLUMNS.filter(
     (name) =>
       !(name.startsWith('reference_') && scenario.references.length === 0) &&
+      !(name === 'vane_2' && scenario.secondVaneOffsetDeg === null) &&
       !(name.endsWith('_sd') && scenario.rateS === 1),
   )
-  const decimals = names.map((name) => (name === 'vane' ? scenario.vaneDecimals : DECIMALS[name]))
+  const decimals = names.map((name) =>
+    name.startsWith('vane') && name !== 'vane_sd' ? scenario.vaneDecimals : DECIMALS[name],
+  )
   const rowCount = turbines[0]!.timeMs.length
   const blemishes = new RandomStream(scenario.seed, PURPOSE.blemish)
   const broken = drawBroken(blemishes, scenario.brokenLines, rowCount * turbines.length)

@@ -21,20 +21,21 @@ export function turbineOrders(scenario: FarmScenario, turbine: number): Orders {
     stop: new Uint8Array(minutes),
     limitKw: new Float64Array(minutes).fill(scenario.ratedPowerKw),
   }
-  const stream = new RandomStream(scenario.seed, PURPOSE.operation, turbine)
-  const farm = new RandomStream(scenario.seed, PURPOSE.farmLimits)
+  // Each kind has a stream of its own: switching one off leaves the others, and a longer window begins like a shorter one.
+  const own = (kind: number) => new RandomStream(scenario.seed, PURPOSE.operation, turbine, kind)
   const rated = scenario.ratedPowerKw
-  // Every draw is made whatever is switched on, so that switching one kind off leaves the others.
-  const faults = spells(stream, minutes, 6 * 1440, () =>
+  const faults = spells(own(0), minutes, 6 * 1440, (stream) =>
     Math.min(120 * Math.exp(0.9 * stream.normal()), 2880),
   )
-  const services = spells(stream, minutes, 20 * 1440, () => stream.between(120, 360)).map((spell) => {
-    const fromMin = Math.floor(spell.fromMin / 1440) * 1440 + 7 * 60 + Math.floor(stream.between(0, 180))
+  const services = spells(own(1), minutes, 20 * 1440, (stream) => stream.between(120, 360)).map((spell) => {
+    const fromMin = Math.floor(spell.fromMin / 1440) * 1440 + 7 * 60 + Math.floor(spell.size * 180)
     return { ...spell, fromMin, toMin: fromMin + spell.toMin - spell.fromMin }
   })
   const limits = [
-    ...spells(stream, minutes, 10 * 1440, () => stream.between(60, 300)),
-    ...spells(farm, minutes, 15 * 1440, () => farm.between(60, 240)),
+    ...spells(own(2), minutes, 10 * 1440, (stream) => stream.between(60, 300)),
+    ...spells(new RandomStream(scenario.seed, PURPOSE.farmLimits), minutes, 15 * 1440, (stream) =>
+      stream.between(60, 240),
+    ),
   ]
   if (scenario.stops === true) {
     for (const spell of faults) orders.stop.fill(STOP.fault, spell.fromMin, spell.toMin)
@@ -64,14 +65,19 @@ function mine<T extends Spell>(list: readonly T[], turbine: number): T[] {
   return list.filter((spell) => spell.turbine === turbine)
 }
 
-function spells(stream: RandomStream, minutes: number, gapMin: number, lengthMin: () => number) {
+function spells(
+  stream: RandomStream,
+  minutes: number,
+  gapMin: number,
+  lengthMin: (stream: RandomStream) => number,
+) {
   const list: { fromMin: number; toMin: number; size: number }[] = []
   let at = 0
   for (;;) {
     at += -gapMin * Math.log(1 - stream.uniform())
     if (!(at < minutes)) return list
     const fromMin = Math.floor(at)
-    at += Math.max(10, lengthMin())
+    at += Math.max(10, lengthMin(stream))
     list.push({ fromMin, toMin: Math.floor(at), size: stream.uniform() })
   }
 }

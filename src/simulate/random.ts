@@ -98,6 +98,7 @@ export const PURPOSE = {
   anemometerNoise: 33,
   slow: 34,
   drift: 35,
+  secondVane: 36,
   logger: 40,
   blemish: 50,
   scenario: 60,

@@ -10,6 +10,7 @@ export const ROW_COLUMNS = [
   'wind_speed_sd',
   'vane',
   'vane_sd',
+  'vane_2',
   'nacelle_position',
   'yaw_active',
   'power',
@@ -73,6 +74,8 @@ export class RowMaker {
   #windSquares = 0
   #vaneSin = 0
   #vaneCos = 0
+  #secondVane = 0
+  #secondVanes = 0
   #lastHeading = NaN
   #headingSin = 0
   #headingCos = 0
@@ -151,6 +154,12 @@ export class RowMaker {
     if (this.#n === this.#rateS) this.#finish()
   }
 
+  /** The second vane of the second that `add` is called for next. */
+  addSecondVane(vaneDeg: number): void {
+    this.#secondVane += vaneDeg
+    this.#secondVanes++
+  }
+
   #finish(): void {
     const { columns } = this.#rows
     const row = this.#row++
@@ -159,6 +168,7 @@ export class RowMaker {
     const power = this.#power / n
     columns.wind_speed[row] = wind
     columns.vane[row] = Math.atan2(this.#vaneSin, this.#vaneCos) * DEG_PER_RAD
+    if (this.#secondVanes > 0) columns.vane_2[row] = wrap180(this.#secondVane / n)
     if (n > 1) {
       columns.wind_speed_sd[row] = Math.sqrt(Math.max(0, this.#windSquares / n - wind * wind))
       columns.power_sd[row] = Math.sqrt(Math.max(0, this.#powerSquares / n - power * power))
@@ -186,6 +196,6 @@ export class RowMaker {
     this.#n = this.#wind = this.#windSquares = this.#vaneSin = this.#vaneCos = 0
     this.#nacelleSin = this.#nacelleCos = this.#nacelle = this.#yawing = 0
     this.#power = this.#powerSquares = this.#pitch = this.#rotor = this.#limit = 0
-    this.#yawError = this.#rotorWind = 0
+    this.#yawError = this.#rotorWind = this.#secondVane = this.#secondVanes = 0
   }
 }

@@ -110,8 +110,17 @@ export function runTurbine(
   const { vaneNoiseDeg, anemometerNoiseMs, yawRateDegS, yawThresholdDeg, yawHoldS, yawStopDeg } = scenario
   const { anemometerGain, responsePerDeg } = plan
 
+  const second = scenario.secondVaneOffsetDeg
+  const secondNoise = streamOf(PURPOSE.secondVane)
+  const secondSlow = new Reverting(secondNoise, 1200 / NODE_S)
+  const faults = scenario.faults.filter((fault) => fault.turbine === plan.index)
+
   let offset = plan.offsetDeg
   let nextChange = 0
+  let frozen = false
+  let frozenAt = NaN
+  let nacelleShift = 0
+  let windFactor = 1
   let limit = rated
   let limitSpeed = speedAtPower(table, 0.97 * rated)
 
@@ -212,6 +221,22 @@ export function runTurbine(
         nextChange++
       }
       const standing = offset / gain
+      if (faults.length > 0) {
+        frozen = false
+        nacelleShift = 0
+        windFactor = 1
+        for (const { kind, size, fromS, toS } of faults) {
+          const sinceS = endS - NODE_S - fromS
+          if (!(sinceS >= 0 && endS - NODE_S < toS)) continue
+          if (kind === 'vane-frozen') frozen = true
+          if (kind === 'nacelle-shift') nacelleShift += size
+          if (kind === 'nacelle-drift') nacelleShift += (size * sinceS) / 86400
+          if (kind === 'anemometer-gain') windFactor *= size
+        }
+        if (!frozen) frozenAt = NaN
+      }
+      const secondShift =
+        second === null ? 0 : second + loggedShift - scenario.vaneSlowNoiseDeg * secondSlow.step()
 
       for (let i = nodeS; i < nodeS + NODE_S; i++) {
         nodeWind += stepWind
@@ -228,13 +253,21 @@ export function runTurbine(
         let vane = flow + nodeVane + vaneNoiseDeg * vaneNoise[i]!
         if (codeStep > 0) vane = Math.round(vane / codeStep) * codeStep
         vane -= 360 * Math.floor((vane + 180) * (1 / 360))
+        if (frozen) {
+          if (frozenAt !== frozenAt) frozenAt = vane
+          vane = frozenAt
+        }
+        if (second !== null) {
+          const other = flow + vaneNoiseDeg * secondNoise.normal() - secondShift
+          maker.addSecondVane(other - 360 * Math.floor((other + 180) * (1 / 360)))
+        }
 
         const bend =
           flow > RESPONSE_MAX_DEG ? RESPONSE_MAX_DEG : flow < -RESPONSE_MAX_DEG ? -RESPONSE_MAX_DEG : flow
         let wind =
           nodeWind * (1 + gustSize * gust) * anemometerGain * (1 + responsePerDeg * bend) * (1 + nodeError) +
           anemometerNoiseMs * windNoise[i]!
-        if (wind < 0) wind = 0
+        wind = wind < 0 ? 0 : wind * windFactor
         windMean = keepMinute * windMean + (1 - keepMinute) * wind
 
         // State.
@@ -347,7 +380,19 @@ export function runTurbine(
                 ? STATE.storm
                 : STATE.idle
         const moving = yawing !== 0 || untwisting ? 1 : 0
-        maker.add(wind, logged, heading, moving, power, pitch, rotorSpeed, limit, state, error, nodeWind)
+        maker.add(
+          wind,
+          logged,
+          heading + nacelleShift,
+          moving,
+          power,
+          pitch,
+          rotorSpeed,
+          limit,
+          state,
+          error,
+          nodeWind,
+        )
       }
     }
   }

@@ -24,6 +24,18 @@ export interface OffsetChange {
   entered: boolean
 }
 
+/** A sensor that goes wrong for a spell. */
+export interface SensorFault extends Spell {
+  /**
+   * vane-frozen: the vane keeps its value of the first second, and the controller believes it; nacelle-shift: `size`
+   * degrees are added to the nacelle reading; nacelle-drift: `size` degrees a day are; anemometer-gain: the reading is
+   * multiplied by `size`.
+   */
+  kind: 'vane-frozen' | 'nacelle-shift' | 'nacelle-drift' | 'anemometer-gain'
+  /** No meaning for a frozen vane. */
+  size: number
+}
+
 /**
  * Everything that a made-up farm and its weather depend on. `farmScenario` fills in what is not given.
  * Values without a source are common practice.
@@ -124,6 +136,9 @@ export interface FarmScenario {
   averageAcrossNorth: boolean
   /** Turbines (indices) with a reference for yaw error and wind speed on the nacelle. */
   references: readonly number[]
+  /** Degrees that a second vane reads less than the first, beside noise of its own; null: there is none. */
+  secondVaneOffsetDeg: number | null
+  faults: readonly SensorFault[]
   /** Decimals of the vane in the log. */
   vaneDecimals: number
   /** Share of cells that are missing from the log. */
@@ -183,6 +198,8 @@ const DEFAULTS: FarmScenario = {
   nacelleScale: 'wrapped',
   averageAcrossNorth: false,
   references: [],
+  secondVaneOffsetDeg: null,
+  faults: [],
   vaneDecimals: 2,
   missingCells: 0,
   brokenLines: 0,
