@@ -1,3 +1,8 @@
 export type { FrameStore } from './frames.ts'
+export type { StoredBatch } from './logs/batches.ts'
+export type { CompactionLimits } from './logs/compaction.ts'
+export type { DayRows, LogStore, StagedBatch, TurbineExtent } from './logs/log-store.ts'
+export type { LogWindow } from './logs/winning-rows.ts'
 export { openStore, type Store, type StoreOptions } from './open-store.ts'
 export type { ReplayStore, StoredReplay } from './replays.ts'
+export type { SiteStore } from './sites.ts'
