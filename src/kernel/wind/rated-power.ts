@@ -1,20 +1,25 @@
 import { hermiteValue } from './monotone-cubic.ts'
 import type { MeasuredCurve } from './power-curve.ts'
 
-/** Half-width of the window that looks for the plateau, as a share of its power. */
-const WINDOW = 0.02
 /** Rows that a plateau must hold at least, as a number and as a share of all rows that produce. */
 const LEAST_ROWS = 10
 const LEAST_SHARE = 0.005
-/** The slope below a plateau, as shares of its power, and how many times denser the plateau must be. */
-const SLOPE_FROM = 0.8
-const SLOPE_TO = 0.92
-const DENSER = 2.5
-/** Power beyond this share of the plateau counts as a spike; so many of the plateau's rows may be spikes. */
-const SPIKE = 1.1
+/** So many of the plateau's rows may lie above it as spikes. */
 const MOST_SPIKES = 0.1
-/** Half-width of the window whose median is the answer: takes in the noise of the plateau on both sides. */
+/** All widths are shares of the plateau's power, for a plateau with little noise. */
+const WINDOW = 0.02
+const SLOPE_FROM = 0.2
+const SLOPE_TO = 0.08
+const SPIKE = 0.1
 const REFINE = 0.04
+/**
+ * How many times denser than the slope below it a plateau must be, and by what its widths are multiplied. A plateau with noise
+ * of up to 10 % is looked for when no sharper one is found. Without a plateau the density falls all the way up.
+ */
+const PASSES = [
+  { denser: 2.5, width: 1 },
+  { denser: 1.5, width: 3 },
+]
 const REFINE_ROUNDS = 4
 const BISECTIONS = 50
 
@@ -23,11 +28,12 @@ const BISECTIONS = 50
  *
  * A level is a plateau when within 2 % of it lie at least 10 rows and 0.5 % of all producing rows, 2.5 times denser than
  * between 80 and 92 % of it, and when the rows above 110 % of it (spikes) number at most a tenth of its own. Of several
- * the fullest counts, and the answer is the median of the rows within 4 % of it. High spikes do not move it.
+ * the fullest counts, and the answer is the median of the rows within 4 % of it. High spikes do not move it. Where there is
+ * none, a noisier one is looked for with three times these widths and 1.5 times the density; its median can lie 2 % low.
  *
  * @param powersKw  kW; any length. NaN, infinite and not positive values are skipped.
- * @returns kW. NaN when no plateau is to be seen, as in a month of little wind. A turbine held below its rating through the
- *   whole log shows the level at which it was held: the rows cannot tell.
+ * @returns kW. NaN when no plateau is to be seen, as in a month of little wind. A turbine held below its rating, or in
+ *   steady wind, through the whole log shows the level at which it stayed: the rows cannot tell.
  */
 export function ratedPowerFrom(powersKw: ArrayLike<number>): number {
   let count = 0
@@ -37,6 +43,19 @@ export function ratedPowerFrom(powersKw: ArrayLike<number>): number {
     if (power > 0 && power < Infinity) sorted[count++] = power
   }
   const rows = sorted.subarray(0, count).sort()
+  for (const { denser, width } of PASSES) {
+    let level = fullestPlateau(rows, denser, width)
+    if (Number.isNaN(level)) continue
+    for (let round = 0; round < REFINE_ROUNDS; round++) {
+      level = medianWithin(rows, level * (1 - REFINE * width), level * (1 + REFINE * width))
+    }
+    return level
+  }
+  return NaN
+}
+
+function fullestPlateau(rows: Float64Array, denser: number, width: number): number {
+  const count = rows.length
   const least = Math.max(LEAST_ROWS, LEAST_SHARE * count)
   let fullest = 0
   let level = NaN
@@ -47,25 +66,18 @@ export function ratedPowerFrom(powersKw: ArrayLike<number>): number {
   let slopeTo = 0
   let spikesFrom = 0
   for (const power of rows) {
-    while (windowFrom < count && rows[windowFrom]! < power * (1 - WINDOW)) windowFrom++
-    while (windowTo < count && rows[windowTo]! <= power * (1 + WINDOW)) windowTo++
-    while (slopeFrom < count && rows[slopeFrom]! < power * SLOPE_FROM) slopeFrom++
-    while (slopeTo < count && rows[slopeTo]! < power * SLOPE_TO) slopeTo++
-    while (spikesFrom < count && rows[spikesFrom]! <= power * SPIKE) spikesFrom++
+    while (windowFrom < count && rows[windowFrom]! < power * (1 - WINDOW * width)) windowFrom++
+    while (windowTo < count && rows[windowTo]! <= power * (1 + WINDOW * width)) windowTo++
+    while (slopeFrom < count && rows[slopeFrom]! < power * (1 - SLOPE_FROM * width)) slopeFrom++
+    while (slopeTo < count && rows[slopeTo]! < power * (1 - SLOPE_TO * width)) slopeTo++
+    while (spikesFrom < count && rows[spikesFrom]! <= power * (1 + SPIKE * width)) spikesFrom++
     const inside = windowTo - windowFrom
-    const below = ((slopeTo - slopeFrom) * 2 * WINDOW) / (SLOPE_TO - SLOPE_FROM)
-    if (
-      inside > fullest &&
-      inside >= least &&
-      inside >= DENSER * below &&
-      count - spikesFrom <= MOST_SPIKES * inside
-    ) {
+    const below = ((slopeTo - slopeFrom) * 2 * WINDOW) / (SLOPE_FROM - SLOPE_TO)
+    const spikes = count - spikesFrom
+    if (inside > fullest && inside >= least && inside >= denser * below && spikes <= MOST_SPIKES * inside) {
       fullest = inside
       level = power
     }
-  }
-  for (let round = 0; round < REFINE_ROUNDS && !Number.isNaN(level); round++) {
-    level = medianWithin(rows, level * (1 - REFINE), level * (1 + REFINE))
   }
   return level
 }

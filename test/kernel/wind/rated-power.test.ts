@@ -24,9 +24,11 @@ test('the plateau of a windy month is rated power', () => {
 })
 
 test('noise on the plateau hardly moves it', () => {
-  for (const noise of [0.005, 0.01, 0.03, 0.05]) {
+  for (const noise of [0.005, 0.01, 0.03, 0.05, 0.08, 0.1]) {
     const rows = rayleighSpeeds(8.5).map((u, i) => power(u) * (1 + noise * scatter(i)))
-    expect(Math.abs(ratedPowerFrom(rows) / 2000 - 1), `noise ${noise}`).toBeLessThan(0.01)
+    expect(Math.abs(ratedPowerFrom(rows) / 2000 - 1), `noise ${noise}`).toBeLessThan(
+      noise > 0.05 ? 0.025 : 0.01,
+    )
   }
 })
 
