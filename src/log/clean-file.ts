@@ -1,0 +1,108 @@
+import { quoteIdentifier, quoteText } from '../duck/index.ts'
+import { NUMBER_CHANNELS, TEXT_CHANNELS, type BaseChannel } from '../sheet/index.ts'
+import type { MappedColumn } from './column-map.ts'
+import { convertSql } from './units.ts'
+
+/** A file of clean lines (line, time, fields as sent) and what its columns are. */
+export interface CleanFile {
+  readonly path: string
+  readonly delimiter: string
+  readonly fields: number
+  readonly decimalComma: boolean
+  readonly maxLineBytes: number
+  /** Position of the turbine's name; -1 = `turbineName` in all rows. */
+  readonly turbine: number
+  readonly turbineName: string
+  readonly channels: readonly MappedColumn[]
+}
+
+/** Words that stand for an empty cell, in lower case. */
+const EMPTY_WORDS = [
+  '',
+  'nan',
+  'na',
+  'n/a',
+  '#n/a',
+  'n.a.',
+  'null',
+  '(null)',
+  'none',
+  'nil',
+  '-',
+  '--',
+  '---',
+  'nd',
+  'no data',
+  'missing',
+  '\\n',
+]
+
+const isText = (channel: string) => (TEXT_CHANNELS as readonly string[]).includes(channel)
+
+/** SQL of the file with all cells as text: line, time, c0, c1, ... Nothing is detected, nothing is skipped. */
+export function cellsSql(file: CleanFile): string {
+  const columns = ["'line': 'BIGINT'", "'time': 'BIGINT'"]
+  for (let i = 0; i < file.fields; i++) columns.push(`'c${i}': 'VARCHAR'`)
+  return (
+    `read_csv(${quoteText(file.path)}, auto_detect = false, header = false, delim = ${quoteText(file.delimiter)}, ` +
+    `quote = '', escape = '', comment = '', new_line = '\\n', nullstr = '', strict_mode = true, ` +
+    `max_line_size = ${file.maxLineBytes + 128}, columns = {${columns.join(', ')}})`
+  )
+}
+
+/** SQL of the rows with canonical columns: src, line, time, turbine, then `channels`, NULL where this file lacks one. */
+export function rowsSql(file: CleanFile, source: number, channels: readonly string[]): string {
+  const list = channels.map((channel) => {
+    const column = file.channels.find((one) => one.takenFor === channel)
+    const name = quoteIdentifier(channel)
+    if (!column) return `NULL::${isText(channel) ? 'VARCHAR' : 'DOUBLE'} AS ${name}`
+    if (isText(channel)) return `nullif(trim(c${column.index}), '') AS ${name}`
+    const { min, max } = limitsOf(channel)
+    const value = valueSql(file, column)
+    return `CASE WHEN ${value} BETWEEN ${min} AND ${max} THEN ${value} END AS ${name}`
+  })
+  const turbine = file.turbine < 0 ? quoteText(file.turbineName) : `trim(c${file.turbine})`
+  return `SELECT ${[`${source} AS src`, 'line', 'time', `${turbine} AS turbine`, ...list].join(', ')} FROM ${cellsSql(file)}`
+}
+
+/** SQL of one row per number channel of the file, with what became of its cells. */
+export function cellCountsSql(file: CleanFile): string {
+  const numbers = file.channels.filter((column) => !isText(column.takenFor!))
+  const list = numbers.flatMap((column, i) => {
+    const cell = `c${column.index}`
+    const { min, max } = limitsOf(column.takenFor!)
+    const value = valueSql(file, column)
+    const filled = `lower(trim(${cell})) NOT IN (${EMPTY_WORDS.map(quoteText).join(', ')})`
+    const unreadable = `${filled} AND ${value} IS NULL`
+    return [
+      `count(*) FILTER (${filled}) AS filled${i}`,
+      `count(*) FILTER (${unreadable}) AS unreadable${i}`,
+      `arg_min(${cell}, line) FILTER (${unreadable}) AS example${i}`,
+      `min(line) FILTER (${unreadable}) AS exampleLine${i}`,
+      `count(*) FILTER (${filled} AND ${value} IS NOT NULL AND NOT ${value} BETWEEN ${min} AND ${max}) AS outside${i}`,
+      `count(*) FILTER (${value} > ${max}) AS above${i}`,
+      `approx_count_distinct(${value}) FILTER (${value} > ${max}) AS aboveKinds${i}`,
+    ]
+  })
+  return list.length === 0 ? '' : `SELECT ${list.join(', ')} FROM ${cellsSql(file)}`
+}
+
+/** SQL of the number in a cell, canonical unit; NULL when it is none. Thousands separators are never guessed. */
+function valueSql(file: CleanFile, column: MappedColumn): string {
+  const cell = `c${column.index}`
+  const text = file.decimalComma
+    ? `CASE WHEN NOT contains(${cell}, '.') THEN replace(${cell}, ',', '.') END`
+    : cell
+  const value = `try_cast(${text} AS DOUBLE)`
+  return column.unit ? convertSql(value, column.unit) : value
+}
+
+/** Limits of a channel; those of a standard deviation are 0 and the width of the channel's own. */
+export function limitsOf(channel: string): { min: number; max: number; unit: string } {
+  const match = /^(.+)_(sd|min|max)$/.exec(channel)
+  const base = match && match[1]! in NUMBER_CHANNELS ? match[1]! : channel
+  const limits = NUMBER_CHANNELS[base as BaseChannel]
+  return match?.[2] === 'sd' && base !== channel
+    ? { ...limits, min: 0, max: limits.max - limits.min }
+    : limits
+}

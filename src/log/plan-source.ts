@@ -1,0 +1,166 @@
+import { basename } from 'node:path'
+import { InputError } from '../errors.ts'
+import { mapColumns, type ColumnMap } from './column-map.ts'
+import { sniffEncoding, toUtf8, validUtf8 } from './clean-text.ts'
+import type { LogLimits, LogReading, LogSource } from './contract.ts'
+import { sniffDialect, type Dialect } from './dialect.ts'
+import type { ScanPlan } from './row-scanner.ts'
+import { dateClockTime, dayClockTime, stampTime, type RowTime } from './row-time.ts'
+import { sourceBytes } from './source-bytes.ts'
+import { splitFields } from './split-fields.ts'
+import { sniffStamps } from './stamp-format.ts'
+import { textLines } from './text-lines.ts'
+
+const SAMPLE_BYTES = 256 * 1024
+
+/** Everything that the beginning of a source decides. */
+export interface SourcePlan {
+  readonly source: LogSource
+  readonly firstBytes: Uint8Array
+  readonly dialect: Dialect
+  readonly map: ColumnMap
+  readonly timeFormat: string
+  readonly scan: Omit<ScanPlan, 'zone' | 'limits'>
+}
+
+/**
+ * Looks at the first 256 KiB of a source and decides how the whole is read.
+ * @throws InputError LOG_EMPTY, LOG_NO_HEADER, LOG_TOO_MANY_COLUMNS, LOG_COLUMN_MAP, LOG_COLUMNS_MISSING, LOG_TIME, LOG_CORRUPT
+ */
+export async function planSource(
+  source: LogSource,
+  reading: LogReading,
+  limits: LogLimits,
+): Promise<SourcePlan> {
+  const { bytes, complete } = await firstBytes(source, limits)
+  const encoding = sniffEncoding(bytes)
+  let sample = ''
+  for await (const chunk of toUtf8(one(bytes), encoding)) sample += validUtf8(chunk).bytes.toString('utf8')
+  const dialect = sniffDialect(source.name, sample, complete)
+  if (!(dialect.header.length <= limits.maxColumns)) {
+    throw new InputError(
+      'LOG_TOO_MANY_COLUMNS',
+      `${source.name} line ${dialect.headerLine}: expected at most ${limits.maxColumns} columns, got ${dialect.header.length}`,
+    )
+  }
+  const map = mapColumns(source.name, dialect.header, reading.columns ?? {}, dialect.rows)
+  const { time, description } = await rowTime(source, dialect, map, reading, limits)
+  return {
+    source,
+    firstBytes: bytes.subarray(0, 4096),
+    dialect,
+    map,
+    timeFormat: description,
+    scan: {
+      name: source.name,
+      delimiter: dialect.delimiter,
+      fields: dialect.header.length,
+      headerLine: dialect.headerLine,
+      safe: dialect.hasQuotes,
+      time,
+      turbine: map.turbine,
+      turbineName: reading.turbine ?? nameFromFile(source.name),
+    },
+  }
+}
+
+async function firstBytes(
+  source: LogSource,
+  limits: LogLimits,
+): Promise<{ bytes: Buffer; complete: boolean }> {
+  const { chunks } = await sourceBytes(source, limits)
+  const parts: Buffer[] = []
+  let length = 0
+  let complete = true
+  for await (const chunk of chunks) {
+    parts.push(chunk)
+    length += chunk.length
+    if (length >= SAMPLE_BYTES) {
+      complete = false
+      break
+    }
+  }
+  if (length === 0) throw new InputError('LOG_EMPTY', `${source.name}: expected a log, got no bytes`)
+  return {
+    bytes: Buffer.concat(parts).subarray(0, SAMPLE_BYTES),
+    complete: complete || length < SAMPLE_BYTES,
+  }
+}
+
+async function* one(bytes: Buffer): AsyncGenerator<Buffer> {
+  yield await Promise.resolve(bytes)
+}
+
+async function rowTime(
+  source: LogSource,
+  dialect: Dialect,
+  map: ColumnMap,
+  reading: LogReading,
+  limits: LogLimits,
+): Promise<{ time: RowTime; description: string }> {
+  const cells = (column: number) => dialect.rows.map((row) => row[column] ?? '')
+  if (map.time.kind === 'stamp') {
+    const { stamp } = map.time
+    const format = sniffStamps(source.name, dialect.header[stamp]!, cells(stamp))
+    return { time: stampTime(stamp, format.reader), description: format.description }
+  }
+  if (map.time.kind === 'date-clock') {
+    const format = sniffStamps(source.name, dialect.header[map.time.day]!, cells(map.time.day))
+    return { time: dateClockTime(map.time, format.reader), description: `${format.description} with a clock` }
+  }
+  if (reading.startDate === undefined) {
+    throw new InputError(
+      'LOG_TIME',
+      `${source.name}: the time is a day number (${dialect.header[map.time.day]!}) and a clock (${dialect.header[map.time.clock]!}); ` +
+        'state startDate=YYYY-MM-DD, the date of the lowest day number',
+      { detail: { question: 'startDate' } },
+    )
+  }
+  const startMs = Date.parse(`${reading.startDate}T00:00:00Z`)
+  if (Number.isNaN(startMs)) {
+    throw new InputError('BAD_OPTION', `startDate: expected YYYY-MM-DD, got ${reading.startDate}`)
+  }
+  const lowest = await lowestDay(source, dialect, map.time.day, limits)
+  return {
+    time: dayClockTime(map.time, lowest, startMs),
+    description: `day number ${lowest} = ${reading.startDate}, with a clock`,
+  }
+}
+
+/** The lowest day number of the whole file: it names the start date, and may stand in the last row. */
+async function lowestDay(
+  source: LogSource,
+  dialect: Dialect,
+  column: number,
+  limits: LogLimits,
+): Promise<number> {
+  const { chunks } = await sourceBytes(source, limits)
+  const position = { lines: 0 }
+  let lowest = Infinity
+  for await (const slab of textLines(
+    source.name,
+    toUtf8(chunks, sniffEncoding(Buffer.alloc(0))),
+    limits.maxLineBytes,
+    position,
+  )) {
+    for (const line of slab.toString('utf8').split('\n')) {
+      position.lines++
+      if (position.lines <= dialect.headerLine) continue
+      const cell = splitFields(line, dialect.delimiter)?.[column]?.trim() ?? ''
+      if (/^-?\d+(\.0*)?$/.test(cell) && Number(cell) < lowest) lowest = Number(cell)
+    }
+    position.lines--
+  }
+  return lowest
+}
+
+/** `Q01.csv.gz` -> `Q01`: the turbine's name where neither log nor request gives one. */
+export function nameFromFile(name: string): string {
+  const plain = basename(name.replaceAll('\\', '/'))
+    .replace(/\.(gz|gzip)$/i, '')
+    .replace(/\.(csv|tsv|txt|log|dat|json|jsonl|ndjson|parquet)$/i, '')
+    // eslint-disable-next-line no-control-regex
+    .replace(/[\u0000-\u001f/]/g, '')
+    .slice(0, 100)
+  return plain === '' || plain === '-' ? 'turbine' : plain
+}

@@ -1,0 +1,336 @@
+import type { FileHandle } from 'node:fs/promises'
+import { InputError } from '../errors.ts'
+import { validUtf8 } from './clean-text.ts'
+import type { LogLimits } from './contract.ts'
+import type { RejectReason, Rejects } from './rejects.ts'
+import { instantOf, newTrack, track, type TurbineTrack } from './row-clock.ts'
+import type { RowTime } from './row-time.ts'
+import { splitFields } from './split-fields.ts'
+import { lineTooLong, type LinePosition } from './text-lines.ts'
+import type { ZoneTable } from './zone-table.ts'
+
+/** Stands between fields of the clean file when the log uses quotes: no text may contain it. */
+export const SAFE_DELIMITER = '\u001f'
+
+const [LF, SPACE, QUOTE] = [10, 32, 34]
+const MOST_TURBINES = 20_000
+const MOST_TURBINE_BYTES = 100
+const [ORDINARY, DELIMITER, LINE_END, QUOTES, CONTROL] = [0, 1, 2, 3, 4]
+
+/** What all sources of one post share. */
+export interface PostState {
+  readonly tracks: Map<string, TurbineTrack>
+  readonly rejects: Rejects
+  /** Rows passed on so far come sorted by turbine and time. */
+  sorted: boolean
+  /** Turbine of the last row. */
+  last: TurbineTrack | null
+  /** A pair of turbine and time may have occurred twice. */
+  mayRepeat: boolean
+  rows: number
+}
+
+/** Rows of the log that need the delimiter inside a field: the pass is made again with the safe delimiter. */
+export class NeedsSafeDelimiter extends Error {}
+
+export interface ScanPlan {
+  readonly name: string
+  readonly delimiter: string
+  readonly fields: number
+  readonly headerLine: number
+  readonly safe: boolean
+  readonly time: RowTime
+  /** Position of the turbine's name, -1 = `turbineName` for all rows. */
+  readonly turbine: number
+  readonly turbineName: string
+  readonly zone: ZoneTable
+  readonly limits: LogLimits
+}
+
+/**
+ * Reads lines and writes clean ones: line number, epoch ms, then the fields as sent, with a delimiter that no field contains.
+ * Lines that are no row are counted or rejected with their reason. Works on bytes: this loop sees every byte of every log.
+ */
+export class RowScanner implements LinePosition {
+  /** Lines seen, header and preamble included. */
+  lines = 0
+  blankLines = 0
+  /** Rows passed on. */
+  rows = 0
+  repairedLines = 0
+  unzonedRows = 0
+  repeatedHourRows = 0
+  /** Empty cells per field among rows passed on. */
+  readonly emptyCells: Float64Array
+  readonly outDelimiter: string
+
+  private readonly plan: ScanPlan
+  private readonly post: PostState
+  private readonly kinds = new Uint8Array(256)
+  private readonly ends: Int32Array
+  private readonly outByte: number
+  private readonly inByte: number
+  private out = Buffer.allocUnsafe(2 * 1024 ** 2)
+  private used = 0
+  private lastTurbine = Buffer.alloc(0)
+  private lastTrack: TurbineTrack | null = null
+
+  constructor(plan: ScanPlan, post: PostState) {
+    this.plan = plan
+    this.post = post
+    this.inByte = plan.delimiter.charCodeAt(0)
+    this.outDelimiter = plan.safe ? SAFE_DELIMITER : plan.delimiter
+    this.outByte = this.outDelimiter.charCodeAt(0)
+    this.ends = new Int32Array(plan.fields + 1)
+    this.emptyCells = new Float64Array(plan.fields)
+    this.kinds[this.inByte] = DELIMITER
+    this.kinds[LF] = LINE_END
+    this.kinds[QUOTE] = QUOTES
+    this.kinds[0] = CONTROL
+    this.kinds[SAFE_DELIMITER.charCodeAt(0)] = CONTROL
+    if (plan.turbine < 0) this.lastTrack = this.trackOf(plan.turbineName)
+  }
+
+  /**
+   * @param slab  whole lines, each ended by LF.
+   * @throws InputError LOG_LINE_TOO_LONG, LOG_TOO_MANY_ROWS, LOG_COLUMN_MAP; NeedsSafeDelimiter
+   */
+  async write(slab: Buffer, file: FileHandle): Promise<void> {
+    const { bytes, repairedLines } = validUtf8(slab)
+    this.repairedLines += repairedLines
+    this.scan(bytes)
+    await file.write(this.out, 0, this.used)
+    this.used = 0
+    await this.post.rejects.flush()
+  }
+
+  private scan(bytes: Buffer): void {
+    const { kinds, ends, plan } = this
+    const fields = plan.fields
+    const length = bytes.length
+    let start = 0
+    let n = 0
+    let quotes = false
+    let control = false
+    for (let i = 0; i < length; i++) {
+      const kind = kinds[bytes[i]!]!
+      if (kind === ORDINARY) continue
+      if (kind === DELIMITER) {
+        if (n < fields) ends[n] = i
+        n++
+      } else if (kind === LINE_END) {
+        if (n < fields) ends[n] = i
+        this.lines++
+        if (i - start > plan.limits.maxLineBytes)
+          throw lineTooLong(plan.name, this.lines, plan.limits.maxLineBytes)
+        if (this.lines > plan.headerLine) this.line(bytes, start, i, n + 1, quotes, control)
+        start = i + 1
+        n = 0
+        quotes = false
+        control = false
+      } else if (kind === QUOTES) quotes = true
+      else control = true
+    }
+  }
+
+  private line(
+    bytes: Buffer,
+    start: number,
+    end: number,
+    n: number,
+    quotes: boolean,
+    control: boolean,
+  ): void {
+    if (n === 1 && isBlank(bytes, start, end)) {
+      this.blankLines++
+      return
+    }
+    if (control) this.reject(bytes, start, end, 'not-text')
+    else if (quotes) this.quotedLine(bytes, start, end)
+    else if (n !== this.plan.fields) this.reject(bytes, start, end, 'field-count')
+    else this.row(bytes, start, end, this.inByte, bytes, start, end)
+  }
+
+  /** A line with quotes is taken apart as text and written anew; these lines are slower by an order of magnitude. */
+  private quotedLine(bytes: Buffer, start: number, end: number): void {
+    const fields = splitFields(bytes.toString('utf8', start, end), this.plan.delimiter)
+    if (!fields) {
+      this.reject(bytes, start, end, 'quote')
+      return
+    }
+    if (fields.length !== this.plan.fields) {
+      this.reject(bytes, start, end, 'field-count')
+      return
+    }
+    const { outDelimiter, ends } = this
+    if (!this.plan.safe && fields.some((field) => field.includes(outDelimiter)))
+      throw new NeedsSafeDelimiter()
+    const clean = Buffer.from(fields.join(outDelimiter))
+    let at = -1
+    fields.forEach((field, i) => {
+      at += Buffer.byteLength(field) + 1
+      ends[i] = at
+    })
+    this.row(clean, 0, clean.length, this.outByte, bytes, start, end)
+  }
+
+  private row(
+    bytes: Buffer,
+    start: number,
+    end: number,
+    delimiter: number,
+    sent: Buffer,
+    sentStart: number,
+    sentEnd: number,
+  ): void {
+    const { ends, plan } = this
+    const turbine = plan.turbine < 0 ? this.lastTrack : this.turbineOf(bytes, start)
+    if (typeof turbine === 'string') {
+      this.reject(sent, sentStart, sentEnd, turbine)
+      return
+    }
+    const wallMs = plan.time.read(bytes, start, ends)
+    let timeMs = wallMs
+    if (!plan.time.zoned && !Number.isNaN(wallMs)) {
+      timeMs = instantOf(wallMs, plan.zone, turbine!)
+      this.unzonedRows++
+      if (!Number.isNaN(plan.zone.second(wallMs))) this.repeatedHourRows++
+    }
+    if (Number.isNaN(timeMs)) {
+      const reason = !Number.isNaN(wallMs)
+        ? 'spring-gap'
+        : plan.time.isBlank(bytes, start, ends)
+          ? 'no-time'
+          : 'bad-time'
+      this.reject(sent, sentStart, sentEnd, reason)
+      return
+    }
+    this.note(turbine!, timeMs)
+    this.emit(bytes, start, end, delimiter, timeMs)
+  }
+
+  private note(turbine: TurbineTrack, timeMs: number): void {
+    const { post } = this
+    if (turbine !== post.last) {
+      const isLower =
+        post.last !== null && Buffer.compare(Buffer.from(post.last.name), Buffer.from(turbine.name)) > 0
+      if (turbine.rows > 0 || isLower) post.sorted = false
+      post.last = turbine
+    }
+    if (!track(turbine, timeMs)) {
+      post.sorted = false
+      post.mayRepeat = true
+    }
+    this.rows++
+    post.rows++
+    if (post.rows > this.plan.limits.maxRows) {
+      throw new InputError(
+        'LOG_TOO_MANY_ROWS',
+        `${this.plan.name} line ${this.lines}: expected at most ${this.plan.limits.maxRows} rows, got more`,
+      )
+    }
+  }
+
+  private turbineOf(bytes: Buffer, start: number): TurbineTrack | RejectReason {
+    const { turbine } = this.plan
+    let from = turbine === 0 ? start : this.ends[turbine - 1]! + 1
+    let to = this.ends[turbine]!
+    while (from < to && bytes[from] === SPACE) from++
+    while (to > from && bytes[to - 1] === SPACE) to--
+    if (this.lastTrack && same(this.lastTurbine, bytes, from, to)) return this.lastTrack
+    if (from === to) return 'no-turbine'
+    if (to - from > MOST_TURBINE_BYTES) return 'bad-turbine'
+    const name = bytes.toString('utf8', from, to)
+    // Such names could not be addressed over HTTP.
+    // eslint-disable-next-line no-control-regex
+    if (/[\u0000-\u001f/]/.test(name)) return 'bad-turbine'
+    this.lastTurbine = Buffer.from(bytes.subarray(from, to))
+    return (this.lastTrack = this.trackOf(name))
+  }
+
+  private trackOf(name: string): TurbineTrack {
+    const { tracks } = this.post
+    let found = tracks.get(name)
+    if (!found) {
+      if (tracks.size >= MOST_TURBINES) {
+        throw new InputError(
+          'LOG_COLUMN_MAP',
+          `${this.plan.name} line ${this.lines}: expected at most ${MOST_TURBINES} turbines, got more; is the column of turbines the right one?`,
+        )
+      }
+      tracks.set(name, (found = newTrack(name)))
+    }
+    return found
+  }
+
+  private emit(bytes: Buffer, start: number, end: number, delimiter: number, timeMs: number): void {
+    const { ends, emptyCells, outByte } = this
+    const length = end - start
+    if (this.used + length + 64 > this.out.length) {
+      const grown = Buffer.allocUnsafe(Math.max(this.out.length * 2, this.used + length + 64))
+      this.out.copy(grown, 0, 0, this.used)
+      this.out = grown
+    }
+    const out = this.out
+    let at = writeDigits(out, this.used, this.lines)
+    out[at++] = outByte
+    at = writeTime(out, at, timeMs)
+    out[at++] = outByte
+    const shift = at - start
+    for (let i = start; i < end; i++) out[i + shift] = bytes[i]!
+    if (delimiter !== outByte) for (let k = 0; k < ends.length - 2; k++) out[ends[k]! + shift] = outByte
+    let before = start
+    for (let k = 0; k < emptyCells.length; k++) {
+      if (ends[k] === before) emptyCells[k]!++
+      before = ends[k]! + 1
+    }
+    at += length
+    out[at++] = LF
+    this.used = at
+  }
+
+  private reject(bytes: Buffer, start: number, end: number, reason: RejectReason): void {
+    this.post.rejects.add(this.plan.name, this.lines, reason, bytes.toString('utf8', start, end))
+  }
+}
+
+function isBlank(bytes: Buffer, start: number, end: number): boolean {
+  for (let i = start; i < end; i++)
+    if (bytes[i] !== SPACE && bytes[i] !== 9 && bytes[i] !== 0x1a) return false
+  return true
+}
+
+function same(known: Buffer, bytes: Buffer, from: number, to: number): boolean {
+  const length = to - from
+  if (known.length !== length) return false
+  for (let i = 0; i < length; i++) if (known[i] !== bytes[from + i]) return false
+  return length > 0
+}
+
+/** Digits of a whole number >= 0 below 2^31; answers the position after them. */
+function writeDigits(out: Buffer, at: number, value: number): number {
+  let digits = 1
+  for (let power = 10; digits < 10 && value >= power; power *= 10) digits++
+  let rest = value
+  for (let i = at + digits - 1; i >= at; i--) {
+    const next = (rest / 10) | 0
+    out[i] = 48 + rest - next * 10
+    rest = next
+  }
+  return at + digits
+}
+
+/** Epoch milliseconds in decimal. */
+function writeTime(out: Buffer, at: number, timeMs: number): number {
+  if (!(timeMs >= 1e12 && timeMs < 1e13)) return at + out.write(String(timeMs), at, 'latin1')
+  // Thirteen digits in two halves, because whole-number division of the engine ends at 2^31.
+  const high = Math.floor(timeMs / 1e6)
+  let low = timeMs - high * 1e6
+  for (let i = at + 12; i >= at + 7; i--) {
+    const next = (low / 10) | 0
+    out[i] = 48 + low - next * 10
+    low = next
+  }
+  writeDigits(out, at, high)
+  return at + 13
+}

@@ -1,0 +1,180 @@
+import { mkdir, open, rm } from 'node:fs/promises'
+import { join } from 'node:path'
+import { InputError } from '../errors.ts'
+import type { Connection } from '../duck/index.ts'
+import type { Receipt } from '../sheet/index.ts'
+import { sniffEncoding, toUtf8 } from './clean-text.ts'
+import type { LogLimits, LogParts, LogReading, LogSource, StagedLog } from './contract.ts'
+import type { MappedColumn } from './column-map.ts'
+import { buildReceipt, refuseUnfit, type SourceAccount } from './log-account.ts'
+import { planSource, type SourcePlan } from './plan-source.ts'
+import { Rejects } from './rejects.ts'
+import { NeedsSafeDelimiter, RowScanner, type PostState } from './row-scanner.ts'
+import { sourceBytes } from './source-bytes.ts'
+import { countCells, intervals, stageRows, type NamedCleanFile } from './stage-rows.ts'
+import { textLines } from './text-lines.ts'
+import { zoneTable } from './zone-table.ts'
+
+/**
+ * Reads logs into one sorted Parquet file of clean rows, and accounts for every line and cell.
+ *
+ * Of two rows with the same turbine and time the last one in the order of sources and lines wins. Memory does not grow with the
+ * length of the logs, but with the number of turbines.
+ *
+ * @param sources  one or more logs; each has a header of its own.
+ * @throws InputError LOG_* as the error table has them, BAD_OPTION for an unknown time zone
+ */
+export async function stageLog(
+  sources: readonly LogSource[],
+  reading: LogReading,
+  parts: LogParts,
+): Promise<StagedLog> {
+  if (sources.length === 0) throw new InputError('LOG_EMPTY', 'sources: expected at least one log, got none')
+  await mkdir(parts.folder, { recursive: true })
+  const plans: SourcePlan[] = []
+  for (const source of sources) plans.push(await planSource(source, reading, parts.limits))
+  const working: string[] = []
+  try {
+    for (;;) {
+      const attempt = await scanAll(plans, reading, parts, working)
+      if (attempt !== null) return await parts.scans.withConnection((c) => stage(c, attempt, reading, parts))
+    }
+  } finally {
+    for (const path of working) await rm(path, { force: true })
+  }
+}
+
+interface Scanned {
+  readonly post: PostState
+  readonly accounts: readonly SourceAccount[]
+  readonly files: readonly NamedCleanFile[]
+}
+
+/** @returns null when a source turned out to need the safe delimiter: its plan says so now, and all is read again. */
+async function scanAll(
+  plans: SourcePlan[],
+  reading: LogReading,
+  parts: LogParts,
+  working: string[],
+): Promise<Scanned | null> {
+  const rejects = new Rejects(join(parts.folder, 'rejected.csv'))
+  const post: PostState = { tracks: new Map(), rejects, sorted: true, mayRepeat: false, last: null, rows: 0 }
+  const zone = zoneTable(reading.timezone ?? reading.defaultTimezone ?? 'UTC')
+  const accounts: SourceAccount[] = []
+  const files: NamedCleanFile[] = []
+  for (const [i, plan] of plans.entries()) {
+    const path = join(parts.folder, `clean-${i}.csv`)
+    if (!working.includes(path)) working.push(path)
+    const rejectedBefore = rejects.rows
+    const scanner = new RowScanner({ ...plan.scan, zone, limits: parts.limits }, post)
+    try {
+      const sha256 = await scanSource(plan, scanner, path, parts.limits)
+      accounts.push({ plan, scanner, sha256, rejectedInScan: rejects.rows - rejectedBefore })
+    } catch (error) {
+      await rejects.close()
+      await rm(join(parts.folder, 'rejected.csv'), { force: true })
+      if (!(error instanceof NeedsSafeDelimiter)) throw error
+      plans[i] = { ...plan, scan: { ...plan.scan, safe: true } }
+      return null
+    }
+    files.push({
+      name: plan.source.name,
+      path,
+      delimiter: scanner.outDelimiter,
+      fields: plan.scan.fields,
+      decimalComma: plan.dialect.decimalComma,
+      maxLineBytes: parts.limits.maxLineBytes,
+      turbine: plan.scan.turbine,
+      turbineName: plan.scan.turbineName,
+      channels: plan.map.channels,
+    })
+  }
+  return { post, accounts, files }
+}
+
+async function scanSource(
+  plan: SourcePlan,
+  scanner: RowScanner,
+  path: string,
+  limits: LogLimits,
+): Promise<string> {
+  const bytes = await sourceBytes(plan.source, limits)
+  const file = await open(path, 'w')
+  try {
+    const text = toUtf8(bytes.chunks, sniffEncoding(plan.firstBytes))
+    for await (const slab of textLines(plan.source.name, text, limits.maxLineBytes, scanner)) {
+      await scanner.write(slab, file)
+    }
+  } finally {
+    await file.close()
+  }
+  return bytes.sha256()
+}
+
+async function stage(
+  connection: Connection,
+  scanned: Scanned,
+  reading: LogReading,
+  parts: LogParts,
+): Promise<StagedLog> {
+  const { post, accounts, files } = scanned
+  const warnings: string[] = []
+  try {
+    refuseUnfit(accounts, post)
+    const channels = mergedChannels(files.map((file) => file.channels))
+    const { byTurbine, overall, steps } = await intervals(connection, files, post)
+    const shiftMs = new Map<string, number>()
+    if ((reading.stamp ?? reading.defaultStamp) === 'end') {
+      if (overall === null)
+        warnings.push('stamp: the log has no two rows of one turbine; its times are kept as they are')
+      for (const name of post.tracks.keys()) shiftMs.set(name, byTurbine.get(name) ?? overall ?? 0)
+    }
+    const staged = await stageRows(connection, {
+      files,
+      channels,
+      post,
+      shiftMs,
+      rejects: post.rejects,
+      folder: parts.folder,
+    })
+    const cells = []
+    for (const [i, file] of files.entries()) {
+      const doubt =
+        files.length > 1 ||
+        accounts[i]!.scanner.rows !== staged.accepted ||
+        lostCells(accounts[i]!, staged.present)
+      cells.push(doubt ? await countCells(connection, file) : new Map<string, never>())
+    }
+    const receipt: Receipt = buildReceipt({
+      accounts,
+      post,
+      staged,
+      cells,
+      overall,
+      steps,
+      reading,
+      warnings,
+      channels,
+    })
+    const rejectedPath = await post.rejects.close()
+    return { path: staged.path, rejectedPath, receipt, channels }
+  } catch (error) {
+    await post.rejects.close()
+    await rm(join(parts.folder, 'rejected.csv'), { force: true })
+    await rm(join(parts.folder, 'staged.parquet'), { force: true })
+    throw error
+  }
+}
+
+/** Whether some cell with text has not become a value. */
+function lostCells({ plan, scanner }: SourceAccount, present: ReadonlyMap<string, number>): boolean {
+  return plan.map.channels.some(
+    (column: MappedColumn) =>
+      scanner.rows - scanner.emptyCells[column.index]! !== present.get(column.takenFor!),
+  )
+}
+
+/** Channels of all files in the order of the first that has them. */
+function mergedChannels(lists: readonly (readonly MappedColumn[])[]): string[] {
+  return [...new Set(lists.flatMap((list) => list.map((column) => column.takenFor!)))]
+}

@@ -1,0 +1,200 @@
+import { join } from 'node:path'
+import {
+  quoteIdentifier,
+  quoteText,
+  readColumns,
+  streamColumns,
+  writeParquet,
+  type Connection,
+} from '../duck/index.ts'
+import { cellCountsSql, cellsSql, rowsSql, type CleanFile } from './clean-file.ts'
+import type { Rejects } from './rejects.ts'
+import { commonestStep, flushSteps } from './row-clock.ts'
+import type { PostState } from './row-scanner.ts'
+
+export interface NamedCleanFile extends CleanFile {
+  readonly name: string
+}
+
+/** What became of the cells of one number column. */
+export interface CellCount {
+  readonly filled: number
+  readonly unreadable: number
+  readonly outOfRange: number
+  /** First cell that could not be read, and its line. */
+  readonly example: string | null
+  readonly exampleLine: number | null
+  /** Cells above the highest value of the channel, and about how many different ones. */
+  readonly above: number
+  readonly aboveKinds: number
+}
+
+export interface StagedRows {
+  readonly path: string
+  readonly accepted: number
+  readonly duplicate: number
+  /** Per channel: cells that hold a value. */
+  readonly present: ReadonlyMap<string, number>
+  readonly turbines: readonly { turbine: string; rows: number; firstMs: number; lastMs: number }[]
+}
+
+/**
+ * Writes the clean rows to one sorted Parquet file; rows without any value go to `rejects`.
+ *
+ * @param shiftMs  per turbine: subtracted from its times.
+ * @param emptyCells  per channel: cells that were empty in the text; when this and the file agree, nothing was lost.
+ */
+export async function stageRows(
+  connection: Connection,
+  parts: {
+    files: readonly NamedCleanFile[]
+    channels: readonly string[]
+    post: PostState
+    shiftMs: ReadonlyMap<string, number>
+    rejects: Rejects
+    folder: string
+  },
+): Promise<StagedRows> {
+  const { files, channels, post, rejects } = parts
+  const rows = `(${files.map((file, i) => rowsSql(file, i, channels)).join(' UNION ALL ')})`
+  const hasValue = `(${channels.map((channel) => `${quoteIdentifier(channel)} IS NOT NULL`).join(' OR ')})`
+  const list = channels.map(quoteIdentifier).join(', ')
+  const query = [
+    `SELECT turbine, time - ${shiftSql(parts.shiftMs)} AS time, ${list} FROM ${rows} WHERE ${hasValue}`,
+    post.mayRepeat
+      ? 'QUALIFY row_number() OVER (PARTITION BY turbine, time ORDER BY src DESC, line DESC) = 1'
+      : '',
+    post.sorted ? '' : 'ORDER BY turbine, time',
+  ].join(' ')
+  const path = join(parts.folder, 'staged.parquet')
+  const accepted = await writeParquet(connection, query, path)
+  let kept = accepted
+  if (post.mayRepeat) {
+    const [counted] = await connection.records(`SELECT count(*) AS n FROM ${rows} WHERE ${hasValue}`)
+    kept = Number(counted!['n'])
+  }
+  if (kept < post.rows) await rejectEmpty(connection, files, channels, rejects)
+
+  const staged = `read_parquet(${quoteText(path)})`
+  const counts = channels.map((channel, i) => `count(${quoteIdentifier(channel)}) AS n${i}`)
+  const [present] = await connection.records(`SELECT ${counts.join(', ')} FROM ${staged}`)
+  const turbines = await readColumns(
+    connection,
+    `(SELECT turbine, count(*) AS rows, min(time) AS first, max(time) AS last FROM ${staged} GROUP BY turbine)`,
+    { turbine: 'text', rows: 'number', first: 'number', last: 'number' },
+    { orderBy: 'turbine' },
+  )
+  return {
+    path,
+    accepted,
+    duplicate: kept - accepted,
+    present: new Map(channels.map((channel, i) => [channel, Number(present![`n${i}`])])),
+    turbines: turbines.columns.turbine.map((turbine, i) => ({
+      turbine: turbine!,
+      rows: turbines.columns.rows[i]!,
+      firstMs: turbines.columns.first[i]!,
+      lastMs: turbines.columns.last[i]!,
+    })),
+  }
+}
+
+/** Looks up the rows without any value: only asked for when the counts disagree. */
+async function rejectEmpty(
+  connection: Connection,
+  files: readonly NamedCleanFile[],
+  channels: readonly string[],
+  rejects: Rejects,
+): Promise<void> {
+  for (const [i, file] of files.entries()) {
+    const own = channels.filter((channel) => file.channels.some((column) => column.takenFor === channel))
+    const isEmpty = own.map((channel) => `${quoteIdentifier(channel)} IS NULL`).join(' AND ')
+    const cells = Array.from({ length: file.fields }, (_, k) => `coalesce(c${k}, '')`)
+    // The text as sent, but for quotes, which the clean file does not keep.
+    const text = `concat_ws(',', ${cells.join(', ')})`
+    const source = `(SELECT line, text FROM (${rowsSql(file, i, own)}) JOIN (SELECT line, ${text} AS text FROM ${cellsSql(file)}) USING (line) WHERE ${isEmpty})`
+    for await (const chunk of streamColumns(
+      connection,
+      source,
+      { line: 'number', text: 'text' },
+      { orderBy: 'line' },
+    )) {
+      chunk.columns.text.forEach((line, k) => {
+        rejects.add(file.name, chunk.columns.line[k]!, 'no-values', line ?? '')
+      })
+      await rejects.flush()
+    }
+  }
+}
+
+/** Counts of unreadable cells and those outside limits, by channel; a second reading of the file. */
+export async function countCells(connection: Connection, file: CleanFile): Promise<Map<string, CellCount>> {
+  const sql = cellCountsSql(file)
+  const counts = new Map<string, CellCount>()
+  if (sql === '') return counts
+  const [record] = await connection.records(sql)
+  const numbers = file.channels.filter((column) => column.unit !== null)
+  numbers.forEach((column, i) => {
+    const number = (key: string) => Number(record![`${key}${i}`] ?? 0)
+    const example = record![`example${i}`]
+    counts.set(column.takenFor!, {
+      filled: number('filled'),
+      unreadable: number('unreadable'),
+      outOfRange: number('outside'),
+      example: typeof example === 'string' ? example : null,
+      exampleLine: example === null ? null : number('exampleLine'),
+      above: number('above'),
+      aboveKinds: number('aboveKinds'),
+    })
+  })
+  return counts
+}
+
+/** Commonest step per turbine, ms, and that of all; from the scan when times only rose, else from the sorted rows. */
+export async function intervals(
+  connection: Connection,
+  files: readonly CleanFile[],
+  post: PostState,
+): Promise<{ byTurbine: Map<string, number>; overall: number | null; steps: Map<number, number> }> {
+  const byName = new Map<string, Map<number, number>>()
+  if (!post.mayRepeat) {
+    for (const [name, track] of post.tracks) {
+      flushSteps(track)
+      byName.set(name, track.steps)
+    }
+  } else {
+    const rows = files.map((file, i) => rowsSql(file, i, [])).join(' UNION ALL ')
+    const steps = `SELECT turbine, time - lag(time) OVER (PARTITION BY turbine ORDER BY time) AS step
+      FROM (SELECT DISTINCT turbine, time FROM (${rows}))`
+    const { columns } = await readColumns(
+      connection,
+      `(SELECT turbine, step, count(*) AS n FROM (${steps}) WHERE step > 0 GROUP BY turbine, step)`,
+      { turbine: 'text', step: 'number', n: 'number' },
+      { orderBy: 'turbine, step' },
+    )
+    columns.turbine.forEach((turbine, i) => {
+      const own = byName.get(turbine!) ?? new Map<number, number>()
+      own.set(columns.step[i]!, columns.n[i]!)
+      byName.set(turbine!, own)
+    })
+  }
+  const all = new Map<number, number>()
+  const byTurbine = new Map<string, number>()
+  for (const [name, steps] of byName) {
+    const step = commonestStep(steps)
+    if (step !== null) byTurbine.set(name, step)
+    for (const [ms, n] of steps) all.set(ms, (all.get(ms) ?? 0) + n)
+  }
+  return { byTurbine, overall: commonestStep(all), steps: all }
+}
+
+function shiftSql(shiftMs: ReadonlyMap<string, number>): string {
+  const byShift = new Map<number, string[]>()
+  for (const [turbine, ms] of shiftMs) byShift.set(ms, [...(byShift.get(ms) ?? []), turbine])
+  const shifts = [...byShift.keys()]
+  if (shifts.length === 0) return '0'
+  if (shifts.length === 1) return String(shifts[0]!)
+  const cases = shifts.map(
+    (ms) => `WHEN turbine IN (${byShift.get(ms)!.map(quoteText).join(', ')}) THEN ${ms}`,
+  )
+  return `CASE ${cases.join(' ')} ELSE 0 END`
+}
