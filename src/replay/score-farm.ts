@@ -1,0 +1,113 @@
+import { dayBlocks } from '../analysis/index.ts'
+import { buildFrame, type TurbineColumns } from '../frame/index.ts'
+import type { Receipt, ScoreSheet, ScoringSettings, SiteFile, TurbineSheet } from '../sheet/index.ts'
+import type { Scorers } from './scorers.ts'
+import { worklistOf } from './worklist.ts'
+
+const NORMAL_95 = 1.959963984540054
+
+export interface FarmRequest {
+  readonly replay: string
+  readonly version: string
+  readonly site: SiteFile
+  readonly settings: ScoringSettings
+  readonly ratedPowerKw?: number | undefined
+  readonly receipt: Receipt
+  /** How the log was read, for the provenance. */
+  readonly reading: Record<string, unknown>
+}
+
+/**
+ * Runs the questions over a farm and writes its score sheet. The sheet depends on the rows, the settings and the site
+ * file alone: neither on threads nor on the order of rows or turbines.
+ *
+ * @param farm  rows of each turbine, sorted by time; turbines in byte order of their names.
+ */
+export async function scoreFarm(
+  farm: readonly TurbineColumns[],
+  request: FarmRequest,
+  scorers: Scorers,
+  onTurbine: (done: number, of: number) => void = () => undefined,
+): Promise<ScoreSheet> {
+  const { settings, receipt, site } = request
+  const warnings = [...receipt.warnings]
+  const intervalS = receipt.intervalS ?? site.intervalS ?? 600
+  const frame = buildFrame(farm, { site, settings, intervalS, ratedPowerKw: request.ratedPowerKw })
+  const days = frame.calendar.days
+  const dayWeights = dayBlocks(days, settings)
+
+  let done = 0
+  const turbines = await Promise.all(
+    frame.turbines.map(async (turbine): Promise<TurbineSheet> => {
+      const sheet = await scorers.score({ frame: turbine, settings, dayWeights, days })
+      onTurbine(++done, frame.turbines.length)
+      return sheet
+    }),
+  )
+  for (const turbine of frame.turbines) {
+    for (const note of turbine.notes) warnings.push(`${turbine.turbine}: ${note}`)
+  }
+  for (const setup of site.turbines ?? []) {
+    if (!farm.some(({ turbine }) => turbine === setup.turbine)) {
+      warnings.push(`${setup.turbine}: in the site file, but not in the log`)
+    }
+  }
+  return {
+    replay: request.replay,
+    site: site.site ?? null,
+    window: { from: iso(frame.fromMs), to: iso(frame.toMs), intervalS },
+    rows: {
+      received: receipt.received,
+      accepted: receipt.accepted,
+      duplicate: receipt.duplicate,
+      rejected: receipt.rejected,
+    },
+    receipt,
+    provenance: {
+      version: request.version,
+      node: process.version,
+      settings,
+      reading: request.reading,
+      inputs: receipt.inputs,
+      seed: settings.seed,
+    },
+    fleet: {
+      anemometerResponsePerDeg: responseByModel(
+        frame.turbines.map(({ model }) => model),
+        settings,
+      ),
+    },
+    turbines,
+    worklist: worklistOf(turbines),
+    corrections: [],
+    warnings,
+  }
+}
+
+function responseByModel(
+  models: readonly string[],
+  settings: ScoringSettings,
+): ScoreSheet['fleet']['anemometerResponsePerDeg'] {
+  const known = settings.assumedResponsePctPerDeg
+  const half = known === null ? (NORMAL_95 * settings.responseSpreadPctPerDeg) / 100 : 0
+  const centre = (known ?? 0) / 100
+  return Object.fromEntries(
+    [...new Set(models)].map((model) => [
+      model,
+      {
+        estimate: known === null ? null : centre,
+        interval95: [centre - half, centre + half],
+        spread: known === null ? null : 0,
+        turbines: models.filter((other) => other === model).length,
+        source:
+          known === null
+            ? 'not measured: the setting responseSpreadPctPerDeg says how large it may be'
+            : 'taken as known: the setting assumedResponsePctPerDeg',
+      },
+    ]),
+  )
+}
+
+function iso(ms: number): string {
+  return new Date(ms).toISOString()
+}
