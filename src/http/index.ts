@@ -1,3 +1,2 @@
 export { openapiYaml } from './openapi.ts'
 export { buildServer, type ServerParts } from './server.ts'
-export { clearUploads } from './upload.ts'

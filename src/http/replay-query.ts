@@ -4,7 +4,6 @@ import { checkShape } from '../setup/index.ts'
 import { ReadingOptions, ScoringSettings } from '../sheet/index.ts'
 
 const reading = ReadingOptions.properties
-const { assumedResponsePctPerDeg: _null, ...numbers } = ScoringSettings.properties
 
 /** What the query of POST /v1/replays may hold. What it does not hold comes from the settings of the service. */
 export const ReplayQuery = Type.Object(
@@ -27,7 +26,7 @@ export const ReplayQuery = Type.Object(
         description: 'rated power of turbines whose site file gives none, kW',
       }),
     ),
-    ...Type.Partial(Type.Object(numbers)).properties,
+    ...Type.Partial(Type.Omit(ScoringSettings, ['assumedResponsePctPerDeg'])).properties,
     assumeResponse: Type.Optional(
       Type.Number({
         minimum: -5,

@@ -111,7 +111,7 @@ export function replayRoutes(app: TypedServer, parts: ReplayRouteParts): void {
     },
     async (request, reply) => {
       const options = replayOptions(request.query, parts.settings)
-      const upload = await receiveUpload(request as FastifyRequest, parts.upload)
+      const upload = await receiveUpload(request, parts.upload)
       try {
         const sheet = await parts.replays.oneShot({ logs: upload.logs, site: upload.site, ...options })
         const record = await parts.replays.get(sheet.replay)
@@ -162,7 +162,7 @@ export function replayRoutes(app: TypedServer, parts: ReplayRouteParts): void {
       if (record.sheet === null) {
         return await sendJson(reply.header('cache-control', 'no-store'), summary(record))
       }
-      return await sendTagged(request as FastifyRequest, reply as FastifyReply, Buffer.from(record.sheet))
+      return await sendTagged(request, reply, Buffer.from(record.sheet))
     },
   )
 
@@ -200,7 +200,7 @@ export function replayRoutes(app: TypedServer, parts: ReplayRouteParts): void {
       const { after, limit = 50 } = request.query
       const page = await parts.replays.list(after === undefined ? { limit } : { after, limit })
       const json = JSON.stringify({ replays: page.replays.map(summary), next: page.next })
-      return await sendTagged(request as FastifyRequest, reply as FastifyReply, Buffer.from(json))
+      return await sendTagged(request, reply, Buffer.from(json))
     },
   )
 

@@ -1,8 +1,9 @@
 import { randomUUID } from 'node:crypto'
 import type { IncomingMessage, ServerResponse } from 'node:http'
+import type { Socket } from 'node:net'
 import multipart from '@fastify/multipart'
 import swagger, { type FastifyDynamicSwaggerOptions } from '@fastify/swagger'
-import fastify, { type FastifyBaseLogger, type FastifyReply, type FastifyRequest } from 'fastify'
+import fastify, { type FastifyBaseLogger, type FastifyReply } from 'fastify'
 import { InputError } from '../errors.ts'
 import { checkShape } from '../setup/index.ts'
 import { Problem, ScoreSheet, SiteFile } from '../sheet/index.ts'
@@ -17,6 +18,8 @@ import { FORM_LIMITS } from './upload.ts'
 
 export interface ServerParts extends ReplayRouteParts {
   readonly ready: ReadyCheck
+  /** A folder whose path never stands in an answer. */
+  readonly dataFolder: string
   /** Version of the program, printed in the description of the interface. */
   readonly version: string
   /** A pino logger, or none to stay silent. */
@@ -30,7 +33,7 @@ const SANE_REQUEST_ID = /^[\w.:-]{1,100}$/
 
 /** The HTTP service, ready to listen. Closing it lets running requests finish and refuses new ones. */
 export async function buildServer(parts: ServerParts): Promise<TypedServer> {
-  const hiddenFolder = parts.upload.dataFolder
+  const hiddenFolder = parts.dataFolder
   const app: TypedServer = fastify({
     ...(parts.logger === undefined ? { logger: false } : { loggerInstance: parts.logger }),
     genReqId: requestId,
@@ -39,7 +42,7 @@ export async function buildServer(parts: ServerParts): Promise<TypedServer> {
     // Slow senders are watched by silence, not by total time: a log of many GB may take an hour.
     requestTimeout: 0,
     frameworkErrors: (error, request, reply) => {
-      sendProblem(request as FastifyRequest, reply as FastifyReply, error, hiddenFolder)
+      sendProblem(request, reply, error, hiddenFolder)
     },
     clientErrorHandler: answerBrokenRequest,
   })
@@ -93,13 +96,13 @@ export async function buildServer(parts: ServerParts): Promise<TypedServer> {
     }
     if (error instanceof InputError && error.code === 'UNSUPPORTED_MEDIA_TYPE')
       reply.header('accept-encoding', 'gzip')
-    return sendProblem(request as FastifyRequest, reply as FastifyReply, error, hiddenFolder)
+    return sendProblem(request, reply, error, hiddenFolder)
   })
   app.setNotFoundHandler((request, reply) => {
     const path = request.url.split('?', 1)[0] ?? '/'
     const refusal = addresses.refusal(request.method, path)
     if (refusal.code === 'METHOD_NOT_ALLOWED') reply.header('allow', addresses.methodsOf(path).join(', '))
-    return sendProblem(request as FastifyRequest, reply as FastifyReply, refusal, hiddenFolder)
+    return sendProblem(request, reply, refusal, hiddenFolder)
   })
 
   const shared = { Problem, ScoreSheet, SiteFile, ReplaySummary }
@@ -150,7 +153,7 @@ function lingerOver(request: IncomingMessage): void {
 }
 
 /** Bytes that are no HTTP request: there is no request to answer, only a socket. */
-function answerBrokenRequest(error: Error & { code?: string }, socket: import('node:net').Socket): void {
+function answerBrokenRequest(error: Error & { code?: string }, socket: Socket): void {
   if (error.code === 'ECONNRESET' || socket.destroyed || !socket.writable) {
     socket.destroy()
     return

@@ -17,8 +17,8 @@ import { storeStream, tooLarge, type ByteBudget } from './store-stream.ts'
 const SITE_LIMIT_BYTES = 8_000_000
 
 export interface UploadLimits {
-  /** The folder that uploads are written below. */
-  readonly dataFolder: string
+  /** An existing folder; every upload gets one of its own below. */
+  readonly folder: string
   readonly bodyLimitBytes: number
   /** Silence after which the connection is given up, ms. */
   readonly idleMs: number
@@ -31,15 +31,6 @@ export interface Upload {
   remove(): Promise<void>
 }
 
-function uploadsFolder(dataFolder: string): string {
-  return join(dataFolder, 'uploads')
-}
-
-/** Removes what a killed process left behind. To be called before the service listens. */
-export async function clearUploads(dataFolder: string): Promise<void> {
-  await rm(uploadsFolder(dataFolder), { recursive: true, force: true })
-}
-
 /**
  * Stores the logs of a request on disk while they come in; nothing is held in memory but a site file.
  *
@@ -50,7 +41,7 @@ export async function receiveUpload(request: FastifyRequest, limits: UploadLimit
   const declaredBytes = Number(request.headers['content-length'] ?? 0)
   if (declaredBytes > limits.bodyLimitBytes) throw tooLarge(limits.bodyLimitBytes)
   const encoding = contentEncoding(request)
-  const folder = join(uploadsFolder(limits.dataFolder), randomUUID())
+  const folder = join(limits.folder, `upload-${randomUUID()}`)
   const remove = () => rm(folder, { recursive: true, force: true })
   const socket = request.raw.socket
   const giveUp = () => {
@@ -58,7 +49,7 @@ export async function receiveUpload(request: FastifyRequest, limits: UploadLimit
     socket.destroy()
   }
   try {
-    await mkdir(folder, { recursive: true, mode: 0o700 })
+    await mkdir(folder, { mode: 0o700 })
     socket.setTimeout(limits.idleMs, giveUp)
     const budget: ByteBudget = { limitBytes: limits.bodyLimitBytes, usedBytes: 0 }
     const received = request.isMultipart()

@@ -14,7 +14,8 @@ const app = await buildServer({
   replays: { oneShot: unused, get: unused, list: unused, remove: unused },
   // Defaults of the service do not stand in the description, so that it is the same for every installation.
   settings: {} as never,
-  upload: { dataFolder: '/', bodyLimitBytes: 1, idleMs: 1 },
+  dataFolder: '/',
+  upload: { folder: '/', bodyLimitBytes: 1, idleMs: 1 },
 })
 await app.ready()
 const yaml = openapiYaml(app)

@@ -272,7 +272,7 @@ test('a body at the limit is taken and one byte more is refused, with and withou
     headers: CSV,
     body: new Blob([over]).stream(),
     duplex: 'half',
-  } as RequestInit)
+  })
   expect(chunked.status).toBe(413)
   await eventually(async () => (await server.leftovers()).length === 0)
 })
@@ -287,7 +287,7 @@ test('the parts of a form share one limit', async () => {
     body: whole.body,
     headers: { 'content-type': whole.headers.get('content-type') ?? '' },
     duplex: 'half',
-  } as RequestInit)
+  })
   expect(response.status).toBe(413)
   expect((await problemOf(response)).code).toBe('LOG_TOO_LARGE')
   await eventually(async () => (await server.leftovers()).length === 0)

@@ -65,7 +65,7 @@ test.each(['limit=0', 'limit=201', 'limit=x', 'page=2'])('the list refuses ?%s',
   expect(response.body).toMatchObject({ code: 'BAD_OPTION' })
 })
 
-test('a number that is not known is answered as null and not as 0', async () => {
+test('a number that is not known is answered as null and not as 0', () => {
   const serialize = server.app.serializerCompiler?.({
     schema: { type: 'object', properties: { x: { type: 'number' } } },
     method: 'GET',
@@ -83,7 +83,7 @@ test('a service that is closing lets the running request finish and refuses new 
   server.replays.oneShot = async (request) => {
     started()
     await new Promise<void>((resolve) => (finish = resolve))
-    return scoring(request)
+    return await scoring(request)
   }
   // The second request comes by the connection that the first one keeps open, once the service closes.
   const socket = connect(server.port, '127.0.0.1')

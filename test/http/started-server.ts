@@ -14,7 +14,8 @@ export async function startServer(overrides: Partial<ServerParts> & { bodyLimitB
   const app = await buildServer({
     replays,
     settings: settingsExample(),
-    upload: { dataFolder, bodyLimitBytes, idleMs: 1_000 },
+    dataFolder,
+    upload: { folder: dataFolder, bodyLimitBytes, idleMs: 1_000 },
     ready: () => Promise.resolve(),
     version: '0.1.0',
     ...parts,
@@ -28,7 +29,7 @@ export async function startServer(overrides: Partial<ServerParts> & { bodyLimitB
     port,
     url: `http://127.0.0.1:${port}`,
     /** Names of what uploads left on disk. */
-    leftovers: () => readdir(join(dataFolder, 'uploads')).catch(() => []),
+    leftovers: () => readdir(dataFolder),
     stop: async () => {
       await app.close()
       await rm(dataFolder, { recursive: true, force: true })

@@ -1,0 +1,31 @@
+import type { Readable, Writable } from 'node:stream'
+import type { Replays } from '../replay/contract.ts'
+import type { ScoringSettings } from '../sheet/index.ts'
+
+/** Settings given on the command line: name of the setting -> the flag it came by and its text. */
+export type SettingFlags = Record<string, { readonly flag: string; readonly value: string }>
+
+/** What scores a log without a service. */
+export interface Scoring {
+  readonly replays: Replays
+  readonly settings: ScoringSettings
+  /** An empty folder of this run, removed by `close`. */
+  readonly tempFolder: string
+  close(): Promise<void>
+}
+
+export type Terminal = Writable & { readonly isTTY?: boolean; readonly columns?: number }
+
+/** Everything that a command needs from outside. */
+export interface CommandParts {
+  readonly version: string
+  readonly stdin: Readable
+  readonly stdout: Terminal
+  readonly stderr: Terminal
+  /** Every setting with its range, unit and default, for the help text. */
+  readonly settingsHelp: string
+  /** @throws InputError BAD_CONFIG, BAD_OPTION */
+  startScoring(flags: SettingFlags): Promise<Scoring>
+  /** Resolves when the service has stopped. @throws InputError BAD_CONFIG, BAD_OPTION */
+  serve(flags: SettingFlags): Promise<void>
+}

@@ -1,0 +1,144 @@
+import Table from 'cli-table3'
+import type { ScoreSheet, TurbineSheet } from '../sheet/index.ts'
+
+/** Widths without the gap between columns; with it a line takes 118 characters. */
+const WIDTHS = { turbine: 11, verdict: 14, standing: 21, loss: 8, annual: 20, advice: 44 } as const
+
+const LONGEST_CAUTION = 100
+
+/**
+ * A score sheet as a person reads it in a terminal: plain text, at most 120 characters a line.
+ *
+ * @param paths  where the files of the sheet lie.
+ */
+export function sheetSummary(sheet: ScoreSheet, paths: readonly string[]): string {
+  const lines = [
+    `${sheet.site ?? 'log without a site file'}, ${day(sheet.window.from)} to ${day(sheet.window.to)}`,
+    '',
+    turbineTable(sheet),
+    '',
+    'm: degrees that the nacelle must stand further clockwise, seen from above; it is added to the vane reading.',
+    '',
+    rowsLine(sheet),
+    ...section('Warnings', unique([...sheet.warnings, ...sheet.receipt.warnings])),
+    ...section('Cautions, in full in the score sheet', cautionLines(sheet.turbines)),
+    '',
+    ...paths.map((path) => `written: ${path}`),
+  ]
+  return `${lines.join('\n')}\n`
+}
+
+function turbineTable(sheet: ScoreSheet): string {
+  const table = new Table({
+    head: ['turbine', 'verdict', 'm, degrees [95 %]', 'loss, %', 'MWh a year [95 %]', 'what to do'],
+    colWidths: Object.values(WIDTHS),
+    wordWrap: true,
+    wrapOnWordBoundary: true,
+    style: { head: [], border: [], 'padding-left': 0, 'padding-right': 1 },
+    chars: {
+      top: '',
+      'top-mid': '',
+      'top-left': '',
+      'top-right': '',
+      bottom: '',
+      'bottom-mid': '',
+      'bottom-left': '',
+      'bottom-right': '',
+      left: '',
+      'left-mid': '',
+      mid: '',
+      'mid-mid': '',
+      right: '',
+      'right-mid': '',
+      middle: '',
+    },
+  })
+  for (const one of sheet.turbines) {
+    const { staticOffset, energyLoss } = one
+    const judged = one.verdict === 'offset' || one.verdict === 'aligned'
+    table.push([
+      one.turbine,
+      one.verdict,
+      // A number that is not settled must not be typed into a controller: only its interval is shown.
+      withInterval(
+        judged ? staticOffset.standingMisalignmentDeg : null,
+        staticOffset.standingInterval95Deg,
+        signed,
+      ),
+      judged ? plain(energyLoss.static.recoverablePctOfProduced, 2) : '?',
+      withInterval(
+        judged ? energyLoss.static.annualMwh : null,
+        energyLoss.static.annualInterval95Mwh,
+        (value) => plain(value, 0),
+      ),
+      one.advice[0] ?? one.reason,
+    ])
+  }
+  return table
+    .toString()
+    .split('\n')
+    .map((line) => line.trimEnd())
+    .join('\n')
+}
+
+function withInterval(
+  value: number | null,
+  interval: readonly (number | null)[],
+  format: (value: number | null) => string,
+): string {
+  const [lower = null, upper = null] = interval
+  if (lower === null || upper === null) return format(value)
+  return `${format(value)} [${format(lower)}, ${format(upper)}]`
+}
+
+function signed(value: number | null): string {
+  if (value === null || !Number.isFinite(value)) return '?'
+  const text = plain(value, 1)
+  return value > 0 && text !== '0.0' ? `+${text}` : text
+}
+
+function plain(value: number | null, decimals: number): string {
+  if (value === null || !Number.isFinite(value)) return '?'
+  const text = value.toFixed(decimals)
+  return Number(text) === 0 ? text.replace('-', '') : text
+}
+
+function rowsLine(sheet: ScoreSheet): string {
+  const { received, accepted, duplicate, rejected } = sheet.rows
+  const used = sheet.turbines.reduce((sum, one) => sum + one.rows.used, 0)
+  return `rows: ${received} received = ${accepted} accepted + ${duplicate} duplicate + ${rejected} rejected; ${used} used for the offsets`
+}
+
+/** One line a caution, with the turbines that it is said of. */
+function cautionLines(turbines: readonly TurbineSheet[]): string[] {
+  const byText = new Map<string, string[]>()
+  for (const one of turbines) {
+    for (const caution of one.cautions) byText.set(caution, [...(byText.get(caution) ?? []), one.turbine])
+  }
+  return [...byText].map(([text, names]) => {
+    const who =
+      names.length === turbines.length
+        ? 'all'
+        : names.length > 4
+          ? `${names.length} turbines`
+          : names.join(', ')
+    return `${who}: ${text}`
+  })
+}
+
+function section(title: string, lines: readonly string[]): string[] {
+  if (lines.length === 0) return []
+  return ['', `${title}:`, ...lines.map((line) => `- ${shortened(line)}`)]
+}
+
+function shortened(text: string): string {
+  return text.length > LONGEST_CAUTION ? `${text.slice(0, LONGEST_CAUTION - 3)}...` : text
+}
+
+function unique(lines: readonly string[]): string[] {
+  return [...new Set(lines)]
+}
+
+function day(iso: string | null): string {
+  return iso === null ? '?' : iso.slice(0, 16).replace('T', ' ')
+}
