@@ -101,11 +101,16 @@ async function rowTime(
   const cells = (column: number) => dialect.rows.map((row) => row[column] ?? '')
   if (map.time.kind === 'stamp') {
     const { stamp } = map.time
-    const format = sniffStamps(source.name, dialect.header[stamp]!, cells(stamp))
+    const format = sniffStamps(source.name, dialect.header[stamp]!, cells(stamp), reading.dateOrder)
     return { time: stampTime(stamp, format.reader), description: format.description }
   }
   if (map.time.kind === 'date-clock') {
-    const format = sniffStamps(source.name, dialect.header[map.time.day]!, cells(map.time.day))
+    const format = sniffStamps(
+      source.name,
+      dialect.header[map.time.day]!,
+      cells(map.time.day),
+      reading.dateOrder,
+    )
     return { time: dateClockTime(map.time, format.reader), description: `${format.description} with a clock` }
   }
   if (reading.startDate === undefined) {

@@ -46,6 +46,11 @@ export const ReadingOptions = Type.Object(
         description: 'date of the lowest day number, for logs with a day number and a clock',
       }),
     ),
+    dateOrder: Type.Optional(
+      Type.Union([Type.Literal('ymd'), Type.Literal('dmy'), Type.Literal('mdy')], {
+        description: 'order of year, month and day in written dates, where the log leaves it open',
+      }),
+    ),
   },
   { additionalProperties: false, description: 'Reading options' },
 )
