@@ -40,7 +40,7 @@ export interface LogAccount {
 
 /**
  * The log of a farm as CSV in long form, in pieces of one time step each: header, then rows by time and turbine; UTC with
- * Z; a missing value is an empty field. Blemishes (`missingCells`, `brokenLines`) come from a stream of their own.
+ * Z; a missing value is an empty field. Blemishes (`missingCells`, `brokenLines`) come from streams of their own.
  *
  * @param account  is filled while the pieces are taken.
  */
@@ -56,8 +56,9 @@ export function* logCsv(farm: SimulatedFarm, account: LogAccount): Generator<str
     name.startsWith('vane') && name !== 'vane_sd' ? scenario.vaneDecimals : DECIMALS[name],
   )
   const rowCount = turbines[0]!.timeMs.length
-  const blemishes = new RandomStream(scenario.seed, PURPOSE.blemish)
-  const broken = drawBroken(blemishes, scenario.brokenLines, rowCount * turbines.length)
+  const cellStream = new RandomStream(scenario.seed, PURPOSE.blemish, 0)
+  const lineStream = new RandomStream(scenario.seed, PURPOSE.blemish, 1)
+  const broken = drawBroken(lineStream, scenario.brokenLines, rowCount * turbines.length)
   yield `time,turbine,${names.join(',')},status\n`
 
   for (let row = 0; row < rowCount; row++) {
@@ -70,7 +71,7 @@ export function* logCsv(farm: SimulatedFarm, account: LogAccount): Generator<str
         line += ',' + cell(turbine, names[c]!, row, decimals[c]!, scenario.nacelleScale === 'wrapped')
       }
       line += ',' + turbine.status[row]!
-      if (scenario.missingCells > 0) line = dropCells(line, blemishes, scenario.missingCells, account)
+      if (scenario.missingCells > 0) line = dropCells(line, cellStream, scenario.missingCells, account)
       account.rows++
       account.dataLines++
       const kind = broken.get(row * turbines.length + index)
