@@ -181,7 +181,7 @@ export const SETTINGS = {
     default: null,
     expected: `${assumedResponse.expected} or none`,
     parse: (value: string) => (value === 'none' ? null : assumedResponse.parse(value)),
-  } as Entry<number | null>,
+  },
   responseSpreadPctPerDeg: scoring('responseSpreadPctPerDeg', '% per degree', 0.15),
   windMinMs: scoring('windMinMs', 'm/s', 5),
   vaneMaxDeg: scoring('vaneMaxDeg', 'degrees', 15),
@@ -260,4 +260,14 @@ export function readConfig(
 export function scoringSettings(config: Config): ScoringSettings {
   const names = Object.keys(ScoringSettings.properties) as (keyof ScoringSettings)[]
   return Object.fromEntries(names.map((name) => [name, config[name]])) as unknown as ScoringSettings
+}
+
+/** Every setting as a line of a help text: name in the environment, what it takes, its default, what it means. */
+export function settingsHelp(): string {
+  return Object.entries<Entry<string | number | null>>(SETTINGS)
+    .map(([key, { expected, unit, default: value, text: meaning }]) => {
+      const range = `${expected}${unit === '' ? '' : ` ${unit}`}; default ${value ?? 'none'}`
+      return `  ${environmentName(key)}\n      ${meaning} (${range})\n`
+    })
+    .join('')
 }

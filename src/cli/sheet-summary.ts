@@ -1,10 +1,12 @@
 import Table from 'cli-table3'
+import { CAUTION_IN_SHORT, CAUTIONS } from '../replay/index.ts'
 import type { ScoreSheet, TurbineSheet } from '../sheet/index.ts'
 
 /** Widths without the gap between columns; with it a line takes 118 characters. */
 const WIDTHS = { turbine: 11, verdict: 14, standing: 21, loss: 8, annual: 20, advice: 44 } as const
 
-const LONGEST_CAUTION = 100
+const LONGEST_CAUTION = 115
+const LINE_WIDTH = 118
 
 /**
  * A score sheet as a person reads it in a terminal: plain text, at most 120 characters a line.
@@ -21,7 +23,9 @@ export function sheetSummary(sheet: ScoreSheet, paths: readonly string[]): strin
     '',
     rowsLine(sheet),
     ...section('Warnings', unique([...sheet.warnings, ...sheet.receipt.warnings])),
-    ...section('Cautions, in full in the score sheet', cautionLines(sheet.turbines)),
+    ...section('Cautions', cautionLines(sheet.turbines)),
+    '',
+    ...wrapped(CAUTION_IN_SHORT),
     '',
     ...paths.map((path) => `written: ${path}`),
   ]
@@ -113,7 +117,8 @@ function rowsLine(sheet: ScoreSheet): string {
 function cautionLines(turbines: readonly TurbineSheet[]): string[] {
   const byText = new Map<string, string[]>()
   for (const one of turbines) {
-    for (const caution of one.cautions) byText.set(caution, [...(byText.get(caution) ?? []), one.turbine])
+    const own = one.cautions.filter((caution) => !CAUTIONS.includes(caution))
+    for (const caution of own) byText.set(caution, [...(byText.get(caution) ?? []), one.turbine])
   }
   return [...byText].map(([text, names]) => {
     const who =
@@ -129,6 +134,20 @@ function cautionLines(turbines: readonly TurbineSheet[]): string[] {
 function section(title: string, lines: readonly string[]): string[] {
   if (lines.length === 0) return []
   return ['', `${title}:`, ...lines.map((line) => `- ${shortened(line)}`)]
+}
+
+function wrapped(text: string): string[] {
+  const lines: string[] = []
+  let line = ''
+  for (const word of text.split(' ')) {
+    if (line !== '' && line.length + 1 + word.length > LINE_WIDTH) {
+      lines.push(line)
+      line = word
+    } else {
+      line = line === '' ? word : `${line} ${word}`
+    }
+  }
+  return [...lines, line]
 }
 
 function shortened(text: string): string {

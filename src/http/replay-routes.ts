@@ -192,7 +192,7 @@ export function replayRoutes(app: TypedServer, parts: ReplayRouteParts): void {
             content: { 'application/json': { schema: ReplayPage } },
           },
           304: { description: 'The page at hand is the same' },
-          ...problemResponses(['BAD_OPTION', ...SERVICE_CODES]),
+          ...problemResponses(['BAD_OPTION', 'BAD_REQUEST', ...SERVICE_CODES]),
         },
       },
     },
