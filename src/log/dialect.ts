@@ -47,7 +47,7 @@ export function sniffDialect(name: string, sample: string, complete: boolean): D
     headerLine: header.line,
     preambleLines: used.filter(({ line }) => line < header.line).length,
     hasQuotes: sample.includes('"'),
-    decimalComma: delimiter !== ',' && hasDecimalComma(rows),
+    decimalComma: hasDecimalComma(rows, delimiter),
     rows,
   }
 }
@@ -123,15 +123,21 @@ function looksLikeHeader(fields: readonly string[]): boolean {
   return data.length * 3 < filled.length || (data.length === 0 && filled.length > 0)
 }
 
-/** Cells such as `7,25` and none such as `7.25`: dates and texts do not count. */
-function hasDecimalComma(rows: readonly (readonly string[])[]): boolean {
+/**
+ * Cells such as `7,25` and none such as `7.25`: dates and texts do not count. In a text with commas between (quoted) cells
+ * three digits behind every comma may as well be thousands: then it is not guessed.
+ */
+function hasDecimalComma(rows: readonly (readonly string[])[], delimiter: string): boolean {
   let commas = 0
   let points = 0
+  let certain = 0
   for (const row of rows) {
     for (const cell of row) {
-      if (/^[-+]?\d+,\d+(e[-+]?\d+)?$/i.test(cell)) commas++
-      else if (/^[-+]?\d+\.\d+(e[-+]?\d+)?$/i.test(cell)) points++
+      if (/^[-+]?\d+,\d+(e[-+]?\d+)?$/i.test(cell)) {
+        commas++
+        if (!/,\d{3}$/.test(cell)) certain++
+      } else if (/^[-+]?\d+\.\d+(e[-+]?\d+)?$/i.test(cell)) points++
     }
   }
-  return commas > points
+  return commas > points && (delimiter !== ',' || (certain > 0 && points === 0))
 }

@@ -8,7 +8,8 @@ import type { ScanPlan } from './row-scanner.ts'
 import { dateClockTime, dayClockTime, stampTime, type RowTime } from './row-time.ts'
 import { sourceBytes } from './source-bytes.ts'
 import { splitFields } from './split-fields.ts'
-import { sniffStamps } from './stamp-format.ts'
+import { sniffStamps, type StampFormat } from './stamp-format.ts'
+import { dateReader } from './stamp-reader.ts'
 import { textLines } from './text-lines.ts'
 
 const SAMPLE_BYTES = 256 * 1024
@@ -21,6 +22,12 @@ export interface SourcePlan {
   readonly map: ColumnMap
   readonly timeFormat: string
   readonly scan: Omit<ScanPlan, 'zone' | 'limits'>
+}
+
+interface SampledSource extends LogSource {
+  readonly dialect: Dialect
+  readonly limits: LogLimits
+  readonly encoding: ReturnType<typeof sniffEncoding>
 }
 
 /**
@@ -44,7 +51,7 @@ export async function planSource(
     )
   }
   const map = mapColumns(source.name, dialect.header, reading.columns ?? {}, dialect.rows)
-  const { time, description } = await rowTime(source, dialect, map, reading, limits)
+  const { time, description } = await rowTime({ ...source, dialect, limits, encoding }, map, reading)
   return {
     source,
     firstBytes: bytes.subarray(0, 4096),
@@ -92,25 +99,22 @@ async function* one(bytes: Buffer): AsyncGenerator<Buffer> {
 }
 
 async function rowTime(
-  source: LogSource,
-  dialect: Dialect,
+  source: SampledSource,
   map: ColumnMap,
   reading: LogReading,
-  limits: LogLimits,
 ): Promise<{ time: RowTime; description: string }> {
-  const cells = (column: number) => dialect.rows.map((row) => row[column] ?? '')
+  const { dialect } = source
+  const stamps = async (column: number) => {
+    const cells = dialect.rows.map((row) => row[column] ?? '')
+    const format = sniffStamps(source.name, dialect.header[column]!, cells, reading.dateOrder)
+    return settleOrder(source, column, format)
+  }
   if (map.time.kind === 'stamp') {
-    const { stamp } = map.time
-    const format = sniffStamps(source.name, dialect.header[stamp]!, cells(stamp), reading.dateOrder)
-    return { time: stampTime(stamp, format.reader), description: format.description }
+    const format = await stamps(map.time.stamp)
+    return { time: stampTime(map.time.stamp, format.reader), description: format.description }
   }
   if (map.time.kind === 'date-clock') {
-    const format = sniffStamps(
-      source.name,
-      dialect.header[map.time.day]!,
-      cells(map.time.day),
-      reading.dateOrder,
-    )
+    const format = await stamps(map.time.day)
     return { time: dateClockTime(map.time, format.reader), description: `${format.description} with a clock` }
   }
   if (reading.startDate === undefined) {
@@ -125,38 +129,57 @@ async function rowTime(
   if (Number.isNaN(startMs)) {
     throw new InputError('BAD_OPTION', `startDate: expected YYYY-MM-DD, got ${reading.startDate}`)
   }
-  const lowest = await lowestDay(source, dialect, map.time.day, limits)
+  const lowest = await lowestDay(source, map.time.day)
   return {
     time: dayClockTime(map.time, lowest, startMs),
     description: `day number ${lowest} = ${reading.startDate}, with a clock`,
   }
 }
 
-/** The lowest day number of the whole file: it names the start date, and may stand in the last row. */
-async function lowestDay(
-  source: LogSource,
-  dialect: Dialect,
+/** Visits the cells of one column of the whole file, for the few questions that its beginning cannot answer. */
+async function visitCells(
+  source: SampledSource,
   column: number,
-  limits: LogLimits,
-): Promise<number> {
+  visit: (cell: string) => void,
+): Promise<void> {
+  const { dialect, limits, encoding } = source
   const { chunks } = await sourceBytes(source, limits)
   const position = { lines: 0 }
-  let lowest = Infinity
-  for await (const slab of textLines(
-    source.name,
-    toUtf8(chunks, sniffEncoding(Buffer.alloc(0))),
-    limits.maxLineBytes,
-    position,
-  )) {
-    for (const line of slab.toString('utf8').split('\n')) {
+  for await (const slab of textLines(source.name, toUtf8(chunks, encoding), limits.maxLineBytes, position)) {
+    const lines = slab.toString('utf8').split('\n')
+    lines.pop()
+    for (const line of lines) {
       position.lines++
       if (position.lines <= dialect.headerLine) continue
-      const cell = splitFields(line, dialect.delimiter)?.[column]?.trim() ?? ''
-      if (/^-?\d+(\.0*)?$/.test(cell) && Number(cell) < lowest) lowest = Number(cell)
+      const cell = splitFields(line, dialect.delimiter)?.[column]?.trim()
+      if (cell !== undefined && cell !== '') visit(cell)
     }
-    position.lines--
   }
+}
+
+/** The lowest day number names the start date, and may stand in the last row. */
+async function lowestDay(source: SampledSource, column: number): Promise<number> {
+  let lowest = Infinity
+  await visitCells(source, column, (cell) => {
+    if (/^-?\d+(\.0*)?$/.test(cell) && Number(cell) < lowest) lowest = Number(cell)
+  })
   return lowest
+}
+
+/** Settles day or month first by the first date of the file that can be read in one way only. */
+async function settleOrder(source: SampledSource, column: number, format: StampFormat): Promise<StampFormat> {
+  if (!format.doubt) return format
+  const readers = { dmy: dateReader('dmy'), mdy: dateReader('mdy') }
+  const only = { dmy: 0, mdy: 0 }
+  await visitCells(source, column, (cell) => {
+    const bytes = Buffer.from(cell)
+    const [dmy, mdy] = [readers.dmy.read(bytes, 0, bytes.length), readers.mdy.read(bytes, 0, bytes.length)]
+    if (Number.isNaN(dmy) !== Number.isNaN(mdy)) only[Number.isNaN(dmy) ? 'mdy' : 'dmy']++
+  })
+  // One mistyped date must not turn a file round.
+  const [order, other] = only.dmy >= only.mdy ? (['dmy', 'mdy'] as const) : (['mdy', 'dmy'] as const)
+  if (only[order] === 0 || only[other] * 20 > only[order]) throw format.doubt
+  return { reader: readers[order], description: format.description }
 }
 
 /** `Q01.csv.gz` -> `Q01`: the turbine's name where neither log nor request gives one. */

@@ -5,6 +5,8 @@ export interface StampFormat {
   readonly reader: StampReader
   /** In words, for receipts. */
   readonly description: string
+  /** The question to ask when day and month cannot be told apart in these examples; later ones may. */
+  readonly doubt?: InputError
 }
 
 const DAY_MS = 86_400_000
@@ -41,7 +43,15 @@ export function sniffStamps(
     )
   }
   const best = readable.filter(({ share }) => share >= most * 0.98).map((one) => one.order)
-  const chosen = best.length === 1 || best.includes('ymd') ? best[0]! : dayOrMonthFirst(name, column, texts)
+  const chosen = best.length === 1 || best.includes('ymd') ? best[0]! : dayOrMonthFirst(texts)
+  if (chosen === null) {
+    const doubt = new InputError(
+      'LOG_TIME',
+      `${name} column ${column}: is ${first} day first or month first? Both can be read; state dateOrder=dmy or dateOrder=mdy`,
+      { detail: { question: 'dateOrder', answers: ['dmy', 'mdy'], example: first } },
+    )
+    return { reader: dateReader('dmy'), description: `written dates (such as ${first})`, doubt }
+  }
   const words = { ymd: 'year-month-day', dmy: 'day-month-year', mdy: 'month-day-year' }
   return { reader: dateReader(chosen), description: `${words[chosen]} (such as ${first})` }
 }
@@ -62,23 +72,18 @@ function readText(reader: StampReader, text: string): number {
 
 /**
  * Day or month first, where every stamp of the beginning can be read both ways: dots stand for day first; else the way in
- * which the dates follow each other without jumps is taken.
- * @throws InputError LOG_TIME with the question to answer
+ * which the dates follow each other without jumps is taken. Null when both do.
  */
-function dayOrMonthFirst(name: string, column: string, texts: readonly string[]): DateOrder {
+function dayOrMonthFirst(texts: readonly string[]): DateOrder | null {
   if (/^\d{1,2}\.\d{1,2}\.\d{2,4}/.test(texts[0]!)) return 'dmy'
-  const jumps = (['dmy', 'mdy'] as const).map((order) => ({ order, ...dateJumps(texts, order) }))
-  const [dmy, mdy] = [jumps[0]!, jumps[1]!]
-  if (dmy.largest <= 2 * DAY_MS && mdy.largest > 20 * DAY_MS) return 'dmy'
-  if (mdy.largest <= 2 * DAY_MS && dmy.largest > 20 * DAY_MS) return 'mdy'
-  throw new InputError(
-    'LOG_TIME',
-    `${name} column ${column}: is ${texts[0]!} day first or month first? Both can be read; state dateOrder=dmy or dateOrder=mdy`,
-    { detail: { question: 'dateOrder', answers: ['dmy', 'mdy'], example: texts[0]! } },
-  )
+  const dmy = largestJump(texts, 'dmy')
+  const mdy = largestJump(texts, 'mdy')
+  if (dmy <= 2 * DAY_MS && mdy > 20 * DAY_MS) return 'dmy'
+  if (mdy <= 2 * DAY_MS && dmy > 20 * DAY_MS) return 'mdy'
+  return null
 }
 
-function dateJumps(texts: readonly string[], order: DateOrder): { largest: number } {
+function largestJump(texts: readonly string[], order: DateOrder): number {
   const reader = dateReader(order)
   let largest = 0
   let before = NaN
@@ -88,7 +93,7 @@ function dateJumps(texts: readonly string[], order: DateOrder): { largest: numbe
     if (Math.abs(now - before) > largest) largest = Math.abs(now - before)
     before = now
   }
-  return { largest }
+  return largest
 }
 
 /** The zero and the unit of numbers, told by their size: no two of the ranges meet between 1990 and 2100. */
