@@ -110,6 +110,17 @@ function buildTurbine(
       'status is in the log but runningStatus is not in the site file: running is judged by power, pitch and rotor speed',
     )
   }
+  const limitedShare =
+    limited.reduce((sum, held) => sum + held, 0) /
+    Math.max(
+      1,
+      running.reduce((sum, runs) => sum + runs, 0),
+    )
+  if (limitedShare > 0.5) {
+    notes.push(
+      `${Math.round(100 * limitedShare)} % of the running rows count as limited: check ratedPowerKw against power_limit, and pitch`,
+    )
+  }
   const curve = measuredPowerCurve(
     normalised.filter((_, i) => reason[i] === 0),
     power.filter((_, i) => reason[i] === 0),
