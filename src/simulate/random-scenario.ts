@@ -34,9 +34,9 @@ export function randomScenario(seed: number, overrides: Partial<FarmScenario> = 
     anemometerSlowError: stream.between(0.015, 0.03),
     anemometerNoiseMs: stream.between(0.1, 0.3),
     performanceDrift: stream.between(0.005, 0.015),
-    yawAverageS: Math.round(stream.between(40, 140)),
+    yawAverageS: Math.round(stream.between(60, 150)),
     yawThresholdDeg: stream.between(6, 10),
-    yawHoldS: Math.round(stream.between(20, 90)),
+    yawHoldS: Math.round(stream.between(45, 110)),
     yawStopDeg: stream.between(0.8, 2.5),
     yawRateDegS: stream.between(0.25, 0.6),
     layout: {

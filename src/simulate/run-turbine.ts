@@ -254,7 +254,7 @@ export function runTurbine(
         if (codeStep > 0) vane = Math.round(vane / codeStep) * codeStep
         vane -= 360 * Math.floor((vane + 180) * (1 / 360))
         if (frozen) {
-          if (frozenAt !== frozenAt) frozenAt = vane
+          if (Number.isNaN(frozenAt)) frozenAt = vane
           vane = frozenAt
         }
         if (second !== null) {
@@ -273,7 +273,7 @@ export function runTurbine(
         // State.
         if (storm ? windMean < STORM_END_MS : windMean > STORM_MS) storm = !storm
         if (idle ? windMean > CUT_IN_MS : windMean < IDLE_MS) idle = !idle
-        const untwisting = untwistTo === untwistTo
+        const untwisting = !Number.isNaN(untwistTo)
         const running = stop === 0 && !idle && !storm && !untwisting
         ramp = running ? (ramp < 1 ? ramp + 1 / START_S : 1) : 0
 

@@ -291,6 +291,31 @@ export function farmScenario(given: Partial<FarmScenario> = {}): FarmScenario {
         `${name}: expected ${scenario.turbines} values, got ${list.length}`,
       )
     }
+    const wrong = list?.find((value) => !(Math.abs(value) <= 360))
+    if (wrong !== undefined) {
+      throw new InputError('OUT_OF_RANGE', `${name}: expected -360 to 360, got ${wrong}`)
+    }
+  }
+  if (!/^[A-Za-z0-9][A-Za-z0-9._-]{0,99}$/.test(scenario.site)) {
+    // It becomes part of file names.
+    throw new InputError(
+      'OUT_OF_RANGE',
+      `site: expected letters, digits, dots, dashes and underscores, got ${JSON.stringify(scenario.site)}`,
+    )
+  }
+  const named = [
+    ...scenario.offsetChanges,
+    ...scenario.faults,
+    ...(typeof scenario.stops === 'boolean' ? [] : scenario.stops),
+    ...(typeof scenario.limits === 'boolean' ? [] : scenario.limits),
+  ].map(({ turbine }) => turbine)
+  for (const turbine of [...named, ...scenario.references]) {
+    if (!(Number.isInteger(turbine) && turbine >= 0 && turbine < scenario.turbines)) {
+      throw new InputError(
+        'OUT_OF_RANGE',
+        `turbine: expected an index of 0 to ${scenario.turbines - 1}, got ${turbine}`,
+      )
+    }
   }
   return scenario
 }

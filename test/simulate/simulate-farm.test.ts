@@ -329,5 +329,8 @@ test('scenarios that make no sense are refused by name', () => {
   refused({ rateS: 7 }, 'OUT_OF_RANGE', 'rateS')
   refused({ seed: 1.5 }, 'OUT_OF_RANGE', 'seed')
   refused({ linkCorrelation: 2 }, 'OUT_OF_RANGE', 'linkCorrelation')
+  refused({ site: '../elsewhere' }, 'OUT_OF_RANGE', 'site')
+  refused({ turbines: 2, offsetsDeg: [1, NaN] }, 'OUT_OF_RANGE', 'offsetsDeg')
+  refused({ turbines: 2, references: [2] }, 'OUT_OF_RANGE', 'index of 0 to 1')
   refused({ turbines: 2, offsetsDeg: [1] }, 'LENGTH_MISMATCH', 'offsetsDeg')
 })
