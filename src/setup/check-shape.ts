@@ -97,18 +97,21 @@ function expectation(error: ErrorObject): string {
   if (error.keyword === 'enum')
     return (schema['enum'] as unknown[]).map((one) => JSON.stringify(one)).join(' or ')
   if (error.keyword === 'format') return `a ${String(schema['format'])}`
+  if (error.keyword === 'additionalProperties') {
+    return `an object with ${Object.keys(schema['properties'] ?? {}).join(', ')}`
+  }
   if (error.keyword === 'pattern') return `text that matches ${String(schema['pattern'])}`
   if (error.keyword === 'minLength') return `at least ${String(schema['minLength'])} character`
   if (error.keyword === 'maxLength') return `at most ${String(schema['maxLength'])} characters`
   const type = ARTICLES[String(schema['type'])] ?? error.message ?? 'another value'
-  const minimum = schema['minimum'] ?? schema['exclusiveMinimum']
-  const maximum = schema['maximum'] ?? schema['exclusiveMaximum']
+  const minimum = (schema['minimum'] ?? schema['exclusiveMinimum']) as number | undefined
+  const maximum = (schema['maximum'] ?? schema['exclusiveMaximum']) as number | undefined
   if (minimum === undefined && maximum === undefined) {
     return ['type', 'minimum', 'maximum'].includes(error.keyword) ? type : (error.message ?? type)
   }
   const above = schema['exclusiveMinimum'] === undefined ? 'from' : 'above'
-  const lower = minimum === undefined ? '' : ` ${above} ${String(minimum)}`
-  const upper = maximum === undefined ? '' : ` up to ${String(maximum)}`
+  const lower = minimum === undefined ? '' : ` ${above} ${minimum}`
+  const upper = maximum === undefined ? '' : ` up to ${maximum}`
   return `${type}${lower}${upper}`
 }
 

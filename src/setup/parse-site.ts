@@ -1,6 +1,6 @@
 import { InputError } from '../errors.ts'
-import { SiteFile } from '../sheet/index.ts'
-import { checkShape } from './check-shape.ts'
+import type { SiteFile } from '../sheet/index.ts'
+import { checkSite } from './check-site.ts'
 
 /**
  * A site file from its text.
@@ -17,21 +17,8 @@ export function parseSite(json: string, place: string): SiteFile {
     throw new InputError(
       'BAD_SITE',
       `${place}: expected JSON, got text that is none (${(cause as Error).message})`,
-      {
-        cause,
-      },
+      { cause },
     )
   }
-  const site = checkShape(SiteFile, value, { code: 'BAD_SITE', place })
-  const seen = new Set<string>()
-  for (const [index, { turbine }] of (site.turbines ?? []).entries()) {
-    if (seen.has(turbine)) {
-      throw new InputError(
-        'BAD_SITE',
-        `${place}.turbines[${index}].turbine: expected every turbine once, got "${turbine}" again`,
-      )
-    }
-    seen.add(turbine)
-  }
-  return site
+  return checkSite(value, place)
 }

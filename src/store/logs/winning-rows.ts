@@ -54,10 +54,12 @@ export async function winningRows(
   const contested = contestedTurbines(parts)
   if (contested.length === 0) return { source: `(${rows})`, isSorted: segments.length === 1 }
   const turbines = inList(contested)
-  const winner = 'QUALIFY row_number() OVER (PARTITION BY turbine, time ORDER BY batch_seq DESC) = 1'
+  const own = `(SELECT * FROM (${rows}) WHERE turbine IN ${turbines})`
+  // A join over three columns spills to disk; a window over whole rows fails at 256 MB on two months of 1 Hz rows.
+  const winners = `SELECT turbine, time, max(batch_seq) AS batch_seq FROM ${own} GROUP BY turbine, time`
   return {
     source: `(SELECT * FROM (${rows}) WHERE turbine NOT IN ${turbines}
-      UNION ALL SELECT * FROM (${rows}) WHERE turbine IN ${turbines} ${winner})`,
+      UNION ALL SELECT * FROM ${own} SEMI JOIN (${winners}) USING (turbine, time, batch_seq))`,
     isSorted: false,
   }
 }

@@ -1,0 +1,42 @@
+import { createHash, type Hash } from 'node:crypto'
+import { createReadStream } from 'node:fs'
+import { InputError } from '../errors.ts'
+
+/**
+ * SHA-256 of the bytes of each file as it was sent.
+ * @throws InputError LOG_NOT_FOUND
+ */
+export async function fileHashes(paths: readonly string[]): Promise<string[]> {
+  const hashes: string[] = []
+  for (const path of paths) hashes.push(await fileHash(path))
+  return hashes
+}
+
+/** Equal for the same rows, so that a post that is sent again is known without reading it. */
+export function contentKey(hashes: readonly string[], reading: object): string {
+  return createHash('sha256')
+    .update(hashes.join('\n'))
+    .update(`\n${sortedJson(reading)}`)
+    .digest('hex')
+}
+
+async function fileHash(path: string): Promise<string> {
+  const hash: Hash = createHash('sha256')
+  try {
+    for await (const chunk of createReadStream(path, { highWaterMark: 1024 * 1024 }))
+      hash.update(chunk as Buffer)
+  } catch (cause) {
+    if ((cause as NodeJS.ErrnoException).code !== 'ENOENT') throw cause
+    throw new InputError('LOG_NOT_FOUND', `log: expected a file, got none at ${path}`, { cause })
+  }
+  return hash.digest('hex')
+}
+
+/** JSON in which the order of names does not matter. */
+function sortedJson(value: unknown): string {
+  return JSON.stringify(value, (_, inner: unknown) =>
+    typeof inner === 'object' && inner !== null && !Array.isArray(inner)
+      ? Object.fromEntries(Object.entries(inner).sort(([a], [b]) => (a < b ? -1 : 1)))
+      : inner,
+  )
+}
