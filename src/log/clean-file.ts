@@ -50,8 +50,14 @@ export function cellsSql(file: CleanFile): string {
   )
 }
 
-/** SQL of the rows with canonical columns: src, line, time, turbine, then `channels`, NULL where this file lacks one. */
-export function rowsSql(file: CleanFile, source: number, channels: readonly string[]): string {
+/** SQL of the rows with canonical columns: src, line, time, turbine, then `channels`, NULL where this file lacks one; `withText`
+ * adds `text`, the cells with commas between. */
+export function rowsSql(
+  file: CleanFile,
+  source: number,
+  channels: readonly string[],
+  withText = false,
+): string {
   const list = channels.map((channel) => {
     const column = file.channels.find((one) => one.takenFor === channel)
     const name = quoteIdentifier(channel)
@@ -61,6 +67,10 @@ export function rowsSql(file: CleanFile, source: number, channels: readonly stri
     const value = valueSql(file, column)
     return `CASE WHEN ${value} BETWEEN ${min} AND ${max} THEN ${value} END AS ${name}`
   })
+  if (withText) {
+    const cells = Array.from({ length: file.fields }, (_, k) => `coalesce(c${k}, '')`)
+    list.push(`concat_ws(',', ${cells.join(', ')}) AS text`)
+  }
   const turbine = file.turbine < 0 ? quoteText(file.turbineName) : `trim(c${file.turbine})`
   return `SELECT ${[`${source} AS src`, 'line', 'time', `${turbine} AS turbine`, ...list].join(', ')} FROM ${cellsSql(file)}`
 }

@@ -1,8 +1,11 @@
 import { InputError } from '../errors.ts'
-import { splitFields } from './split-fields.ts'
+import { jsonFields, jsonKeys } from './json-line.ts'
+import { SAFE_DELIMITER, splitFields } from './split-fields.ts'
 
 /** How the lines of a delimited text are built, told from its beginning. */
 export interface Dialect {
+  /** `json`: every line is an object; then there is no header line and the delimiter is the one written to the clean file. */
+  readonly form: 'delimited' | 'json'
   readonly delimiter: string
   /** Names as in the header, quotes and marks taken off; unnamed columns have an empty name. */
   readonly header: readonly string[]
@@ -30,6 +33,12 @@ export function sniffDialect(name: string, sample: string, complete: boolean): D
   if (used.length === 0)
     throw new InputError('LOG_EMPTY', `${name}: expected a log, got nothing but blank lines`)
 
+  const json = sniffJson(
+    name,
+    used.map(({ text }) => text),
+    complete,
+  )
+  if (json) return json
   const body = used.filter(({ text }) => !text.startsWith('#'))
   const { delimiter, fields } = chooseDelimiter(
     body.length > 0 ? body.map(({ text }) => text) : [used[0]!.text],
@@ -42,6 +51,7 @@ export function sniffDialect(name: string, sample: string, complete: boolean): D
     if (row && row.length === header.names.length) rows.push(row.map((field) => field.trim()))
   }
   return {
+    form: 'delimited',
     delimiter,
     header: header.names,
     headerLine: header.line,
@@ -50,6 +60,51 @@ export function sniffDialect(name: string, sample: string, complete: boolean): D
     decimalComma: hasDecimalComma(rows, delimiter),
     rows,
   }
+}
+
+/** One JSON object per line: its keys are the header. */
+function sniffJson(name: string, lines: readonly string[], complete: boolean): Dialect | null {
+  const first = lines[0]!.trimStart()
+  if (first.startsWith('[') && /^\[\s*(\{|$)/.test(first)) {
+    throw new InputError(
+      'LOG_NO_HEADER',
+      `${name}: expected delimited text or one JSON object per line, got a JSON array`,
+    )
+  }
+  const keys = jsonKeys(lines)
+  if (!keys) {
+    if (!first.startsWith('{')) return null
+    const what =
+      complete || lines.length > 1
+        ? 'a line that is no whole object'
+        : 'an object that is longer than the beginning'
+    throw new InputError('LOG_NO_HEADER', `${name} line 1: expected one JSON object per line, got ${what}`)
+  }
+  const index = new Map(keys.map((key, i) => [key, i]))
+  return {
+    form: 'json',
+    delimiter: SAFE_DELIMITER,
+    header: keys,
+    headerLine: 0,
+    preambleLines: 0,
+    hasQuotes: true,
+    decimalComma: false,
+    rows: lines.slice(0, 2000).flatMap((line) => {
+      const object = jsonFields(line, index)
+      return object ? [object.fields] : []
+    }),
+  }
+}
+
+/** Splits a line as the dialect has it; null when it cannot be told apart. */
+export function lineFields(
+  dialect: Pick<Dialect, 'form' | 'delimiter'>,
+  keys: ReadonlyMap<string, number>,
+  line: string,
+): string[] | null {
+  return dialect.form === 'json'
+    ? (jsonFields(line, keys)?.fields ?? null)
+    : splitFields(line, dialect.delimiter)
 }
 
 /** The delimiter that gives most lines one and the same number of fields, two or more. */

@@ -177,6 +177,11 @@ function addWarnings(parts: Parameters<typeof buildReceipt>[0]): void {
   }
   const repaired = sum((scanner) => scanner.repairedLines)
   if (repaired > 0) warnings.push(`text: ${repaired} lines are no UTF-8 and were read as Windows-1252`)
+  const unknownKeys = sum((scanner) => scanner.unknownKeys)
+  if (unknownKeys > 0)
+    warnings.push(
+      `columns: ${unknownKeys} values have keys that the beginning of the log does not show; they are not used`,
+    )
   for (const { plan } of accounts) {
     if (plan.scan.turbine >= 0) continue
     const origin = reading.turbine === undefined ? 'the file name' : 'the request'

@@ -3,11 +3,11 @@ import { InputError } from '../errors.ts'
 import { mapColumns, type ColumnMap } from './column-map.ts'
 import { sniffEncoding, toUtf8, validUtf8 } from './clean-text.ts'
 import type { LogLimits, LogReading, LogSource } from './contract.ts'
-import { sniffDialect, type Dialect } from './dialect.ts'
+import { lineFields, sniffDialect, type Dialect } from './dialect.ts'
+import type { ReadableSource } from './parquet-source.ts'
 import type { ScanPlan } from './row-scanner.ts'
 import { dateClockTime, dayClockTime, stampTime, type RowTime } from './row-time.ts'
 import { sourceBytes } from './source-bytes.ts'
-import { splitFields } from './split-fields.ts'
 import { sniffStamps, type StampFormat } from './stamp-format.ts'
 import { dateReader } from './stamp-reader.ts'
 import { textLines } from './text-lines.ts'
@@ -16,7 +16,7 @@ const SAMPLE_BYTES = 256 * 1024
 
 /** Everything that the beginning of a source decides. */
 export interface SourcePlan {
-  readonly source: LogSource
+  readonly source: ReadableSource
   readonly firstBytes: Uint8Array
   readonly dialect: Dialect
   readonly map: ColumnMap
@@ -35,7 +35,7 @@ interface SampledSource extends LogSource {
  * @throws InputError LOG_EMPTY, LOG_NO_HEADER, LOG_TOO_MANY_COLUMNS, LOG_COLUMN_MAP, LOG_COLUMNS_MISSING, LOG_TIME, LOG_CORRUPT
  */
 export async function planSource(
-  source: LogSource,
+  source: ReadableSource,
   reading: LogReading,
   limits: LogLimits,
 ): Promise<SourcePlan> {
@@ -61,6 +61,7 @@ export async function planSource(
     scan: {
       name: source.name,
       delimiter: dialect.delimiter,
+      jsonKeys: dialect.form === 'json' ? new Map(dialect.header.map((key, i) => [key, i])) : null,
       fields: dialect.header.length,
       headerLine: dialect.headerLine,
       safe: dialect.hasQuotes,
@@ -145,13 +146,14 @@ async function visitCells(
   const { dialect, limits, encoding } = source
   const { chunks } = await sourceBytes(source, limits)
   const position = { lines: 0 }
+  const keys = new Map(dialect.header.map((key, i) => [key, i]))
   for await (const slab of textLines(source.name, toUtf8(chunks, encoding), limits.maxLineBytes, position)) {
     const lines = slab.toString('utf8').split('\n')
     lines.pop()
     for (const line of lines) {
       position.lines++
       if (position.lines <= dialect.headerLine) continue
-      const cell = splitFields(line, dialect.delimiter)?.[column]?.trim()
+      const cell = lineFields(dialect, keys, line)?.[column]?.trim()
       if (cell !== undefined && cell !== '') visit(cell)
     }
   }

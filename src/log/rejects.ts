@@ -6,6 +6,7 @@ export type RejectReason =
   | 'field-count'
   | 'quote'
   | 'not-text'
+  | 'json'
   | 'no-time'
   | 'bad-time'
   | 'spring-gap'

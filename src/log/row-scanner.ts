@@ -5,12 +5,10 @@ import type { LogLimits } from './contract.ts'
 import type { RejectReason, Rejects } from './rejects.ts'
 import { instantOf, newTrack, track, type TurbineTrack } from './row-clock.ts'
 import type { RowTime } from './row-time.ts'
-import { splitFields } from './split-fields.ts'
+import { SAFE_DELIMITER, splitFields } from './split-fields.ts'
+import { jsonFields } from './json-line.ts'
 import { lineTooLong, type LinePosition } from './text-lines.ts'
 import type { ZoneTable } from './zone-table.ts'
-
-/** Stands between fields of the clean file when the log uses quotes: no text may contain it. */
-export const SAFE_DELIMITER = '\u001f'
 
 const [LF, SPACE, QUOTE] = [10, 32, 34]
 const MOST_TURBINES = 20_000
@@ -36,6 +34,8 @@ export class NeedsSafeDelimiter extends Error {}
 export interface ScanPlan {
   readonly name: string
   readonly delimiter: string
+  /** Keys of the objects when every line is one; null for delimited lines. */
+  readonly jsonKeys: ReadonlyMap<string, number> | null
   readonly fields: number
   readonly headerLine: number
   readonly safe: boolean
@@ -60,6 +60,8 @@ export class RowScanner implements LinePosition {
   repairedLines = 0
   unzonedRows = 0
   repeatedHourRows = 0
+  /** Keys of JSON objects that the beginning of the log did not show. */
+  unknownKeys = 0
   /** Empty cells per field among rows passed on. */
   readonly emptyCells: Float64Array
   readonly outDelimiter: string
@@ -146,6 +148,7 @@ export class RowScanner implements LinePosition {
       return
     }
     if (control) this.reject(bytes, start, end, 'not-text')
+    else if (this.plan.jsonKeys) this.jsonLine(bytes, start, end, this.plan.jsonKeys)
     else if (quotes) this.quotedLine(bytes, start, end)
     else if (n !== this.plan.fields) this.reject(bytes, start, end, 'field-count')
     else this.row(bytes, start, end, this.inByte, bytes, start, end)
@@ -162,14 +165,27 @@ export class RowScanner implements LinePosition {
       this.reject(bytes, start, end, 'field-count')
       return
     }
-    const { outDelimiter, ends } = this
-    if (!this.plan.safe && fields.some((field) => field.includes(outDelimiter)))
+    if (!this.plan.safe && fields.some((field) => field.includes(this.outDelimiter)))
       throw new NeedsSafeDelimiter()
-    const clean = Buffer.from(fields.join(outDelimiter))
+    this.rewritten(fields, bytes, start, end)
+  }
+
+  private jsonLine(bytes: Buffer, start: number, end: number, keys: ReadonlyMap<string, number>): void {
+    const object = jsonFields(bytes.toString('utf8', start, end), keys)
+    if (!object) {
+      this.reject(bytes, start, end, 'json')
+      return
+    }
+    this.unknownKeys += object.unknown
+    this.rewritten(object.fields, bytes, start, end)
+  }
+
+  private rewritten(fields: readonly string[], bytes: Buffer, start: number, end: number): void {
+    const clean = Buffer.from(fields.join(this.outDelimiter))
     let at = -1
     fields.forEach((field, i) => {
       at += Buffer.byteLength(field) + 1
-      ends[i] = at
+      this.ends[i] = at
     })
     this.row(clean, 0, clean.length, this.outByte, bytes, start, end)
   }

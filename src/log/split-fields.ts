@@ -1,3 +1,6 @@
+/** Stands between fields of a clean file when the log uses quotes: no text may contain it. */
+export const SAFE_DELIMITER = '\u001f'
+
 /**
  * Fields of one line with quotes taken off, as RFC 4180 has them.
  *

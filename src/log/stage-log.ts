@@ -7,6 +7,7 @@ import { sniffEncoding, toUtf8 } from './clean-text.ts'
 import type { LogLimits, LogParts, LogReading, LogSource, StagedLog } from './contract.ts'
 import type { MappedColumn } from './column-map.ts'
 import { buildReceipt, refuseUnfit, type SourceAccount } from './log-account.ts'
+import { readableSource } from './parquet-source.ts'
 import { planSource, type SourcePlan } from './plan-source.ts'
 import { Rejects } from './rejects.ts'
 import { NeedsSafeDelimiter, RowScanner, type PostState } from './row-scanner.ts'
@@ -31,10 +32,12 @@ export async function stageLog(
 ): Promise<StagedLog> {
   if (sources.length === 0) throw new InputError('LOG_EMPTY', 'sources: expected at least one log, got none')
   await mkdir(parts.folder, { recursive: true })
-  const plans: SourcePlan[] = []
-  for (const source of sources) plans.push(await planSource(source, reading, parts.limits))
   const working: string[] = []
   try {
+    const plans: SourcePlan[] = []
+    for (const [i, source] of sources.entries()) {
+      plans.push(await planSource(await readableSource(source, i, parts, working), reading, parts.limits))
+    }
     for (;;) {
       const attempt = await scanAll(plans, reading, parts, working)
       if (attempt !== null) return await parts.scans.withConnection((c) => stage(c, attempt, reading, parts))
@@ -108,7 +111,7 @@ async function scanSource(
   } finally {
     await file.close()
   }
-  return bytes.sha256()
+  return plan.source.sha256 ?? bytes.sha256()
 }
 
 async function stage(

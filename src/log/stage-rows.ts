@@ -7,7 +7,7 @@ import {
   writeParquet,
   type Connection,
 } from '../duck/index.ts'
-import { cellCountsSql, cellsSql, rowsSql, type CleanFile } from './clean-file.ts'
+import { cellCountsSql, rowsSql, type CleanFile } from './clean-file.ts'
 import type { Rejects } from './rejects.ts'
 import { commonestStep, flushSteps } from './row-clock.ts'
 import type { PostState } from './row-scanner.ts'
@@ -108,10 +108,8 @@ async function rejectEmpty(
   for (const [i, file] of files.entries()) {
     const own = channels.filter((channel) => file.channels.some((column) => column.takenFor === channel))
     const isEmpty = own.map((channel) => `${quoteIdentifier(channel)} IS NULL`).join(' AND ')
-    const cells = Array.from({ length: file.fields }, (_, k) => `coalesce(c${k}, '')`)
-    // The text as sent, but for quotes, which the clean file does not keep.
-    const text = `concat_ws(',', ${cells.join(', ')})`
-    const source = `(SELECT line, text FROM (${rowsSql(file, i, own)}) JOIN (SELECT line, ${text} AS text FROM ${cellsSql(file)}) USING (line) WHERE ${isEmpty})`
+    // The text as sent, but for quotes and delimiters, which the clean file does not keep.
+    const source = `(SELECT line, text FROM (${rowsSql(file, i, own, true)}) WHERE ${isEmpty})`
     for await (const chunk of streamColumns(
       connection,
       source,
