@@ -2,6 +2,7 @@ import { InputError } from '../errors.ts'
 import { NUMBER_CHANNELS, TEXT_CHANNELS, type BaseChannel, type ColumnSource } from '../sheet/index.ts'
 import { canonicalName, readName, ROW_KEYS, type NamedColumn } from './column-names.ts'
 import { findUnit, requireUnit, type Unit } from './units.ts'
+import { isVaneByValues } from './vane-by-values.ts'
 
 /** One column of the log and what became of it. */
 export interface MappedColumn {
@@ -74,6 +75,7 @@ export function mapColumns(
     takenBy.set(key, claim)
     why.set(claim.index, claim.why)
   }
+  takeVaneByValues(takenBy, given, rows, why)
   const time = findTime(name, header, takenBy, rows)
   const columns = header.map((text, index): MappedColumn => {
     const claim = [...takenBy.values()].find((one) => one.index === index)
@@ -135,6 +137,26 @@ function readExplicit(
     })
   }
   return claims
+}
+
+/** Some logs call their vane a wind direction: the values tell. What the caller named stays as named. */
+function takeVaneByValues(
+  takenBy: Map<string, Claim>,
+  given: readonly Claim[],
+  rows: readonly (readonly string[])[],
+  why: Map<number, string>,
+): void {
+  const claim = takenBy.get('wind_direction')
+  if (!claim || takenBy.has('vane') || given.includes(claim)) return
+  const cells = (column: number) => rows.map((row) => row[column] ?? '')
+  const power = takenBy.get('power')
+  if (!isVaneByValues(cells(claim.index), power ? cells(power.index) : null)) return
+  takenBy.delete('wind_direction')
+  takenBy.set('vane', { ...claim, target: 'vane' })
+  why.set(
+    claim.index,
+    'a direction by name, taken for the vane because it is signed and stays near zero while producing',
+  )
 }
 
 function findTime(

@@ -7,3 +7,4 @@ export {
   type StagedLog,
 } from './contract.ts'
 export { stageLog } from './stage-log.ts'
+export { describeLog, type LogDescription } from './describe-log.ts'

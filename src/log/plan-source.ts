@@ -72,7 +72,7 @@ export async function planSource(
   }
 }
 
-async function firstBytes(
+export async function firstBytes(
   source: LogSource,
   limits: LogLimits,
 ): Promise<{ bytes: Buffer; complete: boolean }> {
