@@ -55,5 +55,5 @@ function csv(rows: readonly Record<string, Cell>[], columns: readonly string[]):
   const names = Object.keys(first)
   const known = (cell: Cell | undefined) => (cell === undefined || Number.isNaN(cell) ? null : cell)
   const cells = Object.fromEntries(names.map((name) => [name, rows.map((row) => known(row[name]))]))
-  return `${table(cells, names).toCSV()}\n`
+  return table(cells, names).toCSV()
 }
