@@ -8,18 +8,23 @@ export function mayEnter(offset: StaticOffset, verdict: TurbineSheet['verdict'])
   return verdict === 'offset' && offset.signChecked && offset.vaneLogged !== 'unknown'
 }
 
-/** What a reader should do next, most important first. */
+/** What to look at before anybody climbs. */
+export const DESK_CHECK =
+  'Before a climb: read the vane offset parameter, compare it with the record of the last change, and ask for a photograph of the vane’s mark.'
+
+/** What a reader should do next, most important first; the first line stands in tables. */
 export function adviceFor(verdict: Verdict, offset: StaticOffset): string[] {
   const standing = offset.standingMisalignmentDeg
   switch (verdict.verdict) {
     case 'offset': {
       if (standing === null) return []
-      const lines = [
-        'Before a climb: read the vane offset parameter, compare it with the record of the last change, and ask for a photograph of the vane’s mark.',
+      if (!mayEnter(offset, 'offset')) return [...whatIsMissing(offset, standing), DESK_CHECK]
+      const change = `${standing < 0 ? '-' : '+'}${Math.abs(standing).toFixed(1)}`
+      return [
+        `Confirm by measurement, then add ${change} degrees to the vane offset.`,
+        DESK_CHECK,
+        correctionInWords(standing),
       ]
-      if (mayEnter(offset, 'offset')) lines.push(correctionInWords(standing))
-      else lines.push(...whatIsMissing(offset, standing))
-      return lines
     }
     case 'aligned':
       return ['Nothing to change.']
@@ -45,10 +50,10 @@ export function correctionInWords(standingDeg: number): string {
 function whatIsMissing(offset: StaticOffset, standingDeg: number): string[] {
   const lines: string[] = []
   if (!offset.signChecked)
-    lines.push('No number to enter yet: the sign of the vane is not checked (site file, vane.sign).')
+    lines.push('Check the sign of the vane (site file, vane.sign): no number to enter yet.')
   if (offset.vaneLogged === 'unknown') {
     lines.push(
-      'No number to enter yet: it is not known whether the logged vane already contains the correction (site file, vane.logged).',
+      'Find out whether the logged vane already contains the correction (site file, vane.logged): no number to enter yet.',
     )
   }
   const side = standingDeg < 0 ? 'counter-clockwise' : 'clockwise'

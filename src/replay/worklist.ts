@@ -1,5 +1,5 @@
 import type { TurbineSheet, WorklistEntry } from '../sheet/index.ts'
-import { mayEnter } from './advice.ts'
+import { DESK_CHECK, mayEnter } from './advice.ts'
 import { CAUTIONS } from './cautions.ts'
 
 /** Turbines that stand off the wind, the costliest first. A turbine that stands right is not on it. */
@@ -15,7 +15,7 @@ export function worklistOf(turbines: readonly TurbineSheet[]): WorklistEntry[] {
       expectedAnnualMwh: turbine.energyLoss.static.annualMwh,
       interval95Mwh: turbine.energyLoss.static.annualInterval95Mwh,
       why: turbine.reason,
-      checkFirst: turbine.advice[0] ?? '',
+      checkFirst: DESK_CHECK,
       cautions: [...CAUTIONS],
     }))
     .sort(

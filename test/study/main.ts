@@ -1,0 +1,9 @@
+import { honestAnemometers } from './honest-anemometers.study.ts'
+
+/** Prints the tables of the studies: `npm run study`, or `npm run study -- honest 40`. */
+const [name = 'all', count = '24'] = process.argv.slice(2)
+const print = (text: string): void => {
+  process.stdout.write(`${text}\n`)
+}
+if (!/^\d+$/.test(count)) throw new Error(`farms: expected a whole number, got "${count}"`)
+if (name === 'all' || name === 'honest') honestAnemometers(Number(count), print)

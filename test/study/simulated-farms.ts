@@ -1,0 +1,74 @@
+import { createHash } from 'node:crypto'
+import { existsSync, mkdirSync, readFileSync, renameSync, writeFileSync } from 'node:fs'
+import { join } from 'node:path'
+import v8 from 'node:v8'
+import { buildFrame, type Frame } from '../../src/frame/index.ts'
+import { simulateFarm, type FarmScenario, type SimulatedFarm } from '../../src/simulate/index.ts'
+import type { ScoringSettings } from '../../src/sheet/index.ts'
+
+const CACHE = join(import.meta.dirname, '..', '..', '.cache', 'study')
+
+/** Settings of a study: the defaults of config.ts, the response taken as known, fewer resamples for speed. */
+export const STUDY_SETTINGS: ScoringSettings = {
+  exponent: 3,
+  actionThresholdDeg: 3,
+  resamples: 500,
+  seed: 1,
+  assumedResponsePctPerDeg: null,
+  responseSpreadPctPerDeg: 0.15,
+  windMinMs: 5,
+  vaneMaxDeg: 15,
+  yawMoveMaxDeg: 5,
+  fastDirectionDeg: 10,
+  fastSpeedMs: 2,
+  minimumRows: 150,
+  minimumDays: 5,
+}
+
+/** A simulated farm, from the cache on disk when the same scenario was made before by the same simulator. */
+export function cachedFarm(scenario: FarmScenario): SimulatedFarm {
+  const key = createHash('sha256')
+    .update(simulateFarm.toString())
+    .update(JSON.stringify(scenario))
+    .digest('hex')
+    .slice(0, 24)
+  const file = join(CACHE, `${key}.bin`)
+  if (existsSync(file)) return v8.deserialize(readFileSync(file)) as SimulatedFarm
+  const farm = simulateFarm(scenario)
+  mkdirSync(CACHE, { recursive: true })
+  writeFileSync(`${file}.part`, v8.serialize(farm))
+  renameSync(`${file}.part`, file)
+  return farm
+}
+
+/** The frame as the program would build it from the farm's log and site file. */
+export function frameOf(farm: SimulatedFarm, settings: ScoringSettings): Frame {
+  const { scenario } = farm
+  return buildFrame(
+    farm.turbines.map((turbine) => ({
+      turbine: turbine.turbine,
+      time: turbine.timeMs,
+      numbers: turbine.columns,
+      texts: { status: turbine.status },
+    })),
+    {
+      settings,
+      intervalS: scenario.rateS,
+      site: {
+        timezone: scenario.timezone,
+        runningStatus: ['run', 'limited'],
+        turbines: farm.turbines.map((turbine) => ({
+          turbine: turbine.turbine,
+          model: scenario.model,
+          ratedPowerKw: scenario.ratedPowerKw,
+          rotorDiameterM: scenario.rotorDiameterM,
+          hubHeightM: scenario.hubHeightM,
+          altitudeM: scenario.altitudeM,
+          eastingM: turbine.truth.eastingM,
+          northingM: turbine.truth.northingM,
+          vane: { logged: scenario.vaneLogged, sign: 1 as const },
+        })),
+      },
+    },
+  )
+}
