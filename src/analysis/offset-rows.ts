@@ -1,4 +1,4 @@
-import { RAD_PER_DEG } from '../kernel/angle/index.ts'
+import { circularMean, RAD_PER_DEG, wrap180 } from '../kernel/angle/index.ts'
 import { powerAt, steepnessAt } from '../kernel/wind/index.ts'
 import type { TurbineFrame } from '../frame/index.ts'
 
@@ -16,7 +16,9 @@ export interface OffsetRows {
   /** Band of whole m/s, 0 = lowest. */
   readonly band: Int32Array
   readonly bands: number
-  /** Vane, radians. */
+  /** Mean vane of the rows, degrees. */
+  readonly centreDeg: number
+  /** Vane from that mean, radians: a vane may read anything, 180 too, when the rotor faces the wind. */
   readonly vane: Float64Array
   /** d ln P / d ln u of the measured curve at the row's wind speed. */
   readonly steepness: Float64Array
@@ -31,6 +33,7 @@ export function offsetRows(frame: TurbineFrame, days: number): OffsetRows {
   const n = used.length
   const intervalMs = frame.intervalS * 1000
   const lowest = Math.floor(frame.windMinMs)
+  const centreDeg = circularMean(used.map((i) => frame.vane[i]!)).direction
   const rows = {
     day: new Int32Array(n),
     position: new Int32Array(n),
@@ -47,14 +50,14 @@ export function offsetRows(frame: TurbineFrame, days: number): OffsetRows {
     rows.day[k] = frame.day[i]!
     rows.position[k] = Math.round((frame.time[i]! - frame.time[0]!) / intervalMs)
     rows.band[k] = Math.floor(speed) - lowest
-    rows.vane[k] = frame.vane[i]! * RAD_PER_DEG
+    rows.vane[k] = wrap180(frame.vane[i]! - centreDeg) * RAD_PER_DEG
     rows.steepness[k] = steepnessAt(frame.curve, speed)
     rows.logRatio[k] = Math.log(frame.power[i]! / powerAt(frame.curve, speed))
     bands = Math.max(bands, rows.band[k]! + 1)
   }
   const tercile = turbulenceTerciles(frame, used, rows.band, bands)
   for (let k = 0; k < n; k++) rows.cell[k] = (rows.band[k]! * 3 + tercile[k]!) * 2 + frame.night[used[k]!]!
-  return { ...rows, days, bands, cells: bands * 6, chain: rows.day }
+  return { ...rows, centreDeg, days, bands, cells: bands * 6, chain: rows.day }
 }
 
 /** 0, 1, 2 by turbulence inside each band; 0 where no SD of the wind speed is logged at all, 1 where a single value is missing. */

@@ -78,7 +78,7 @@ export function staticOffset(
       ? (NORMAL_95 * settings.responseSpreadPctPerDeg * Math.abs(fit.perResponse) * DEG_PER_RAD) / 100
       : 0
 
-  const offsetDeg = fit.offset * DEG_PER_RAD
+  const offsetDeg = wrap180(fit.offset * DEG_PER_RAD - rows.centreDeg)
   const standingDeg = wrap180(offsetDeg + vane.meanDeg)
   const dilution = DILUTION_SHARE * Math.abs(standingDeg)
   const half = Math.hypot(statistical.offset, response, dilution)
@@ -88,7 +88,7 @@ export function staticOffset(
       exponent === settings.exponent
         ? fit
         : fitOffset(rows, { exponent, responsePerDeg }, { offset: fit.offset, noise: fit.noise })
-    const shownDeg = shown.converged ? shown.offset * DEG_PER_RAD : NaN
+    const shownDeg = shown.converged ? wrap180(shown.offset * DEG_PER_RAD - rows.centreDeg) : NaN
     return { exponent, offsetDeg: shownDeg, standingDeg: wrap180(shownDeg + vane.meanDeg) }
   })
   const further = furtherDays(

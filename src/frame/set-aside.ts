@@ -1,4 +1,4 @@
-import { wrap180 } from '../kernel/angle/index.ts'
+import { circularMedian, wrap180 } from '../kernel/angle/index.ts'
 import { medianOf } from '../kernel/stats/index.ts'
 import { SET_ASIDE_REASONS, type ScoringSettings, type SetAsideReason } from '../sheet/index.ts'
 import type { ReasonCounts } from './frame.ts'
@@ -119,7 +119,7 @@ export function setAsideByRange(
     if (!(speed >= range.minMs && speed <= range.maxMs && range.isCovered(speed)))
       reason[i] = REASON_CODE['outside-wind-range']
   }
-  const centre = medianOf(vane.filter((_, i) => reason[i] === 0))
+  const centre = circularMedian(vane.filter((_, i) => reason[i] === 0))
   for (let i = 0; i < reason.length; i++) {
     if (reason[i] === 0 && !(Math.abs(wrap180(vane[i]! - centre)) <= range.vaneMaxDeg)) {
       reason[i] = REASON_CODE['vane-out-of-range']
