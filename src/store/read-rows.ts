@@ -1,4 +1,11 @@
-import { quoteIdentifier, quoteText, readColumns, type ColumnKind, type Scans } from '../duck/index.ts'
+import {
+  quoteIdentifier,
+  quoteText,
+  readColumns,
+  type ColumnKind,
+  type Connection,
+  type Scans,
+} from '../duck/index.ts'
 
 /** Rows of one turbine, sorted by time, as columns. */
 export interface TurbineRows {
@@ -17,27 +24,29 @@ export interface TurbineRows {
  * @param scans  may read the file's folder.
  */
 export async function readRows(scans: Scans, path: string): Promise<TurbineRows[]> {
-  return scans.withConnection(async (connection) => {
-    const source = `read_parquet(${quoteText(path)})`
-    const described = await connection.records(`DESCRIBE SELECT * FROM ${source}`)
-    const kinds: Record<string, ColumnKind> = {}
-    for (const column of described) {
-      kinds[String(column['column_name'])] = column['column_type'] === 'VARCHAR' ? 'text' : 'number'
-    }
-    const orderBy = `${quoteIdentifier('turbine')} COLLATE "C", ${quoteIdentifier('time')}`
-    const read = await readColumns(connection, source, kinds, { orderBy })
-    const columns: Record<string, Float64Array | (string | null)[]> = read.columns
-    const rows = read.rows
-    const names = columns['turbine'] as (string | null)[]
-    const turbines: TurbineRows[] = []
-    for (let from = 0; from < rows;) {
-      let to = from + 1
-      while (to < rows && names[to] === names[from]) to++
-      turbines.push(slice(columns, kinds, { turbine: names[from] ?? '', from, to }))
-      from = to
-    }
-    return turbines
-  })
+  return scans.withConnection((connection) => rowsOf(connection, `read_parquet(${quoteText(path)})`))
+}
+
+/** The same from any source of such rows: SQL after FROM. */
+export async function rowsOf(connection: Connection, source: string): Promise<TurbineRows[]> {
+  const described = await connection.records(`DESCRIBE SELECT * FROM ${source}`)
+  const kinds: Record<string, ColumnKind> = {}
+  for (const column of described) {
+    kinds[String(column['column_name'])] = column['column_type'] === 'VARCHAR' ? 'text' : 'number'
+  }
+  const orderBy = `${quoteIdentifier('turbine')} COLLATE "C", ${quoteIdentifier('time')}`
+  const read = await readColumns(connection, source, kinds, { orderBy })
+  const columns: Record<string, Float64Array | (string | null)[]> = read.columns
+  const rows = read.rows
+  const names = columns['turbine'] as (string | null)[]
+  const turbines: TurbineRows[] = []
+  for (let from = 0; from < rows;) {
+    let to = from + 1
+    while (to < rows && names[to] === names[from]) to++
+    turbines.push(slice(columns, kinds, { turbine: names[from] ?? '', from, to }))
+    from = to
+  }
+  return turbines
 }
 
 function slice(

@@ -75,11 +75,11 @@ test('posts at the same time do not get into each other', async () => {
   const { intake, store, file } = await farm()
   const posts = await Promise.all(
     Array.from({ length: 6 }, async (_, i) => {
-      const [one, two] = [2 * i, 2 * i + 1].map((k) => new Date(MARCH + k * 600_000).toISOString())
+      const stamp = (k: number) => new Date(MARCH + k * 600_000).toISOString()
       const log = await file(`part-${i}.csv`, [
         'time,turbine,power',
-        `${one},Q01,${i}`,
-        `${two},Q01,${i}`,
+        `${stamp(2 * i)},Q01,${i}`,
+        `${stamp(2 * i + 1)},Q01,${i}`,
         `never,Q01,${i}`,
       ])
       return intake.post('quern-hill', [log], {})

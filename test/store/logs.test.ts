@@ -1,11 +1,11 @@
 import { existsSync } from 'node:fs'
-import { readFile, readdir, writeFile } from 'node:fs/promises'
+import { readFile, readdir, rm, statfs, writeFile } from 'node:fs/promises'
 import { join } from 'node:path'
 import fc from 'fast-check'
 import { expect, test } from 'vitest'
-import type { Store } from '../../src/store/index.ts'
-import { makeFolder, openTestStore } from './folder.ts'
-import { addRows, readRows, type LogRow } from './logs.ts'
+import { openStore, type Store } from '../../src/store/index.ts'
+import { counter, makeFolder, makeSmallDisk, openTestStore } from './folder.ts'
+import { addRows, readRows, receiptOf, stageRows, type LogRow } from './logs.ts'
 
 const MARCH = Date.UTC(2026, 2, 1)
 const APRIL = Date.UTC(2026, 3, 1)
@@ -218,6 +218,10 @@ test('days count every time once, however often it was posted', async () => {
     { dayMs: MARCH, rows: 2, firstMs: MARCH, lastMs: MARCH + STEP },
     { dayMs: MARCH + day, rows: 1, firstMs: MARCH + day, lastMs: MARCH + day },
   ])
+  const rows = await store.logs.rows('quern-hill', { fromMs: MARCH, turbines: ['Q01'] })
+  expect(rows.map(({ turbine, time, numbers }) => [turbine, [...time], [...numbers['power']!]])).toEqual([
+    ['Q01', [MARCH, MARCH + STEP, MARCH + day], [1, 2, 2]],
+  ])
   expect(await store.logs.days('quern-hill', 'Q09')).toEqual([])
   expect(await store.logs.extents('quern-hill')).toEqual([
     { turbine: 'Q01', firstMs: MARCH - 1, lastMs: MARCH + day },
@@ -295,6 +299,53 @@ test('any sequence of posts, deletions and merges answers as a plain list of bat
     }),
     { numRuns: 25 },
   )
+})
+
+test('on a full disk a log is refused whole, what was stored is read, and posts go on when there is room again', async (context) => {
+  const folder = await makeSmallDisk(16)
+  if (!folder) {
+    context.skip('this user may not mount a small disk')
+    return
+  }
+  const store = await openStore({ folder, clock: () => 1, newId: counter(), keepFreeBytes: 0 })
+  const ballast = join(folder, 'ballast')
+  try {
+    await store.sites.put('quern-hill', { turbines: [{ turbine: 'Q01' }] })
+    // Numbers without a pattern, so that they do not compress.
+    const log = (n: number): LogRow[] =>
+      Array.from(
+        { length: 2_000 },
+        (_, i) => ['Q01', MARCH + n * 1e8 + i * 1000, (i * 2654435761) % 4294967291] as const,
+      )
+    await addRows(store, 'quern-hill', log(0))
+    const before = await readdir(join(folder, 'segments'))
+    const staged = await stageRows(store, log(1))
+    const { bavail, bsize } = await statfs(folder)
+    await writeFile(ballast, Buffer.alloc(bavail * bsize - 8192))
+    const post = {
+      site: 'quern-hill',
+      path: staged,
+      rejectedPath: null,
+      receipt: receiptOf(2_000),
+      reading: {},
+    }
+    await expect(store.logs.add({ ...post, contentKey: 'b' })).rejects.toThrow(
+      expect.objectContaining({ code: 'STORAGE_FULL' }) as Error,
+    )
+    const [stored] = await store.logs.rows('quern-hill')
+    expect(Array.from(stored!.numbers['power']!)).toEqual(log(0).map(([, , power]) => power))
+    await expect(store.logs.readWindow('quern-hill')).rejects.toThrow(
+      expect.objectContaining({ code: 'STORAGE_FULL' }) as Error,
+    )
+    await store.ready()
+    await rm(ballast)
+    expect(await readdir(join(folder, 'segments'))).toEqual(before)
+    expect((await store.logs.add({ ...post, contentKey: 'b' })).isNew).toBe(true)
+    expect(await readRows(store, 'quern-hill')).toEqual([...log(0), ...log(1)])
+    expect(await store.logs.verify()).toEqual([])
+  } finally {
+    await store.close()
+  }
 })
 
 function newIds(prefix: string): () => string {

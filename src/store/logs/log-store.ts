@@ -7,6 +7,7 @@ import type { CatalogueDriver } from '../catalogue/driver.ts'
 import { moveDurably, removeDurably } from '../durable-file.ts'
 import { checkId } from '../ids.ts'
 import { requireSite } from '../sites.ts'
+import { rowsOf, type TurbineRows } from '../read-rows.ts'
 import { asStorageFull, type Space } from '../space.ts'
 import {
   deleteBatch,
@@ -83,6 +84,12 @@ export interface LogStore {
     site: string,
     window?: LogWindow & { folder?: string },
   ): Promise<{ path: string | null; rows: number; channels: string[] }>
+  /**
+   * The rows that count in a window, in memory: one entry per turbine, byte order of their names. Writes no file, so it
+   * answers on a full disk as long as the rows fit into the memory of scans.
+   * @throws InputError SITE_NOT_FOUND
+   */
+  rows(site: string, window?: LogWindow): Promise<TurbineRows[]>
   /** Days (UTC) on which a turbine has rows. A turbine without rows has none. @throws InputError SITE_NOT_FOUND */
   days(site: string, turbine: string, window?: { fromMs?: number; toMs?: number }): Promise<DayRows[]>
   /** First and last time of every turbine that has rows. */
@@ -225,6 +232,15 @@ export function logStore(driver: CatalogueDriver, options: LogStoreParts): LogSt
           await rm(path, { force: true })
           throw asStorageFull(error)
         }
+      }),
+    rows: (site, window = {}) =>
+      files.reading(async () => {
+        await requireSite(driver, site)
+        const { source } = await winningRows(driver, files, site, window)
+        if (source === undefined) return []
+        return scans.withConnection((connection) =>
+          rowsOf(connection, `(SELECT * EXCLUDE (batch_seq) FROM ${source})`),
+        )
       }),
     days: (site, turbine, window = {}) =>
       files.reading(async () => {
