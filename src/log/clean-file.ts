@@ -1,6 +1,7 @@
 import { quoteIdentifier, quoteText } from '../duck/index.ts'
 import { NUMBER_CHANNELS, TEXT_CHANNELS, type BaseChannel } from '../sheet/index.ts'
-import type { MappedColumn } from './column-map.ts'
+import type { MappedColumn } from './mapped-column.ts'
+import { seriesCellsSql, type SeriesShape } from './series-shape.ts'
 import { convertSql } from './units.ts'
 
 /** A file of clean lines (line, time, fields as sent) and what its columns are. */
@@ -14,6 +15,10 @@ export interface CleanFile {
   readonly turbine: number
   readonly turbineName: string
   readonly channels: readonly MappedColumn[]
+  /** Set when a line is not one row: then `turbine`, `fields` and `channels` speak of the rows made of the lines. */
+  readonly shape: SeriesShape | null
+  /** Fields of a line. */
+  readonly lineFields: number
 }
 
 /** Words that stand for an empty cell, in lower case. */
@@ -42,12 +47,12 @@ const isText = (channel: string) => (TEXT_CHANNELS as readonly string[]).include
 /** SQL of the file with all cells as text: line, time, c0, c1, ... Nothing is detected, nothing is skipped. */
 export function cellsSql(file: CleanFile): string {
   const columns = ["'line': 'BIGINT'", "'time': 'BIGINT'"]
-  for (let i = 0; i < file.fields; i++) columns.push(`'c${i}': 'VARCHAR'`)
-  return (
+  for (let i = 0; i < file.lineFields; i++) columns.push(`'c${i}': 'VARCHAR'`)
+  const lines =
     `read_csv(${quoteText(file.path)}, auto_detect = false, header = false, delim = ${quoteText(file.delimiter)}, ` +
     `quote = '', escape = '', comment = '', new_line = '\\n', nullstr = '', strict_mode = true, ` +
     `max_line_size = ${file.maxLineBytes + 128}, columns = {${columns.join(', ')}})`
-  )
+  return file.shape ? seriesCellsSql(file.shape, lines) : lines
 }
 
 /** SQL of the rows with canonical columns: src, line, time, turbine, then `channels`, NULL where this file lacks one; `withText`

@@ -1,24 +1,11 @@
 import { InputError } from '../errors.ts'
 import { NUMBER_CHANNELS, TEXT_CHANNELS, type BaseChannel, type ColumnSource } from '../sheet/index.ts'
 import { canonicalName, readName, ROW_KEYS, type NamedColumn } from './column-names.ts'
-import { findUnit, requireUnit, type Unit } from './units.ts'
+import type { MappedColumn } from './mapped-column.ts'
+import { findTagColumns, findWideColumns } from './series-names.ts'
+import { wideSeries, type Series } from './series-shape.ts'
+import { findUnit, requireUnit } from './units.ts'
 import { isVaneByValues } from './vane-by-values.ts'
-
-/** One column of the log and what became of it. */
-export interface MappedColumn {
-  readonly name: string
-  /** Position in a line, 0 = first. */
-  readonly index: number
-  /** Canonical channel with its suffix, or a key of the row; null = not used. */
-  readonly takenFor: string | null
-  /** How the cells become canonical numbers; null for text and keys. */
-  readonly unit: Unit | null
-  /** The unit as stated or assumed, for the receipt. */
-  readonly unitText: string | null
-  /** Whether header or map state the unit. */
-  readonly unitStated: boolean
-  readonly why: string
-}
 
 export interface ColumnMap {
   readonly columns: readonly MappedColumn[]
@@ -31,6 +18,9 @@ export interface ColumnMap {
   readonly turbine: number
   /** Channels to be staged, in canonical order. */
   readonly channels: readonly MappedColumn[]
+  /** Set when a line is not one row; `tags` while the signals of a log of single values are still to be listed. */
+  readonly series?: Series
+  readonly tags?: { readonly tag: number; readonly value: number }
 }
 
 /** A proposal to take a column for something. */
@@ -60,9 +50,17 @@ export function mapColumns(
     takenBy.set(claim.target + suffix(claim.statistic), claim)
     why.set(claim.index, claim.why)
   }
+  const wide = given.some((claim) => claim.target === 'turbine' || claim.target in NUMBER_CHANNELS)
+    ? null
+    : findWideColumns(header)
+  const tags = given.some((claim) => claim.target in NUMBER_CHANNELS) ? null : findTagColumns(header)
   const claims = header
     .map((text, index) => ({ index, named: text === '' ? undefined : readName(text) }))
-    .filter(({ index }) => !given.some((claim) => claim.index === index))
+    .filter(({ index, named }) => {
+      // Beside wide columns or single values only the keys of a row are looked for.
+      if ((wide ?? tags) && named && !isRowKey(named.target)) return false
+      return !given.some((claim) => claim.index === index)
+    })
     .flatMap(({ index, named }) => (named ? [{ ...named, index }] : []))
     .sort((a, b) => b.rank - a.rank || a.index - b.index)
   for (const claim of claims) {
@@ -86,10 +84,19 @@ export function mapColumns(
     }
     return describe(text, claim, why.get(index) ?? claim.why)
   })
+  if (wide) {
+    const series = wideSeries(header, wide)
+    const all = columns.map((column) => series.columns.find((one) => one.index === column.index) ?? column)
+    return { columns: all, time, turbine: -1, channels: series.channels, series }
+  }
+  const turbine = takenBy.get('turbine')?.index ?? -1
+  if (tags) return { columns, time, turbine, channels: [], tags }
   const channels = inCanonicalOrder(columns)
   if (channels.length === 0) throw nothingRecognised(name, header, 'no channel but time')
-  return { columns, time, turbine: takenBy.get('turbine')?.index ?? -1, channels }
+  return { columns, time, turbine, channels }
 }
+
+const isRowKey = (target: string) => (ROW_KEYS as readonly string[]).includes(target)
 
 const suffix = (statistic: NamedColumn['statistic']) => (statistic === '' ? '' : `_${statistic}`)
 

@@ -150,6 +150,7 @@ const USUAL: Readonly<Record<string, readonly string[]>> = {
     'vaneangle',
     'vanedirection',
     'vaneposition',
+    'vaneposition12',
     'vane12',
     'yawangleerror',
     'winddeviation',

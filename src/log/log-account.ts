@@ -12,6 +12,8 @@ export interface SourceAccount {
   readonly scanner: RowScanner
   readonly sha256: string
   readonly rejectedInScan: number
+  /** Rows passed on: lines, or what was made of them. */
+  rows: number
 }
 
 /** @throws InputError LOG_NO_ROWS, LOG_TIME when the scan has left no row to work with */
@@ -61,10 +63,7 @@ export function buildReceipt(parts: {
       `expected values in some column, got none in any of ${post.rows} rows; the first is line ${first?.firstLine ?? 0}: ${first?.firstText ?? ''}`,
     )
   }
-  const received = accounts.reduce(
-    (sum, { scanner, rejectedInScan }) => sum + scanner.rows + rejectedInScan,
-    0,
-  )
+  const received = accounts.reduce((sum, { rows, rejectedInScan }) => sum + rows + rejectedInScan, 0)
   const rejected = post.rejects.rows
   if (received !== staged.accepted + staged.duplicate + rejected) {
     throw new Error(
@@ -86,10 +85,10 @@ export function buildReceipt(parts: {
     intervalS: parts.overall === null ? null : parts.overall / 1000,
     turbines: staged.turbines.map(({ turbine, rows }) => ({ turbine, rows })),
     columns: columnAccounts(accounts, cells, staged),
-    inputs: accounts.map(({ plan, scanner, sha256, rejectedInScan }) => ({
+    inputs: accounts.map(({ plan, rows, sha256, rejectedInScan }) => ({
       name: plan.source.name,
       sha256,
-      rows: scanner.rows + rejectedInScan,
+      rows: rows + rejectedInScan,
     })),
     warnings,
   }
@@ -132,9 +131,13 @@ function columnAccounts(
 ): Receipt['columns'] {
   const byKey = new Map<string, Receipt['columns'][number]>()
   accounts.forEach(({ plan }, i) => {
+    const counted = new Set<string>()
     for (const column of plan.map.columns) {
       const key = `${column.name}\n${column.takenFor ?? ''}`
-      const count = column.takenFor === null ? undefined : cells[i]!.get(column.takenFor)
+      // Of several columns for one channel (one per turbine) the first carries the counts of all.
+      const isFirst = column.takenFor !== null && !counted.has(column.takenFor)
+      if (isFirst) counted.add(column.takenFor)
+      const count = isFirst ? cells[i]!.get(column.takenFor) : undefined
       const entry = byKey.get(key) ?? {
         column: column.name,
         takenFor: column.takenFor,
@@ -142,10 +145,7 @@ function columnAccounts(
         why: column.why,
         unreadable: 0,
         outOfRange: 0,
-        missing:
-          column.takenFor === null
-            ? 0
-            : staged.accepted - (staged.present.get(column.takenFor) ?? staged.accepted),
+        missing: !isFirst ? 0 : staged.accepted - (staged.present.get(column.takenFor) ?? staged.accepted),
       }
       entry.unreadable += count?.unreadable ?? 0
       entry.outOfRange += count?.outOfRange ?? 0
@@ -182,7 +182,16 @@ function addWarnings(parts: Parameters<typeof buildReceipt>[0]): void {
     warnings.push(
       `columns: ${unknownKeys} values have keys that the beginning of the log does not show; they are not used`,
     )
-  for (const { plan } of accounts) {
+  for (const { plan, scanner, rows } of accounts) {
+    const { series } = plan.map
+    if (series) {
+      warnings.push(
+        series.shape.kind === 'wide'
+          ? `${plan.source.name}: one column per turbine and signal; every line makes ${series.shape.turbines.length} rows`
+          : `${plan.source.name}: one value per line; ${scanner.rows} values of ${series.shape.tags.length} known signals make ${rows} rows`,
+      )
+      continue
+    }
     if (plan.scan.turbine >= 0) continue
     const origin = reading.turbine === undefined ? 'the file name' : 'the request'
     warnings.push(

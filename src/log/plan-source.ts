@@ -8,10 +8,12 @@ import type { ReadableSource } from './parquet-source.ts'
 import type { ScanPlan } from './row-scanner.ts'
 import { dateClockTime, dayClockTime, stampTime, type RowTime } from './row-time.ts'
 import { sourceBytes } from './source-bytes.ts'
+import { longSeries } from './series-shape.ts'
 import { sniffStamps, type StampFormat } from './stamp-format.ts'
 import { dateReader } from './stamp-reader.ts'
 import { textLines } from './text-lines.ts'
 
+const MOST_TAGS = 20_000
 const SAMPLE_BYTES = 256 * 1024
 
 /** Everything that the beginning of a source decides. */
@@ -50,8 +52,14 @@ export async function planSource(
       `${source.name} line ${dialect.headerLine}: expected at most ${limits.maxColumns} columns, got ${dialect.header.length}`,
     )
   }
-  const map = mapColumns(source.name, dialect.header, reading.columns ?? {}, dialect.rows)
-  const { time, description } = await rowTime({ ...source, dialect, limits, encoding }, map, reading)
+  const sampled = { ...source, dialect, limits, encoding }
+  const turbineName = reading.turbine ?? nameFromFile(source.name)
+  const map = await withTags(
+    sampled,
+    mapColumns(source.name, dialect.header, reading.columns ?? {}, dialect.rows),
+    turbineName,
+  )
+  const { time, description } = await rowTime(sampled, map, reading)
   return {
     source,
     firstBytes: bytes.subarray(0, 4096),
@@ -66,8 +74,10 @@ export async function planSource(
       headerLine: dialect.headerLine,
       safe: dialect.hasQuotes,
       time,
-      turbine: map.turbine,
-      turbineName: reading.turbine ?? nameFromFile(source.name),
+      // The clock of a log of single values runs per signal: in the repeated hour each tells its own passes apart.
+      turbine: map.series?.shape.kind === 'long' ? map.series.shape.tag : map.turbine,
+      turbineName,
+      isTag: map.series?.shape.kind === 'long',
     },
   }
 }
@@ -135,6 +145,28 @@ async function rowTime(
     time: dayClockTime(map.time, lowest, startMs),
     description: `day number ${lowest} = ${reading.startDate}, with a clock`,
   }
+}
+
+/** Lists the signals of a log of single values: the last one may begin at its end. */
+async function withTags(source: SampledSource, map: ColumnMap, turbineName: string): Promise<ColumnMap> {
+  if (!map.tags) return map
+  const tags = new Set<string>()
+  await visitCells(source, map.tags.tag, (cell) => {
+    if (tags.size < MOST_TAGS) tags.add(cell)
+  })
+  const series = longSeries([...tags], { ...map.tags, turbine: map.turbine }, turbineName)
+  if (series.channels.length === 0) {
+    throw new InputError(
+      'LOG_COLUMNS_MISSING',
+      `${source.name}: one value per line, and no signal in column ${source.dialect.header[map.tags.tag]!} was recognised; there are: ${[...tags].slice(0, 40).join(', ')}`,
+    )
+  }
+  const own = map.columns.map((column) =>
+    column.index === map.tags!.tag || column.index === map.tags!.value
+      ? { ...column, why: 'name or value of a signal' }
+      : column,
+  )
+  return { ...map, columns: [...own, ...series.columns], channels: series.channels, series }
 }
 
 /** Visits the cells of one column of the whole file, for the few questions that its beginning cannot answer. */

@@ -43,6 +43,8 @@ export interface ScanPlan {
   /** Position of the turbine's name, -1 = `turbineName` for all rows. */
   readonly turbine: number
   readonly turbineName: string
+  /** The position above holds the name of a signal: marks that a turbine's name must not have are allowed. */
+  readonly isTag: boolean
   readonly zone: ZoneTable
   readonly limits: LogLimits
 }
@@ -259,7 +261,7 @@ export class RowScanner implements LinePosition {
     const name = bytes.toString('utf8', from, to)
     // Such names could not be addressed over HTTP.
     // eslint-disable-next-line no-control-regex
-    if (/[\u0000-\u001f/]/.test(name)) return 'bad-turbine'
+    if (!this.plan.isTag && /[\u0000-\u001f/]/.test(name)) return 'bad-turbine'
     this.lastTurbine = Buffer.from(bytes.subarray(from, to))
     return (this.lastTrack = this.trackOf(name))
   }

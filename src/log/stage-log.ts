@@ -5,13 +5,14 @@ import type { Connection } from '../duck/index.ts'
 import type { Receipt } from '../sheet/index.ts'
 import { sniffEncoding, toUtf8 } from './clean-text.ts'
 import type { LogLimits, LogParts, LogReading, LogSource, StagedLog } from './contract.ts'
-import type { MappedColumn } from './column-map.ts'
+import type { MappedColumn } from './mapped-column.ts'
 import { buildReceipt, refuseUnfit, type SourceAccount } from './log-account.ts'
 import { readableSource } from './parquet-source.ts'
 import { planSource, type SourcePlan } from './plan-source.ts'
 import { Rejects } from './rejects.ts'
 import { NeedsSafeDelimiter, RowScanner, type PostState } from './row-scanner.ts'
 import { sourceBytes } from './source-bytes.ts'
+import { cellsSql } from './clean-file.ts'
 import { countCells, intervals, stageRows, type NamedCleanFile } from './stage-rows.ts'
 import { textLines } from './text-lines.ts'
 import { zoneTable } from './zone-table.ts'
@@ -72,7 +73,13 @@ async function scanAll(
     const scanner = new RowScanner({ ...plan.scan, zone, limits: parts.limits }, post)
     try {
       const sha256 = await scanSource(plan, scanner, path, parts.limits)
-      accounts.push({ plan, scanner, sha256, rejectedInScan: rejects.rows - rejectedBefore })
+      accounts.push({
+        plan,
+        scanner,
+        sha256,
+        rejectedInScan: rejects.rows - rejectedBefore,
+        rows: scanner.rows,
+      })
     } catch (error) {
       await rejects.close()
       await rm(join(parts.folder, 'rejected.csv'), { force: true })
@@ -80,14 +87,19 @@ async function scanAll(
       plans[i] = { ...plan, scan: { ...plan.scan, safe: true } }
       return null
     }
+    const series = plan.map.series
+    // Rows that SQL makes of lines are sorted and counted there.
+    if (series) post.sorted = !(post.mayRepeat = true)
     files.push({
       name: plan.source.name,
       path,
       delimiter: scanner.outDelimiter,
-      fields: plan.scan.fields,
+      lineFields: plan.scan.fields,
+      fields: series ? series.channels.length + 1 : plan.scan.fields,
+      shape: series?.shape ?? null,
       decimalComma: plan.dialect.decimalComma,
       maxLineBytes: parts.limits.maxLineBytes,
-      turbine: plan.scan.turbine,
+      turbine: series ? 0 : plan.scan.turbine,
       turbineName: plan.scan.turbineName,
       channels: plan.map.channels,
     })
@@ -124,13 +136,16 @@ async function stage(
   const warnings: string[] = []
   try {
     refuseUnfit(accounts, post)
+    for (const [i, file] of files.entries())
+      if (file.shape) await countMadeRows(connection, accounts[i]!, file, post)
     const channels = mergedChannels(files.map((file) => file.channels))
     const { byTurbine, overall, steps } = await intervals(connection, files, post)
     const shiftMs = new Map<string, number>()
     if ((reading.stamp ?? reading.defaultStamp) === 'end') {
       if (overall === null)
         warnings.push('stamp: the log has no two rows of one turbine; its times are kept as they are')
-      for (const name of post.tracks.keys()) shiftMs.set(name, byTurbine.get(name) ?? overall ?? 0)
+      for (const name of new Set([...post.tracks.keys(), ...byTurbine.keys()]))
+        shiftMs.set(name, byTurbine.get(name) ?? overall ?? 0)
     }
     const staged = await stageRows(connection, {
       files,
@@ -167,6 +182,18 @@ async function stage(
     await rm(join(parts.folder, 'staged.parquet'), { force: true })
     throw error
   }
+}
+
+/** Where a line is not one row, the account is of the rows that were made of the lines. */
+async function countMadeRows(
+  connection: Connection,
+  account: SourceAccount,
+  file: NamedCleanFile,
+  post: PostState,
+): Promise<void> {
+  const [made] = await connection.records(`SELECT count(*) AS n FROM ${cellsSql(file)}`)
+  post.rows += Number(made!['n']) - account.rows
+  account.rows = Number(made!['n'])
 }
 
 /** Whether some cell with text has not become a value. */
