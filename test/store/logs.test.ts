@@ -3,6 +3,7 @@ import { readFile, readdir, rm, statfs, writeFile } from 'node:fs/promises'
 import { join } from 'node:path'
 import fc from 'fast-check'
 import { expect, test } from 'vitest'
+import { writeParquet } from '../../src/duck/index.ts'
 import { openStore, type Store } from '../../src/store/index.ts'
 import { counter, makeFolder, makeSmallDisk, openTestStore } from './folder.ts'
 import { addRows, readRows, receiptOf, stageRows, type LogRow } from './logs.ts'
@@ -346,6 +347,50 @@ test('on a full disk a log is refused whole, what was stored is read, and posts 
   } finally {
     await store.close()
   }
+})
+
+test('a large log is taken as it is, and overrules and is overruled like any other', async () => {
+  const store = await siteStore(undefined, { mergeCount: 2, largeRows: 10_000_000 })
+  // A million seconds that begin in the last hour of a month.
+  const fromMs = MARCH - 3_600_000
+  const large = async (power: number) => {
+    const path = join(store.tempFolder, `large-${power}.parquet`)
+    await store.scans.withConnection((connection) =>
+      writeParquet(
+        connection,
+        `SELECT 'Q01' AS turbine, (${fromMs} + i * 1000)::BIGINT AS time, ${power}::DOUBLE AS power,
+           i::DOUBLE AS vane FROM range(1000000) r(i)`,
+        path,
+      ),
+    )
+    const post = { site: 'quern-hill', path, rejectedPath: null, receipt: receiptOf(1_000_000), reading: {} }
+    const added = await store.logs.add({ ...post, contentKey: `large-${power}` })
+    expect(existsSync(path)).toBe(false)
+    return added.batch.batch
+  }
+  const window = { fromMs: MARCH - 1000, toMs: MARCH + 1001 }
+  const seen = async () => (await readRows(store, 'quern-hill', window)).map(([, , power]) => power)
+  await addRows(store, 'quern-hill', [['Q01', MARCH + 1000, 1]])
+  expect(await seen()).toEqual([1])
+  const first = await large(2)
+  expect(await seen()).toEqual([2, 2, 2])
+  await addRows(store, 'quern-hill', [['Q01', MARCH, 3]])
+  const second = await large(4)
+  expect(await seen()).toEqual([4, 4, 4])
+  expect((await store.logs.days('quern-hill', 'Q01')).reduce((sum, { rows }) => sum + rows, 0)).toBe(
+    1_000_000,
+  )
+  // The two large ones are merged here, although their files do not say which batch their rows are of.
+  await store.logs.compact()
+  expect(await seen()).toEqual([4, 4, 4])
+  await store.logs.remove('quern-hill', second)
+  expect(await seen()).toEqual([2, 3, 2])
+  await store.logs.compact()
+  expect(await seen()).toEqual([2, 3, 2])
+  await store.logs.remove('quern-hill', first)
+  expect(await seen()).toEqual([3, 1])
+  await store.logs.compact()
+  expect(await seen()).toEqual([3, 1])
 })
 
 function newIds(prefix: string): () => string {

@@ -56,6 +56,7 @@ export const MIGRATIONS: readonly { version: number; statements: readonly string
          row_count bigint NOT NULL,
          PRIMARY KEY (seq, month, turbine)
        )`,
+      // only_seq: the file lacks batch_seq, since all its rows are of this batch.
       `CREATE TABLE segments (
          segment text NOT NULL PRIMARY KEY,
          site text NOT NULL,
@@ -63,7 +64,8 @@ export const MIGRATIONS: readonly { version: number; statements: readonly string
          row_count bigint NOT NULL,
          dead_rows bigint NOT NULL,
          byte_count bigint NOT NULL,
-         checksum text NOT NULL
+         checksum text NOT NULL,
+         only_seq bigint
        )`,
       // Which segment holds the rows of a batch and month now; compaction changes this and nothing else.
       `CREATE TABLE segment_batches (

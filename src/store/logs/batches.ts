@@ -112,9 +112,9 @@ export async function insertSegment(
   segment: WrittenSegment,
 ): Promise<void> {
   await transaction.query(
-    `INSERT INTO segments (segment, site, month, row_count, dead_rows, byte_count, checksum)
-     VALUES ($1, $2, $3, $4, 0, $5, $6)`,
-    [segment.segment, site, segment.month, segment.rows, segment.bytes, segment.checksum],
+    `INSERT INTO segments (segment, site, month, row_count, dead_rows, byte_count, checksum, only_seq)
+     VALUES ($1, $2, $3, $4, 0, $5, $6, $7)`,
+    [segment.segment, site, segment.month, segment.rows, segment.bytes, segment.checksum, segment.onlySeq],
   )
 }
 

@@ -1,8 +1,7 @@
-import { quoteTexts } from '../../duck/index.ts'
 import { InputError } from '../../errors.ts'
 import type { CatalogueDriver } from '../catalogue/driver.ts'
 import { insertSegment } from './batches.ts'
-import { fileChecksum } from './segment-files.ts'
+import { fileChecksum, segmentRows } from './segment-files.ts'
 import { writeSegment, type SegmentParts, type WrittenSegment } from './write-segments.ts'
 
 export interface CompactionLimits {
@@ -83,13 +82,12 @@ async function merge(driver: CatalogueDriver, parts: SegmentParts, due: Due): Pr
       const found = await fileChecksum(parts.files.path(segment)).catch(() => 'no file')
       if (found !== checksum) throw new DamagedSegment(segment, checksum, found)
     }
-    const paths = segments.map(({ segment }) => parts.files.path(segment))
     const written = await parts.scans.withConnection((connection) =>
       writeSegment(
         connection,
         {
           month: due.month,
-          query: `SELECT * FROM read_parquet(${quoteTexts(paths)}, union_by_name = true)
+          query: `SELECT * FROM ${segmentRows(parts.files, segments)}
             WHERE batch_seq IN (${seqs.join(', ')}) ORDER BY turbine, time, batch_seq`,
           expected: segments.reduce((sum, { rows, deadRows }) => sum + rows - deadRows, 0),
         },
@@ -119,12 +117,13 @@ interface Segment {
   readonly deadRows: number
   readonly bytes: number
   readonly checksum: string
+  readonly onlySeq: number | null
 }
 
 /** One query, so that the list of live batches and the number of dead rows belong together. */
 async function liveRows(driver: CatalogueDriver, due: Due): Promise<{ segments: Segment[]; seqs: number[] }> {
   const rows = await driver.query(
-    `SELECT s.segment, s.row_count, s.dead_rows, s.byte_count, s.checksum, b.seq
+    `SELECT s.segment, s.row_count, s.dead_rows, s.byte_count, s.checksum, s.only_seq, b.seq
      FROM segments s JOIN segment_batches b ON b.segment = s.segment
      WHERE s.site = $1 AND s.month = $2`,
     [due.site, due.month],
@@ -142,6 +141,7 @@ async function liveRows(driver: CatalogueDriver, due: Due): Promise<{ segments: 
       deadRows: row['dead_rows'] as number,
       bytes: row['byte_count'] as number,
       checksum: row['checksum'] as string,
+      onlySeq: (row['only_seq'] ?? null) as number | null,
     })
   }
   return { segments: [...segments.values()], seqs }

@@ -28,7 +28,7 @@ export interface StagedBatch {
   readonly site: string
   /**
    * Parquet in the data folder: turbine VARCHAR, time BIGINT (epoch ms), DOUBLE and VARCHAR channels; sorted by turbine
-   * and time, each pair once. Stays where it is.
+   * and time, each pair once. Taken over or left, as it suits: it is not to be used afterwards.
    */
   readonly path: string
   /** CSV of rejected rows, taken over; null when there are none. */

@@ -3,6 +3,7 @@ import { createReadStream } from 'node:fs'
 import { readdir } from 'node:fs/promises'
 import { join } from 'node:path'
 import { pipeline } from 'node:stream/promises'
+import { quoteText, quoteTexts } from '../../duck/index.ts'
 import type { CatalogueDriver } from '../catalogue/driver.ts'
 import { removeDurably } from '../durable-file.ts'
 import type { Space } from '../space.ts'
@@ -53,6 +54,28 @@ export function segmentFiles(folder: string, space: Space, report: (error: unkno
       while (removals.size > 0) await Promise.all(removals)
     },
   }
+}
+
+/**
+ * SQL of all rows of segments, each with `batch_seq`; columns that a file lacks are NULL.
+ * @param segments  at least one; `onlySeq` as in the catalogue
+ */
+export function segmentRows(
+  files: SegmentFiles,
+  segments: readonly { segment: string; onlySeq: number | null }[],
+): string {
+  const mixed = segments.filter(({ onlySeq }) => onlySeq === null)
+  const sources = segments
+    .filter(({ onlySeq }) => onlySeq !== null)
+    .map(({ segment, onlySeq }) => {
+      const path = quoteText(files.path(segment))
+      return `SELECT *, ${onlySeq!}::BIGINT AS batch_seq FROM read_parquet(${path})`
+    })
+  if (mixed.length > 0) {
+    const paths = quoteTexts(mixed.map(({ segment }) => files.path(segment)))
+    sources.push(`SELECT * FROM read_parquet(${paths}, union_by_name = true)`)
+  }
+  return `(${sources.join(' UNION ALL BY NAME ')})`
 }
 
 /** Removes what a crash left: files that no row of the catalogue names. */

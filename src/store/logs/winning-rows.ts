@@ -1,6 +1,6 @@
-import { quoteText, quoteTexts } from '../../duck/index.ts'
+import { quoteText } from '../../duck/index.ts'
 import type { CatalogueDriver } from '../catalogue/driver.ts'
-import type { SegmentFiles } from './segment-files.ts'
+import { segmentRows, type SegmentFiles } from './segment-files.ts'
 
 export interface LogWindow {
   /** Epoch ms, inclusive; default: from the first row. */
@@ -26,6 +26,7 @@ interface Part {
   readonly lastMs: number
   readonly segment: string
   readonly deadRows: number
+  readonly onlySeq: number | null
 }
 
 /**
@@ -40,7 +41,7 @@ export async function winningRows(
 ): Promise<WinningRows> {
   const parts = await overlappingParts(driver, site, window)
   if (parts.length === 0) return { source: undefined, isSorted: true }
-  const segments = [...new Set(parts.map(({ segment }) => segment))]
+  const segments = [...new Map(parts.map((part) => [part.segment, part])).values()]
   const seqs = [...new Set(parts.map(({ seq }) => seq))]
   const hasDead = parts.some(({ deadRows }) => deadRows > 0)
   const conditions = [
@@ -49,7 +50,7 @@ export async function winningRows(
     window.turbines ? `turbine IN ${inList(window.turbines)}` : '',
     hasDead ? `batch_seq IN (${seqs.join(', ')})` : '',
   ].filter((condition) => condition !== '')
-  const rows = `SELECT * FROM read_parquet(${quoteTexts(segments.map((segment) => files.path(segment)))}, union_by_name = true)
+  const rows = `SELECT * FROM ${segmentRows(files, segments)}
     ${conditions.length > 0 ? `WHERE ${conditions.join(' AND ')}` : ''}`
   const contested = contestedTurbines(parts)
   if (contested.length === 0) return { source: `(${rows})`, isSorted: segments.length === 1 }
@@ -66,7 +67,7 @@ export async function winningRows(
 
 async function overlappingParts(driver: CatalogueDriver, site: string, window: LogWindow): Promise<Part[]> {
   const rows = await driver.query(
-    `SELECT p.turbine, p.seq, p.first_ms, p.last_ms, b.segment, s.dead_rows
+    `SELECT p.turbine, p.seq, p.first_ms, p.last_ms, b.segment, s.dead_rows, s.only_seq
      FROM batch_parts p
      JOIN segment_batches b ON b.seq = p.seq AND b.month = p.month
      JOIN segments s ON s.segment = b.segment
@@ -84,6 +85,7 @@ async function overlappingParts(driver: CatalogueDriver, site: string, window: L
       lastMs: row['last_ms'] as number,
       segment: row['segment'] as string,
       deadRows: row['dead_rows'] as number,
+      onlySeq: (row['only_seq'] ?? null) as number | null,
     }))
 }
 

@@ -14,6 +14,8 @@ export interface WrittenSegment {
   readonly bytes: number
   /** SHA-256 of the file. */
   readonly checksum: string
+  /** The batch of all rows, where the file has no column `batch_seq`; else null. */
+  readonly onlySeq: number | null
 }
 
 /** Rows of one turbine in one month of a batch. */
@@ -33,8 +35,13 @@ export interface SegmentParts {
   readonly newId: () => string
 }
 
+/** A log with as many rows, of no longer time, becomes one segment as it is: writing it again would double its cost. */
+const WHOLE_ROWS = 1_000_000
+const WHOLE_SPAN_MS = 32 * 86_400_000
+
 /**
- * Splits a staged log by calendar month (UTC) into segment files. When it fails, none of them stays.
+ * Makes segment files of a staged log: one for each calendar month (UTC); a large log of about a month becomes one as it
+ * is, under the month of its first row. When it fails, none of them stays.
  * @throws InputError STORAGE_FULL
  */
 export async function writeSegments(
@@ -46,16 +53,28 @@ export async function writeSegments(
   const segments: WrittenSegment[] = []
   try {
     return await parts.scans.withConnection(async (connection) => {
-      const batchParts = await readParts(connection, source)
-      const months = [...new Set(batchParts.map(({ month }) => month))]
+      const monthly = await readParts(connection, source)
+      const whole = asWhole(monthly)
+      if (whole) {
+        const rows = sumRows(whole)
+        segments.push(
+          await placeSegment(
+            stagedPath,
+            { segment: parts.newId(), month: whole[0]!.month, rows, onlySeq: seq },
+            parts,
+          ),
+        )
+        return { segments, batchParts: whole }
+      }
+      const months = [...new Set(monthly.map(({ month }) => month))]
       for (const month of months) {
         const [fromMs, toMs] = monthBounds(month)
         const where = months.length > 1 ? `WHERE time >= ${fromMs} AND time < ${toMs}` : ''
         const query = `SELECT *, ${seq}::BIGINT AS batch_seq FROM ${source} ${where}`
-        const expected = batchParts.reduce((sum, part) => (part.month === month ? sum + part.rows : sum), 0)
+        const expected = sumRows(monthly.filter((part) => part.month === month))
         segments.push(await writeSegment(connection, { month, query, expected }, parts))
       }
-      return { segments, batchParts }
+      return { segments, batchParts: monthly }
     })
   } catch (error) {
     parts.files.giveUp(segments)
@@ -79,14 +98,46 @@ export async function writeSegment(
   try {
     const rows = await writeParquet(connection, query, temporary)
     if (rows !== expected) throw new Error(`segment of ${month}: expected ${expected} rows, got ${rows}`)
-    const { size: bytes } = await stat(temporary)
-    const checksum = await fileChecksum(temporary)
-    await parts.space.reserve(bytes)
-    await parts.space.guard(bytes, () => moveDurably(temporary, parts.files.path(segment)))
-    return { segment, month, rows, bytes, checksum }
+    return await placeSegment(temporary, { segment, month, rows, onlySeq: null }, parts)
   } finally {
     await rm(temporary, { force: true })
   }
+}
+
+async function placeSegment(
+  path: string,
+  about: Omit<WrittenSegment, 'bytes' | 'checksum'>,
+  { files, space }: SegmentParts,
+): Promise<WrittenSegment> {
+  const { size: bytes } = await stat(path)
+  const checksum = await fileChecksum(path)
+  await space.reserve(bytes)
+  await space.guard(bytes, () => moveDurably(path, files.path(about.segment)))
+  return { ...about, bytes, checksum }
+}
+
+/** Parts of a log that is taken as it is, all under its first month; undefined for a log that is split. */
+function asWhole(monthly: readonly BatchPart[]): BatchPart[] | undefined {
+  const firstMs = Math.min(...monthly.map((part) => part.firstMs))
+  const lastMs = Math.max(...monthly.map((part) => part.lastMs))
+  if (!(sumRows(monthly) >= WHOLE_ROWS && lastMs - firstMs <= WHOLE_SPAN_MS)) return undefined
+  const month = monthly[0]!.month
+  const byTurbine = new Map<string, BatchPart>()
+  for (const part of monthly) {
+    const known = byTurbine.get(part.turbine)
+    byTurbine.set(part.turbine, {
+      month,
+      turbine: part.turbine,
+      firstMs: Math.min(known?.firstMs ?? Infinity, part.firstMs),
+      lastMs: Math.max(known?.lastMs ?? -Infinity, part.lastMs),
+      rows: (known?.rows ?? 0) + part.rows,
+    })
+  }
+  return [...byTurbine.values()]
+}
+
+function sumRows(parts: readonly BatchPart[]): number {
+  return parts.reduce((sum, { rows }) => sum + rows, 0)
 }
 
 async function readParts(connection: Connection, source: string): Promise<BatchPart[]> {
