@@ -47,7 +47,6 @@ export function buildReceipt(parts: {
   /** Per source: counts by channel; empty when nothing was lost. */
   cells: readonly ReadonlyMap<string, CellCount>[]
   overall: number | null
-  steps: ReadonlyMap<number, number>
   reading: LogReading
   warnings: string[]
   channels: readonly string[]

@@ -12,10 +12,15 @@ import { planSource, type SourcePlan } from './plan-source.ts'
 import { Rejects } from './rejects.ts'
 import { NeedsSafeDelimiter, RowScanner, type PostState } from './row-scanner.ts'
 import { sourceBytes } from './source-bytes.ts'
-import { cellsSql } from './clean-file.ts'
-import { countCells, intervals, stageRows, type NamedCleanFile } from './stage-rows.ts'
+import { cellsSql, rowsSql } from './clean-file.ts'
+import { commonestStep } from './row-clock.ts'
+import { findGrid, gridPointSql, otherIntervals, type TimeGrid } from './time-grid.ts'
+import { countCells, intervals, stageRows, type Intervals, type NamedCleanFile } from './stage-rows.ts'
 import { textLines } from './text-lines.ts'
 import { zoneTable } from './zone-table.ts'
+
+/** Share of rows that must stand near the grid for any to be moved. */
+const SNAP_SHARE = 0.95
 
 /**
  * Reads logs into one sorted Parquet file of clean rows, and accounts for every line and cell.
@@ -139,19 +144,29 @@ async function stage(
     for (const [i, file] of files.entries())
       if (file.shape) await countMadeRows(connection, accounts[i]!, file, post)
     const channels = mergedChannels(files.map((file) => file.channels))
-    const { byTurbine, overall, steps } = await intervals(connection, files, post)
+    const found = await intervals(connection, files, post)
+    const snap = await findSnap(connection, files, found, post)
+    if (snap)
+      warnings.push(
+        `time: ${snap.moved} stamps stand beside the grid of ${snap.grid.intervalMs / 1000} s and were moved to it, by ${snap.grid.toleranceMs / 1000} s at most`,
+      )
+    const { byTurbine, overall, steps } = snap ? onGrid(found, snap.grid) : found
+    const mixed = overall === null ? null : otherIntervals(steps, overall, byTurbine)
+    if (mixed !== null) warnings.push(mixed)
     const shiftMs = new Map<string, number>()
     if ((reading.stamp ?? reading.defaultStamp) === 'end') {
       if (overall === null)
         warnings.push('stamp: the log has no two rows of one turbine; its times are kept as they are')
-      for (const name of new Set([...post.tracks.keys(), ...byTurbine.keys()]))
+      for (const name of new Set([...post.tracks.keys(), ...byTurbine.keys()])) {
         shiftMs.set(name, byTurbine.get(name) ?? overall ?? 0)
+      }
     }
     const staged = await stageRows(connection, {
       files,
       channels,
       post,
       shiftMs,
+      grid: snap?.grid ?? null,
       rejects: post.rejects,
       folder: parts.folder,
     })
@@ -169,7 +184,6 @@ async function stage(
       staged,
       cells,
       overall,
-      steps,
       reading,
       warnings,
       channels,
@@ -182,6 +196,39 @@ async function stage(
     await rm(join(parts.folder, 'staged.parquet'), { force: true })
     throw error
   }
+}
+
+/** How far jittering stamps are moved; null when they keep to their distances, or stand too far from any grid. */
+async function findSnap(
+  connection: Connection,
+  files: readonly NamedCleanFile[],
+  found: Intervals,
+  post: PostState,
+): Promise<{ grid: TimeGrid; moved: number } | null> {
+  const grid = findGrid(found.steps)
+  if (!grid) return null
+  const point = gridPointSql('time', grid)
+  const rows = files.map((file, i) => rowsSql(file, i, [])).join(' UNION ALL ')
+  const [counts] = await connection.records(
+    `SELECT count(*) FILTER (abs(time - ${point}) <= ${grid.toleranceMs}) AS near, count(*) FILTER (time = ${point}) AS exact FROM (${rows})`,
+  )
+  const near = Number(counts!['near'])
+  if (!(near >= SNAP_SHARE * post.rows)) return null
+  post.mayRepeat = true
+  post.sorted = false
+  return { grid, moved: near - Number(counts!['exact']) }
+}
+
+/** Intervals after the stamps were moved: steps near a multiple of the grid are that multiple. */
+function onGrid(found: Intervals, grid: TimeGrid): Intervals {
+  const toGrid = (ms: number) => {
+    const multiple = Math.max(1, Math.round(ms / grid.intervalMs)) * grid.intervalMs
+    return Math.abs(ms - multiple) <= 2 * grid.toleranceMs ? multiple : ms
+  }
+  const steps = new Map<number, number>()
+  for (const [ms, n] of found.steps) steps.set(toGrid(ms), (steps.get(toGrid(ms)) ?? 0) + n)
+  const byTurbine = new Map([...found.byTurbine].map(([name, ms]) => [name, toGrid(ms)]))
+  return { steps, byTurbine, overall: commonestStep(steps) }
 }
 
 /** Where a line is not one row, the account is of the rows that were made of the lines. */

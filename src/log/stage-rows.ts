@@ -11,6 +11,7 @@ import { cellCountsSql, rowsSql, type CleanFile } from './clean-file.ts'
 import type { Rejects } from './rejects.ts'
 import { commonestStep, flushSteps } from './row-clock.ts'
 import type { PostState } from './row-scanner.ts'
+import { snapSql, type TimeGrid } from './time-grid.ts'
 
 export interface NamedCleanFile extends CleanFile {
   readonly name: string
@@ -51,12 +52,17 @@ export async function stageRows(
     channels: readonly string[]
     post: PostState
     shiftMs: ReadonlyMap<string, number>
+    /** Stamps near this grid are moved to it; null: none is moved. */
+    grid: TimeGrid | null
     rejects: Rejects
     folder: string
   },
 ): Promise<StagedRows> {
   const { files, channels, post, rejects } = parts
-  const rows = `(${files.map((file, i) => rowsSql(file, i, channels)).join(' UNION ALL ')})`
+  const asRead = `(${files.map((file, i) => rowsSql(file, i, channels)).join(' UNION ALL ')})`
+  const rows = parts.grid
+    ? `(SELECT * REPLACE (${snapSql('time', parts.grid)} AS time) FROM ${asRead})`
+    : asRead
   const hasValue = `(${channels.map((channel) => `${quoteIdentifier(channel)} IS NOT NULL`).join(' OR ')})`
   const list = channels.map(quoteIdentifier).join(', ')
   const query = [
@@ -147,12 +153,20 @@ export async function countCells(connection: Connection, file: CleanFile): Promi
   return counts
 }
 
+export interface Intervals {
+  readonly byTurbine: ReadonlyMap<string, number>
+  /** The commonest step of all, ms; null without any. */
+  readonly overall: number | null
+  /** Step, ms -> how often. */
+  readonly steps: ReadonlyMap<number, number>
+}
+
 /** Commonest step per turbine, ms, and that of all; from the scan when times only rose, else from the sorted rows. */
 export async function intervals(
   connection: Connection,
   files: readonly CleanFile[],
   post: PostState,
-): Promise<{ byTurbine: Map<string, number>; overall: number | null; steps: Map<number, number> }> {
+): Promise<Intervals> {
   const byName = new Map<string, Map<number, number>>()
   if (!post.mayRepeat) {
     for (const [name, track] of post.tracks) {
