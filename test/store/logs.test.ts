@@ -145,6 +145,53 @@ test('a turbine that the site file lacks is added to it, and the receipt warns',
   expect((await store.logs.get('quern-hill', batch.batch)).receipt).toEqual(batch.receipt)
 })
 
+test('a turbine whose name cannot be set up keeps its rows, and the site file stays one that can be put', async () => {
+  const store = await siteStore()
+  const { batch } = await addRows(store, 'quern-hill', [['WTG/01', MARCH, 1]])
+  expect(batch.receipt.warnings).toEqual([expect.stringMatching(/"WTG\/01".*without "\/"/)])
+  expect((await store.sites.get('quern-hill'))?.turbines).toEqual([{ turbine: 'Q01', ratedPowerKw: 2300 }])
+  expect(await readRows(store, 'quern-hill')).toEqual([['WTG/01', MARCH, 1]])
+})
+
+test('a log of more turbines than a site can have is refused whole', async () => {
+  const store = await siteStore()
+  const rows = Array.from({ length: 5_000 }, (_, i) => [`T${i}`, MARCH, 1] as const)
+  await expect(addRows(store, 'quern-hill', rows)).rejects.toThrow(
+    expect.objectContaining({ code: 'LOG_COLUMN_MAP' }) as Error,
+  )
+  expect(await readRows(store, 'quern-hill')).toEqual([])
+  expect((await store.sites.get('quern-hill'))?.turbines?.length).toBe(1)
+})
+
+test('who reads while logs come in and are merged sees whole logs, and all that were acknowledged', async () => {
+  const store = await siteStore(undefined, { mergeCount: 2, largeRows: 1_000 })
+  let acknowledged = 0
+  let isWriting = true
+  const write = async () => {
+    for (let n = 0; n < 30; n++) {
+      await addRows(store, 'quern-hill', [
+        ['Q01', MARCH + n * STEP, n],
+        ['Q01', APRIL + n * STEP, n],
+      ])
+      acknowledged = n + 1
+    }
+    isWriting = false
+  }
+  let reads = 0
+  const read = async () => {
+    while (isWriting) {
+      const least = acknowledged
+      const times = (await store.logs.rows('quern-hill'))[0]?.numbers['power'] ?? []
+      const half = times.length / 2
+      expect(half).toBeGreaterThanOrEqual(least)
+      expect(Array.from(times)).toEqual(Array.from({ length: 2 * half }, (_, i) => i % half))
+      reads++
+    }
+  }
+  await Promise.all([write(), read(), read()])
+  expect(reads).toBeGreaterThan(3)
+})
+
 test('rejected rows are kept with their log and go with it', async () => {
   const store = await siteStore()
   const rejectedPath = join(store.tempFolder, 'rejected.csv')

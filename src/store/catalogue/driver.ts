@@ -12,8 +12,8 @@ export interface Transaction {
 /**
  * What the store asks of the database that holds its catalogue. Statements that pass through here keep to what every
  * database understands: text, bigint, integer, double precision, boolean; epoch-ms bigint; JSON as text; ids made by
- * the program; `$1`; ON CONFLICT (key) DO UPDATE; RETURNING; explicit NULLS LAST. Migrations and locks stand in the
- * drivers.
+ * the program; `$1`; ON CONFLICT (key) DO UPDATE; RETURNING; explicit NULLS LAST. Text compares in byte order: where the
+ * database does otherwise its migrations say COLLATE "C". Migrations and locks stand in the drivers.
  */
 export interface CatalogueDriver {
   /** Reads, outside of any write. Sees every write that was acknowledged before. */

@@ -1,5 +1,6 @@
+import { Value } from 'typebox/value'
 import { InputError } from '../../errors.ts'
-import type { Receipt, SiteFile } from '../../sheet/index.ts'
+import { TurbineSetup, type Receipt, type SiteFile } from '../../sheet/index.ts'
 import type { CatalogueDriver, Row, Transaction } from '../catalogue/driver.ts'
 import { readCursor, writeCursor } from '../cursor.ts'
 import { requireSite, writeSite } from '../sites.ts'
@@ -43,7 +44,7 @@ export async function nextSeq(driver: CatalogueDriver): Promise<number> {
 /**
  * Makes a batch, its segments and turbines that the site did not know visible, all at once.
  * @returns the batch as kept; or the one that has the same content already, then nothing is changed
- * @throws InputError SITE_NOT_FOUND
+ * @throws InputError SITE_NOT_FOUND, LOG_COLUMN_MAP for more turbines than a site can have
  */
 export async function insertBatch(
   driver: CatalogueDriver,
@@ -118,6 +119,9 @@ export async function insertSegment(
   )
 }
 
+/** As many as a site file may name. */
+const MAX_TURBINES = 5000
+
 async function addTurbines(
   transaction: Transaction,
   added: NewBatch,
@@ -127,11 +131,19 @@ async function addTurbines(
   const known = new Set((file.turbines ?? []).map(({ turbine }) => turbine))
   const unknown = [...new Set(parts.map(({ turbine }) => turbine))].filter((turbine) => !known.has(turbine))
   if (unknown.length === 0) return added.receipt
-  const turbines = [...(file.turbines ?? []), ...unknown.map((turbine) => ({ turbine }))]
-  await writeSite(transaction, added.site, { ...file, turbines }, added.createdMs)
-  const warnings = unknown.map(
-    (turbine) =>
-      `turbine "${turbine}" was not set up at this site: it was added without rated power and position`,
+  const fitting = unknown.filter((turbine) => Value.Check(TurbineSetup, { turbine }))
+  const turbines = [...(file.turbines ?? []), ...fitting.map((turbine) => ({ turbine }))]
+  if (turbines.length > MAX_TURBINES) {
+    throw new InputError(
+      'LOG_COLUMN_MAP',
+      `turbine: expected at most ${MAX_TURBINES} turbines at a site, got ${turbines.length}; is this the column of turbines?`,
+    )
+  }
+  if (fitting.length > 0) await writeSite(transaction, added.site, { ...file, turbines }, added.createdMs)
+  const warnings = unknown.map((turbine) =>
+    fitting.includes(turbine)
+      ? `turbine "${turbine}" was not set up at this site: it was added without rated power and position`
+      : `turbine "${turbine.slice(0, 100)}" is not set up at this site and cannot be: expected a name of 1 to 100 characters without "/" and control characters; its rows are kept`,
   )
   return { ...added.receipt, warnings: [...added.receipt.warnings, ...warnings] }
 }

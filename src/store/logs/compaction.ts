@@ -23,12 +23,12 @@ export const DEFAULT_COMPACTION: CompactionLimits = { mergeCount: 16, largeRows:
  */
 export async function compact(
   driver: CatalogueDriver,
-  parts: SegmentParts & { report: (error: unknown) => void },
+  parts: SegmentParts & { report: (error: unknown) => void; isStopping: () => boolean },
   limits: CompactionLimits = DEFAULT_COMPACTION,
 ): Promise<number> {
   let merges = 0
   const damaged = new Set<string>()
-  for (;;) {
+  while (!parts.isStopping()) {
     const due = await nextDue(driver, limits, damaged)
     if (!due) return merges
     try {
@@ -40,6 +40,7 @@ export async function compact(
       parts.report(error)
     }
   }
+  return merges
 }
 
 interface Due {

@@ -57,7 +57,7 @@ export interface LogStore {
   /**
    * Keeps a log, all of it or nothing. Where the site has the same content already, that batch is answered and nothing
    * changes. Turbines that the site file lacks are added to it, with a warning in the receipt.
-   * @throws InputError SITE_NOT_FOUND, STORAGE_FULL
+   * @throws InputError SITE_NOT_FOUND, STORAGE_FULL, LOG_COLUMN_MAP for more turbines than a site can have
    */
   add(staged: StagedBatch): Promise<{ batch: StoredBatch; isNew: boolean }>
   find(site: string, contentKey: string): Promise<StoredBatch | undefined>
@@ -118,15 +118,13 @@ export function logStore(driver: CatalogueDriver, options: LogStoreParts): LogSt
   const { scans, space, tempFolder, clock, report } = options
   const newId = () => checkId(options.newId())
   const files = segmentFiles(options.segmentsFolder, space, report)
-  const parts = { scans, files, space, tempFolder, newId, report }
   const rejectedPath = (batch: string) => join(options.rejectedFolder, `${batch}.csv`)
 
-  let closing = false
+  let isClosing = false
+  const parts = { scans, files, space, tempFolder, newId, report, isStopping: () => isClosing }
   let compacting: Promise<number> = Promise.resolve(0)
   const runCompaction = () => {
-    compacting = compacting
-      .catch(() => 0)
-      .then(() => (closing ? 0 : compact(driver, parts, options.compaction)))
+    compacting = compacting.catch(() => 0).then(() => compact(driver, parts, options.compaction))
     return compacting
   }
   let isNudged = false
@@ -287,7 +285,7 @@ export function logStore(driver: CatalogueDriver, options: LogStoreParts): LogSt
         return damaged
       }),
     async close() {
-      closing = true
+      isClosing = true
       await compacting.catch(() => 0)
       await files.settled()
     },
