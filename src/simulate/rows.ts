@@ -50,6 +50,30 @@ export function emptyRows(startMs: number, rateS: number, rows: number): Turbine
   }
 }
 
+/** Seconds in a block. */
+export const BLOCK_S = 600
+
+/**
+ * What one turbine did in each second of a block. The loop that makes the seconds and the one that makes rows of them
+ * meet in arrays: passed as arguments, the numbers cost an allocation each whenever the engine does not inline the call.
+ */
+export class Seconds {
+  readonly windMs = new Float64Array(BLOCK_S)
+  /** [-180, 180]. */
+  readonly vaneDeg = new Float64Array(BLOCK_S)
+  readonly secondVaneDeg = new Float64Array(BLOCK_S)
+  readonly headingDeg = new Float64Array(BLOCK_S)
+  /** 1 while the nacelle turns. */
+  readonly yawing = new Uint8Array(BLOCK_S)
+  readonly powerKw = new Float64Array(BLOCK_S)
+  readonly pitchDeg = new Float64Array(BLOCK_S)
+  readonly rotorRpm = new Float64Array(BLOCK_S)
+  readonly limitKw = new Float64Array(BLOCK_S)
+  readonly state = new Uint8Array(BLOCK_S)
+  readonly yawErrorDeg = new Float64Array(BLOCK_S)
+  readonly rotorWindMs = new Float64Array(BLOCK_S)
+}
+
 /** Entries for each degree of the table of sines. */
 const SINES_PER_DEG = 10
 /** Sines from -180 to 270 degrees and one entry more, so that the cosine is read a quarter turn further on. */
@@ -62,7 +86,7 @@ const HALF_SQUARE_STEP = (RAD_PER_DEG / SINES_PER_DEG) ** 2 / 2
 
 /**
  * Makes rows of seconds, as a logger does: means and standard deviations (divisor n), directions by their unit vectors,
- * the spread of directions by Yamartino's formula. One object for each turbine; `add` is called once a second.
+ * the spread of directions by Yamartino's formula. One object for each turbine.
  */
 export class RowMaker {
   readonly #rows: TurbineRows
@@ -77,8 +101,8 @@ export class RowMaker {
   #windSquares = 0
   #vaneSin = 0
   #vaneCos = 0
-  #secondVane = 0
-  #secondVanes = 0
+  readonly #secondVane: boolean
+  #vane2 = 0
   #lastHeading = NaN
   #headingSin = 0
   #headingCos = 0
@@ -102,6 +126,7 @@ export class RowMaker {
       northOffsetDeg: number
       nacelleScale: 'wrapped' | 'signed' | 'wound'
       averageAcrossNorth: boolean
+      secondVane: boolean
     },
   ) {
     this.#rows = rows
@@ -109,22 +134,19 @@ export class RowMaker {
     this.#northOffsetDeg = logger.northOffsetDeg
     this.#nacelleScale = logger.nacelleScale
     this.#averageAcrossNorth = logger.averageAcrossNorth
+    this.#secondVane = logger.secondVane
   }
 
-  /** @param vaneDeg [-180, 180] */
-  add(
-    windMs: number,
-    vaneDeg: number,
-    headingDeg: number,
-    yawing: number,
-    powerKw: number,
-    pitchDeg: number,
-    rotorRpm: number,
-    limitKw: number,
-    state: number,
-    yawErrorDeg: number,
-    rotorWindMs: number,
-  ): void {
+  /** Takes a block of seconds. */
+  addBlock(block: Seconds): void {
+    for (let i = 0; i < BLOCK_S; i++) this.#add(block, i)
+  }
+
+  #add(block: Seconds, second: number): void {
+    const windMs = block.windMs[second]!
+    const vaneDeg = block.vaneDeg[second]!
+    const headingDeg = block.headingDeg[second]!
+    const powerKw = block.powerKw[second]!
     if (headingDeg !== this.#lastHeading) {
       // The nacelle stands still most of the time: its sine is not worked out anew each second.
       this.#lastHeading = headingDeg
@@ -147,22 +169,17 @@ export class RowMaker {
     this.#nacelleSin += this.#headingSin
     this.#nacelleCos += this.#headingCos
     this.#nacelle += this.#headingReading
-    this.#yawing += yawing
+    this.#yawing += block.yawing[second]!
     this.#power += powerKw
     this.#powerSquares += powerKw * powerKw
-    this.#pitch += pitchDeg
-    this.#rotor += rotorRpm
-    this.#limit += limitKw
-    this.#stateS[state]!++
-    this.#yawError += yawErrorDeg
-    this.#rotorWind += rotorWindMs
+    this.#pitch += block.pitchDeg[second]!
+    this.#rotor += block.rotorRpm[second]!
+    this.#limit += block.limitKw[second]!
+    this.#stateS[block.state[second]!]!++
+    this.#yawError += block.yawErrorDeg[second]!
+    this.#rotorWind += block.rotorWindMs[second]!
+    if (this.#secondVane) this.#vane2 += block.secondVaneDeg[second]!
     if (this.#n === this.#rateS) this.#finish()
-  }
-
-  /** The second vane of the second that `add` is called for next. */
-  addSecondVane(vaneDeg: number): void {
-    this.#secondVane += vaneDeg
-    this.#secondVanes++
   }
 
   #finish(): void {
@@ -173,7 +190,7 @@ export class RowMaker {
     const power = this.#power / n
     columns.wind_speed[row] = wind
     columns.vane[row] = Math.atan2(this.#vaneSin, this.#vaneCos) * DEG_PER_RAD
-    if (this.#secondVanes > 0) columns.vane_2[row] = wrap180(this.#secondVane / n)
+    if (this.#secondVane) columns.vane_2[row] = wrap180(this.#vane2 / n)
     if (n > 1) {
       columns.wind_speed_sd[row] = Math.sqrt(Math.max(0, this.#windSquares / n - wind * wind))
       columns.power_sd[row] = Math.sqrt(Math.max(0, this.#powerSquares / n - power * power))
@@ -201,6 +218,6 @@ export class RowMaker {
     this.#n = this.#wind = this.#windSquares = this.#vaneSin = this.#vaneCos = 0
     this.#nacelleSin = this.#nacelleCos = this.#nacelle = this.#yawing = 0
     this.#power = this.#powerSquares = this.#pitch = this.#rotor = this.#limit = 0
-    this.#yawError = this.#rotorWind = this.#secondVane = this.#secondVanes = 0
+    this.#yawError = this.#rotorWind = this.#vane2 = 0
   }
 }

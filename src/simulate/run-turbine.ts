@@ -2,12 +2,11 @@ import type { Inflow } from './inflow.ts'
 import { STOP, type Orders } from './operation.ts'
 import { COS_POWER_PER_DEG, cosPowerTable, powerTable, speedAtPower } from './power-curve.ts'
 import { PURPOSE, RandomStream } from './random.ts'
-import { RowMaker, STATE, type TurbineRows } from './rows.ts'
+import { BLOCK_S, RowMaker, Seconds, STATE, type TurbineRows } from './rows.ts'
 import { changesOf, scenarioSeconds, type FarmScenario, type TurbinePlan } from './scenario.ts'
 import { Reverting } from './weather.ts'
 
-/** Seconds in a block of random numbers, and between two values of the slower processes. */
-const BLOCK_S = 600
+/** Seconds between two values of the slower processes. */
 const NODE_S = 10
 /** Share of the variance of turbulence on each time scale; the rotor averages the fastest away, a vane does not. */
 const SHARE_5S = 0.35
@@ -72,6 +71,7 @@ export function runTurbine(
     northOffsetDeg: plan.northOffsetDeg,
     nacelleScale: scenario.nacelleScale,
     averageAcrossNorth: scenario.averageAcrossNorth,
+    secondVane: scenario.secondVaneOffsetDeg !== null,
   })
 
   const streamOf = (purpose: number) => new RandomStream(scenario.seed, purpose, plan.index)
@@ -107,7 +107,10 @@ export function runTurbine(
   let loggedShift = scenario.vaneLogged === 'beforeCorrection' ? plan.correctionDeg : 0
   const changes = changesOf(scenario, plan.index)
 
-  const { vaneNoiseDeg, anemometerNoiseMs, yawRateDegS, yawThresholdDeg, yawHoldS, yawStopDeg } = scenario
+  // Taken out of their objects once: scenarios differ in the order of their keys, and the loop below would be compiled anew.
+  const { vaneNoiseDeg, vaneSlowNoiseDeg, anemometerNoiseMs, anemometerSlowError } = scenario
+  const { directionSdDeg, localSpeedSd, localDirectionSdDeg, vaneLogged } = scenario
+  const { yawRateDegS, yawThresholdDeg, yawHoldS, yawStopDeg } = scenario
   const { anemometerGain, responsePerDeg } = plan
 
   const second = scenario.secondVaneOffsetDeg
@@ -158,6 +161,8 @@ export function runTurbine(
     yawMoves: 0,
     yawTravelDeg: 0,
   }
+  let yawMoves = 0
+  let yawTravel = 0
   let produced = 0,
     clearS = 0,
     clear = 0,
@@ -168,6 +173,12 @@ export function runTurbine(
     belowErrorSquares = 0,
     belowVane = 0
 
+  const { speedMs, directionDeg, turbulence: turbulences, densityFactor: densityFactors } = inflow
+  const { performance: performances } = inflow
+  const { stop: stops, limitKw: limitsKw } = orders
+  const block = new Seconds()
+  const { windMs, vaneDeg, secondVaneDeg, headingDeg, yawing: yawingNow, powerKw, pitchDeg, rotorRpm } = block
+  const { limitKw, state: states, yawErrorDeg, rotorWindMs } = block
   for (let blockS = 0; blockS < seconds; blockS += BLOCK_S) {
     streams[0]!.fillNormal(gustNoise)
     streams[1]!.fillNormal(veerNoise)
@@ -177,29 +188,27 @@ export function runTurbine(
       const endS = blockS + nodeS + NODE_S
       const minute = Math.floor((endS - NODE_S) / 60)
       const part = (endS - minute * 60) / 60
-      const base = inflow.speedMs[minute]! + part * (inflow.speedMs[minute + 1]! - inflow.speedMs[minute]!)
-      const baseTurn =
-        inflow.directionDeg[minute]! +
-        part * (inflow.directionDeg[minute + 1]! - inflow.directionDeg[minute]!)
-      const turbulence = inflow.turbulence[minute]!
-      const densityFactor = inflow.densityFactor[minute]!
-      const performance = inflow.performance[minute]!
-      const turnSd = (scenario.directionSdDeg * turbulence) / 0.1
+      const base = speedMs[minute]! + part * (speedMs[minute + 1]! - speedMs[minute]!)
+      const baseTurn = directionDeg[minute]! + part * (directionDeg[minute + 1]! - directionDeg[minute]!)
+      const turbulence = turbulences[minute]!
+      const densityFactor = densityFactors[minute]!
+      const performance = performances[minute]!
+      const turnSd = (directionSdDeg * turbulence) / 0.1
       const s60 = speed60.step()
       const s600 = speed600.step()
       const sHour = speedHour.step()
       const targetWind = Math.max(
         0.2,
-        base * (1 + scenario.localSpeedSd * sHour) * (1 + turbulence * (weight60 * s60 + weight600 * s600)),
+        base * (1 + localSpeedSd * sHour) * (1 + turbulence * (weight60 * s60 + weight600 * s600)),
       )
       const targetTurn =
         baseTurn +
-        scenario.localDirectionSdDeg * (link * sHour + apart * turnHour.step()) +
+        localDirectionSdDeg * (link * sHour + apart * turnHour.step()) +
         turnSd *
           (weight60 * (link * s60 + apart * turn60.step()) +
             weight600 * (link * s600 + apart * turn600.step()))
-      const targetVane = scenario.vaneSlowNoiseDeg * vaneSlow.step()
-      const targetError = scenario.anemometerSlowError * windSlow.step()
+      const targetVane = vaneSlowNoiseDeg * vaneSlow.step()
+      const targetError = anemometerSlowError * windSlow.step()
       const stepWind = (targetWind - nodeWind) / NODE_S
       const stepTurn = (targetTurn - nodeTurn) / NODE_S
       const stepVane = (targetVane - nodeVane) / NODE_S
@@ -207,14 +216,14 @@ export function runTurbine(
       const gustSize = weight5 * turbulence
       const veerSize = weight5 * turnSd
 
-      const stop = orders.stop[minute]!
-      if (orders.limitKw[minute]! !== limit) {
-        limit = orders.limitKw[minute]!
+      const stop = stops[minute]!
+      if (limitsKw[minute]! !== limit) {
+        limit = limitsKw[minute]!
         limitSpeed = speedAtPower(table, Math.min(limit, 0.97 * rated))
       }
       if (nextChange < changes.length && changes[nextChange]!.atS < endS) {
         // A correction that was entered is one that the vane before correction does not show.
-        if (changes[nextChange]!.entered && scenario.vaneLogged === 'beforeCorrection') {
+        if (changes[nextChange]!.entered && vaneLogged === 'beforeCorrection') {
           loggedShift += offset - changes[nextChange]!.toDeg
         }
         offset = changes[nextChange]!.toDeg
@@ -235,8 +244,7 @@ export function runTurbine(
         }
         if (!frozen) frozenAt = NaN
       }
-      const secondShift =
-        second === null ? 0 : second + loggedShift - scenario.vaneSlowNoiseDeg * secondSlow.step()
+      const secondShift = second === null ? 0 : second + loggedShift - vaneSlowNoiseDeg * secondSlow.step()
 
       for (let i = nodeS; i < nodeS + NODE_S; i++) {
         nodeWind += stepWind
@@ -259,7 +267,7 @@ export function runTurbine(
         }
         if (second !== null) {
           const other = flow + vaneNoiseDeg * secondNoise.normal() - secondShift
-          maker.addSecondVane(other - 360 * Math.floor((other + 180) * (1 / 360)))
+          secondVaneDeg[i] = other - 360 * Math.floor((other + 180) * (1 / 360))
         }
 
         const bend =
@@ -289,7 +297,7 @@ export function runTurbine(
           vaneMean = vane
         } else if (yawing !== 0) {
           heading += yawing * yawRateDegS
-          sums.yawTravelDeg += yawRateDegS
+          yawTravel += yawRateDegS
           if (vaneShort * yawing < yawStopDeg || stop === STOP.maintenance) {
             yawing = 0
             vaneMean = vaneShort
@@ -304,7 +312,7 @@ export function runTurbine(
           holdS = off ? holdS + 1 : 0
           if (holdS > yawHoldS && windMean > IDLE_MS - 0.4 && stop !== STOP.maintenance) {
             yawing = vaneMean > 0 ? 1 : -1
-            sums.yawMoves++
+            yawMoves++
           }
         }
 
@@ -380,24 +388,25 @@ export function runTurbine(
                 ? STATE.storm
                 : STATE.idle
         const moving = yawing !== 0 || untwisting ? 1 : 0
-        maker.add(
-          wind,
-          logged,
-          heading + nacelleShift,
-          moving,
-          power,
-          pitch,
-          rotorSpeed,
-          limit,
-          state,
-          error,
-          nodeWind,
-        )
+        windMs[i] = wind
+        vaneDeg[i] = logged
+        headingDeg[i] = heading + nacelleShift
+        yawingNow[i] = moving
+        powerKw[i] = power
+        pitchDeg[i] = pitch
+        rotorRpm[i] = rotorSpeed
+        limitKw[i] = limit
+        states[i] = state
+        yawErrorDeg[i] = error
+        rotorWindMs[i] = nodeWind
       }
     }
+    maker.addBlock(block)
   }
 
   const mwhPerKws = 1 / 3.6e6
+  sums.yawMoves = yawMoves
+  sums.yawTravelDeg = yawTravel
   sums.producedMwh = produced * mwhPerKws
   sums.clearHours = clearS / 3600
   sums.clearMwh = clear * mwhPerKws
