@@ -57,7 +57,7 @@ test('a process killed at any moment leaves all of a log or none, and everything
     }
   }
   expect(posted.size).toBeGreaterThan(5)
-})
+}, 180_000)
 
 async function readRowsOf(folder: string, store: Awaited<ReturnType<typeof openStore>>) {
   const names = await readdir(join(folder, 'segments'))

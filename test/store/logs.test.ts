@@ -347,7 +347,7 @@ test('any sequence of posts, deletions and merges answers as a plain list of bat
     }),
     { numRuns: 25 },
   )
-})
+}, 180_000)
 
 test('on a full disk a log is refused whole, what was stored is read, and posts go on when there is room again', async (context) => {
   const folder = await makeSmallDisk(16)
