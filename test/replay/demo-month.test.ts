@@ -1,0 +1,193 @@
+import { readFileSync } from 'node:fs'
+import { Value } from 'typebox/value'
+import { afterAll, beforeAll, expect, test } from 'vitest'
+import { ScoreSheet } from '../../src/sheet/index.ts'
+import {
+  DEMO_LOG,
+  DEMO_SITE,
+  DEMO_TRUTH,
+  demoRequest,
+  makeFolder,
+  openService,
+  removeFolder,
+  sha256,
+  turbineOf,
+  type Service,
+} from './farm.ts'
+
+let folder: string
+let service: Service
+/** With the response known to be 0, as the made-up month's README says it is. */
+let sheet: ScoreSheet
+/** With the response not known, as on a real farm. */
+let unsure: ScoreSheet
+
+beforeAll(async () => {
+  folder = await makeFolder()
+  service = await openService(folder)
+  sheet = await service.replays.oneShot(demoRequest({ assumedResponsePctPerDeg: 0 }))
+  unsure = await service.replays.oneShot(demoRequest())
+})
+afterAll(async () => {
+  await service.close()
+  await removeFolder(folder)
+})
+
+test('the three turbines that stand off the wind are found, the others are aligned', () => {
+  expect(sheet.turbines.map(({ turbine, verdict }) => `${turbine} ${verdict}`)).toEqual([
+    'Q01 aligned',
+    'Q02 aligned',
+    'Q03 aligned',
+    'Q04 offset',
+    'Q05 aligned',
+    'Q06 offset',
+    'Q07 aligned',
+    'Q08 offset',
+  ])
+})
+
+test('the intervals of the turbines that stand off hold the truth, and the estimates are near it', () => {
+  for (const name of ['Q04', 'Q06', 'Q08']) {
+    const truth = DEMO_TRUTH.turbines.find(({ turbine }) => turbine === name)!
+    const { interval95Deg, standingInterval95Deg, estimateDeg, standingMisalignmentDeg } = turbineOf(
+      sheet,
+      name,
+    ).staticOffset
+    expect(interval95Deg[0], name).toBeLessThan(truth.offsetDeg)
+    expect(interval95Deg[1], name).toBeGreaterThan(truth.offsetDeg)
+    expect(standingInterval95Deg[0], name).toBeLessThan(truth.yawErrorMeanDeg)
+    expect(standingInterval95Deg[1], name).toBeGreaterThan(truth.yawErrorMeanDeg)
+    // A month of one turbine tells 1 to 1.5 degrees at 95 %.
+    expect(Math.abs(estimateDeg! - truth.offsetDeg), name).toBeLessThan(1.5)
+    expect(Math.abs(standingMisalignmentDeg! - truth.yawErrorMeanDeg), name).toBeLessThan(1.5)
+  }
+})
+
+test('the energy account is that of the simulation', () => {
+  for (const truth of DEMO_TRUTH.turbines) {
+    const { producedMwh, static: loss } = turbineOf(sheet, truth.turbine).energyLoss
+    // Rows that by status do not run, or lost a cell, are not counted: up to 0.9 % of this month.
+    expect(producedMwh! / truth.producedMwh - 1, truth.turbine).toBeLessThan(0.001)
+    expect(producedMwh! / truth.producedMwh - 1, truth.turbine).toBeGreaterThan(-0.01)
+    if (turbineOf(sheet, truth.turbine).verdict !== 'offset') continue
+    expect(loss.windowInterval95Mwh[0], truth.turbine).toBeLessThan(truth.lostStaticMwh)
+    expect(loss.windowInterval95Mwh[1], truth.turbine).toBeGreaterThan(truth.lostStaticMwh)
+  }
+})
+
+test('every posted row is in the account, and every accepted row has one reason or is used', () => {
+  const { log } = DEMO_TRUTH
+  expect(sheet.rows.received).toBe(log.dataLines)
+  expect(sheet.rows.received).toBe(sheet.rows.accepted + sheet.rows.duplicate + sheet.rows.rejected)
+  expect(sheet.rows.duplicate).toBe(log.repeated)
+  expect(sheet.rows.rejected).toBe(log.cut + log.unreadable)
+  const accepted = sheet.turbines.reduce((sum, { rows }) => sum + rows.accepted, 0)
+  expect(accepted).toBe(sheet.rows.accepted)
+  for (const { turbine, rows, staticOffset } of sheet.turbines) {
+    const aside = rows.setAside.reduce((sum, one) => sum + one.rows, 0)
+    expect(rows.used + aside, turbine).toBe(rows.accepted)
+    expect(staticOffset.rows, turbine).toBe(rows.used)
+  }
+})
+
+test('the hours in which one turbine was held at 900 kW are set aside by status, by set-point, or by the site file', async () => {
+  // 12 March, 09:00 to 15:30: 39 rows with the status `limited`, which the site file does not count as running.
+  const exclude = [{ turbine: 'Q02', from: '2026-03-12T09:00:00Z', to: '2026-03-12T15:30:00Z' }]
+  const scored = (change: object) =>
+    service.replays.oneShot(
+      demoRequest({ assumedResponsePctPerDeg: 0 }, { site: { ...DEMO_SITE, ...change } }),
+    )
+  const [left, bySetPoint] = [await scored({ exclude }), await scored({ runningStatus: ['run', 'limited'] })]
+  const rows = (one: ScoreSheet, turbine: string, name: string): number =>
+    turbineOf(one, turbine).rows.setAside.find(({ reason }) => reason === name)?.rows ?? 0
+  expect(rows(left, 'Q02', 'excluded')).toBe(39)
+  expect(rows(sheet, 'Q02', 'not-running') - rows(left, 'Q02', 'not-running')).toBe(39)
+  expect(rows(sheet, 'Q02', 'not-running') - rows(bySetPoint, 'Q02', 'not-running')).toBe(39)
+  // Rows in which the nacelle turned are told as transitions first.
+  const limited = rows(bySetPoint, 'Q02', 'limited') - rows(sheet, 'Q02', 'limited')
+  expect(limited).toBeGreaterThan(20)
+  expect(limited).toBeLessThanOrEqual(39)
+  for (const { turbine } of sheet.turbines) {
+    if (turbine !== 'Q02')
+      expect(turbineOf(left, turbine).rows, turbine).toEqual(turbineOf(sheet, turbine).rows)
+  }
+})
+
+test('the worklist names who stands off, the costliest first, and the number to enter', () => {
+  expect(sheet.worklist.map(({ turbine }) => turbine)).toEqual(['Q06', 'Q04', 'Q08'])
+  for (const entry of sheet.worklist) {
+    const { standingMisalignmentDeg } = turbineOf(sheet, entry.turbine).staticOffset
+    expect(entry.addToVaneDeg).toBe(standingMisalignmentDeg)
+    expect(entry.cautions.length).toBeGreaterThan(0)
+  }
+})
+
+test('the advice turns the nacelle the right way: a negative misalignment counter-clockwise', () => {
+  expect(turbineOf(sheet, 'Q06').advice.join(' ')).toMatch(
+    /further counter-clockwise.*zero mark of the vane [\d.]+ degrees clockwise/s,
+  )
+  expect(turbineOf(sheet, 'Q04').advice.join(' ')).toMatch(
+    /further clockwise.*zero mark of the vane [\d.]+ degrees counter-clockwise/s,
+  )
+  expect(turbineOf(sheet, 'Q01').advice).toEqual(['Nothing to change.'])
+})
+
+test('scores fall with the misalignment', () => {
+  const scores = Object.fromEntries(sheet.turbines.map(({ turbine, score }) => [turbine, score!]))
+  expect(scores['Q06']).toBeLessThan(scores['Q04']!)
+  expect(scores['Q04']).toBeLessThan(scores['Q08']!)
+  for (const aligned of ['Q01', 'Q02', 'Q03', 'Q05', 'Q07'])
+    expect(scores['Q08'], aligned).toBeLessThan(scores[aligned]!)
+})
+
+test('with a response that is not known only a large misalignment is settled', () => {
+  for (const { turbine, verdict, score, advice, staticOffset } of unsure.turbines) {
+    const [low, high] = staticOffset.standingInterval95Deg as [number, number]
+    expect(high - low, turbine).toBeGreaterThan(2 * 9) // 9 to 13 degrees either way
+    expect(high - low, turbine).toBeLessThan(2 * 13)
+    expect(verdict, turbine).toBe('undetermined')
+    expect(score, turbine).toBeNull()
+    expect(advice.join(' ').length, turbine).toBeGreaterThan(0)
+  }
+  expect(unsure.worklist).toEqual([])
+  const response = unsure.fleet.anemometerResponsePerDeg['M1']!
+  expect(response.estimate).toBeNull()
+  // 1.96 x 0.15 % per degree, the setting.
+  expect(response.interval95[1]).toBeCloseTo(1.96 * 0.0015, 5)
+  expect(sheet.fleet.anemometerResponsePerDeg['M1']).toMatchObject({ estimate: 0, interval95: [0, 0] })
+})
+
+test('the sheet fits its schema once it has been through JSON', () => {
+  for (const one of [sheet, unsure]) {
+    const read: unknown = JSON.parse(JSON.stringify(one))
+    expect([...Value.Errors(ScoreSheet, read)]).toEqual([])
+    expect(Value.Check(ScoreSheet, read)).toBe(true)
+  }
+})
+
+test('the kept sheet is the answer, byte for byte', async () => {
+  const record = await service.replays.get(sheet.replay)
+  expect(record.sheet).toBe(JSON.stringify(sheet))
+  expect(record).toMatchObject({ state: 'done', site: 'quern-hill', problem: null })
+  expect(record.finishedMs).toBeGreaterThan(record.createdMs)
+})
+
+test('the provenance holds what it takes to make the sheet again', () => {
+  expect(sheet.provenance).toMatchObject({
+    version: '0.0.0-test',
+    seed: 1,
+    settings: { exponent: 3, assumedResponsePctPerDeg: 0, seed: 1 },
+    inputs: [
+      {
+        name: 'quern-hill-2026-03.csv.gz',
+        sha256: sha256(readFileSync(DEMO_LOG)),
+        rows: DEMO_TRUTH.log.dataLines,
+      },
+    ],
+  })
+  expect(sheet.window).toEqual({
+    from: '2026-03-01T00:00:00.000Z',
+    to: '2026-04-01T00:00:00.000Z',
+    intervalS: 600,
+  })
+})
