@@ -1,4 +1,5 @@
-import { rm } from 'node:fs/promises'
+import { mkdir, rm } from 'node:fs/promises'
+import { join } from 'node:path'
 import { InputError } from '../errors.ts'
 import { stageLog, type LogLimits, type StagedLog } from '../log/index.ts'
 import { readRows, type Store } from '../store/index.ts'
@@ -25,9 +26,12 @@ export function createReplays(parts: ReplayParts): Replays {
     onProgress: (progress: Progress) => void = () => undefined,
   ) => {
     const id = parts.newId()
-    const staged = await stage(parts, request, onProgress)
-    await store.replays.begin({ id, site: request.site.site ?? null, createdMs: parts.clock() })
+    // A folder of its own: the log reader's working files have fixed names, and replays run side by side.
+    const folder = join(store.tempFolder, `replay-${id}`)
+    await mkdir(folder)
     try {
+      const staged = await stage(parts, folder, request, onProgress)
+      await store.replays.begin({ id, site: request.site.site ?? null, createdMs: parts.clock() })
       checkChannels(staged)
       const farm = await readRows(store.scans, staged.path)
       onProgress({ stage: 'scoring', share: 0 })
@@ -56,8 +60,7 @@ export function createReplays(parts: ReplayParts): Replays {
       await store.replays.remove(id) // the caller has the error in hand; a replay that never was is not listed
       throw error
     } finally {
-      await rm(staged.path, { force: true })
-      if (staged.rejectedPath !== null) await rm(staged.rejectedPath, { force: true })
+      await rm(folder, { recursive: true, force: true })
     }
   }
 
@@ -78,6 +81,7 @@ export function createReplays(parts: ReplayParts): Replays {
 
 async function stage(
   parts: ReplayParts,
+  folder: string,
   request: OneShotRequest,
   onProgress: (progress: Progress) => void,
 ): Promise<StagedLog> {
@@ -90,7 +94,7 @@ async function stage(
       ...(site.timezone === undefined ? {} : { defaultTimezone: site.timezone }),
       ...(site.stamp === undefined ? {} : { defaultStamp: site.stamp }),
     },
-    { scans: parts.store.scans, folder: parts.store.tempFolder, limits: parts.limits },
+    { scans: parts.store.scans, folder, limits: parts.limits },
   )
 }
 
