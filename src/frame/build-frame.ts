@@ -1,4 +1,4 @@
-import { wrap180, wrap360 } from '../kernel/angle/index.ts'
+import { wrap360 } from '../kernel/angle/index.ts'
 import { medianOf } from '../kernel/stats/index.ts'
 import {
   airDensity,
@@ -10,9 +10,11 @@ import {
   ratedPowerFrom,
 } from '../kernel/wind/index.ts'
 import type { ScoringSettings, SiteFile, TurbineSetup } from '../sheet/index.ts'
+import { acrossNorth, type AcrossNorth, type LoggedAngle } from './across-north.ts'
 import { buildCalendar, type Calendar } from './calendar.ts'
 import type { Frame, TurbineColumns, TurbineFrame } from './frame.ts'
 import { setAsideBeforeCurve, setAsideByRange } from './set-aside.ts'
+import { conventionalVane, type ConventionalVane } from './vane-convention.ts'
 
 /** Share of rated power up to which rows are used: the knee itself answers less and less to the wind. */
 const KNEE_SHARE = 0.8
@@ -67,18 +69,17 @@ function buildTurbine(
   const missing = new Float64Array(n).fill(NaN)
   const windSpeed = numbers['wind_speed'] ?? missing
   const power = numbers['power'] ?? missing
-  const sign = setup.vane?.sign ?? 1
-  const vane = (numbers['vane'] ?? missing).map((angle) => wrap180(sign * angle))
-  const nacelle = numbers['nacelle_position']
+  const angles = anglesOf(columns, setup, power, request.intervalS * 1000)
+  const { vane, nacelle, windDirection } = angles
   const indicatedDirection = nacelle
     ? nacelle.map((position, i) => wrap360(position + vane[i]!))
-    : (numbers['wind_direction'] ?? missing)
+    : (windDirection?.map(wrap360) ?? missing)
   const air = airOf(columns, setup)
   const normalised = windSpeed.map((speed, i) =>
     Number.isNaN(air.density[i]!) ? speed : normalisedSpeed(speed, air.density[i]!),
   )
   const rated = ratedPowerOf(power, setup, request.ratedPowerKw)
-  const notes = [...air.notes]
+  const notes = [...angles.notes, ...air.notes]
 
   const { reason, running, limited } = setAsideBeforeCurve(
     {
@@ -95,7 +96,8 @@ function buildTurbine(
       nacellePosition: nacelle,
       nacelleMin: numbers['nacelle_position_min'],
       nacelleMax: numbers['nacelle_position_max'],
-      direction: nacelle || numbers['wind_direction'] ? indicatedDirection : undefined,
+      direction: nacelle || windDirection ? indicatedDirection : undefined,
+      averagedAcrossNorth: angles.averaged,
       status: texts['status'],
       runningStatus: request.site.runningStatus,
       availability: texts['availability_category'],
@@ -152,7 +154,10 @@ function buildTurbine(
     normalisedSpeed: normalised,
     turbulence,
     vane,
-    vaneSd: numbers['vane_sd'] ?? missing,
+    vaneSd: angles.convention.vaneSd,
+    vaneMin: angles.convention.vaneMin,
+    vaneMax: angles.convention.vaneMax,
+    averagedAcrossNorth: angles.counts,
     power,
     nacellePosition: nacelle ?? missing,
     indicatedDirection,
@@ -165,6 +170,83 @@ function buildTurbine(
     windMaxMs,
     notes,
   }
+}
+
+interface Angles {
+  readonly convention: ConventionalVane
+  /** NaN where it was averaged across north, or rests on a reading that was. */
+  readonly vane: Float64Array
+  readonly nacelle: Float64Array | undefined
+  readonly windDirection: Float64Array | undefined
+  /** 1 = one of the row's angles was averaged across the seam of its scale. */
+  readonly averaged: Uint8Array
+  readonly counts: AcrossNorth['counts']
+  readonly notes: readonly string[]
+}
+
+/** Vane, nacelle and wind direction in one convention, without readings that are no direction. */
+function anglesOf(
+  columns: TurbineColumns,
+  setup: TurbineSetup,
+  power: Float64Array,
+  intervalMs: number,
+): Angles {
+  const { numbers } = columns
+  const convention = conventionalVane({
+    vane: numbers['vane'],
+    vaneMin: numbers['vane_min'],
+    vaneMax: numbers['vane_max'],
+    vaneSd: numbers['vane_sd'],
+    windDirection: numbers['wind_direction'],
+    nacellePosition: numbers['nacelle_position'],
+    power,
+    sign: setup.vane?.sign ?? 1,
+    centre: setup.vane?.centre,
+  })
+  const { flags, counts } = acrossNorth({
+    time: columns.time,
+    intervalMs,
+    power,
+    vane: convention.vane,
+    loggedVane: convention.source === 'vane' ? loggedAngle(columns, 'vane') : undefined,
+    vaneCentreDeg: convention.centreDeg,
+    nacellePosition: loggedAngle(columns, 'nacelle_position'),
+    windDirection: loggedAngle(columns, 'wind_direction'),
+  })
+  const without = (angle: Float64Array, ...bad: Uint8Array[]): Float64Array =>
+    angle.map((value, i) => (bad.some((flag) => flag[i] === 1) ? NaN : value))
+  const worked = convention.source === 'wind direction less nacelle position'
+  return {
+    convention,
+    vane: worked
+      ? without(convention.vane, flags.nacelle_position, flags.wind_direction)
+      : without(convention.vane, flags.vane),
+    nacelle: numbers['nacelle_position'] && without(numbers['nacelle_position'], flags.nacelle_position),
+    windDirection: numbers['wind_direction'] && without(numbers['wind_direction'], flags.wind_direction),
+    averaged: flags.vane.map((flag, i) => flag | flags.nacelle_position[i]! | flags.wind_direction[i]!),
+    counts,
+    notes: [...convention.notes, ...acrossNorthNotes(counts)],
+  }
+}
+
+function loggedAngle(columns: TurbineColumns, channel: string): LoggedAngle | undefined {
+  const mean = columns.numbers[channel]
+  if (!mean) return undefined
+  return {
+    mean,
+    sd: columns.numbers[`${channel}_sd`],
+    min: columns.numbers[`${channel}_min`],
+    max: columns.numbers[`${channel}_max`],
+  }
+}
+
+function acrossNorthNotes(counts: AcrossNorth['counts']): string[] {
+  return Object.entries(counts)
+    .filter(([, rows]) => rows > 0)
+    .map(
+      ([channel, rows]) =>
+        `${channel} was averaged across the end of its scale in ${rows} rows: the logger takes arithmetic means of angles; these rows are set aside`,
+    )
 }
 
 /** Density row by row. A gap in temperature or pressure takes the median of the log, so that one lost cell moves no row by percents. */

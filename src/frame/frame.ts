@@ -1,5 +1,6 @@
 import type { MeasuredCurve } from '../kernel/wind/index.ts'
 import type { SetAsideReason, TurbineSetup } from '../sheet/index.ts'
+import type { AcrossNorthChannel } from './across-north.ts'
 import type { Calendar } from './calendar.ts'
 
 /** Clean rows of one turbine as they come from storage, sorted by time. */
@@ -38,12 +39,17 @@ export interface TurbineFrame {
   readonly vane: Float64Array
   /** SD of the vane inside the interval, degrees. */
   readonly vaneSd: Float64Array
+  /** Lowest and highest vane inside the interval, turned as the vane is, degrees; may run beyond half a turn. */
+  readonly vaneMin: Float64Array
+  readonly vaneMax: Float64Array
   /** kW. */
   readonly power: Float64Array
-  /** As read, degrees; wrapped, signed or wound. */
+  /** As read, degrees; wrapped, signed or wound. NaN where it was averaged across the end of its scale. */
   readonly nacellePosition: Float64Array
   /** N + v, [0, 360); off the true direction by north offset and vane offset. */
   readonly indicatedDirection: Float64Array
+  /** Readings that were averaged across the end of their scale, by channel: NaN in the frame, their rows set aside. */
+  readonly averagedAcrossNorth: Readonly<Record<AcrossNorthChannel, number>>
   readonly densitySource: string
   /** 0 = used for the static offset, else 1 + index into SET_ASIDE_REASONS. */
   readonly reason: Uint8Array

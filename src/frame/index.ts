@@ -1,3 +1,4 @@
+export { ACROSS_NORTH_CHANNELS, type AcrossNorthChannel } from './across-north.ts'
 export * from './build-frame.ts'
 export * from './calendar.ts'
 export * from './frame.ts'

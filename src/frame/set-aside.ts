@@ -34,6 +34,8 @@ export interface SetAsideInput {
   readonly nacelleMax?: Float64Array | undefined
   /** Any direction that turns with the wind: N + v, or a logged wind direction. */
   readonly direction?: Float64Array | undefined
+  /** 1 = an angle of the row was averaged across the end of its scale. */
+  readonly averagedAcrossNorth?: Uint8Array | undefined
   readonly status?: readonly (string | null)[] | undefined
   readonly runningStatus?: readonly string[] | undefined
   readonly availability?: readonly (string | null)[] | undefined
@@ -70,13 +72,17 @@ export function setAsideBeforeCurve(input: SetAsideInput, settings: ScoringSetti
   const usualPitch = input.pitch ? usualPitchBySpeed(input, stopped) : undefined
 
   for (let i = 0; i < n; i++) {
-    if (Number.isNaN(input.windSpeed[i]!) || Number.isNaN(input.vane[i]!) || Number.isNaN(input.power[i]!)) {
-      set(i, 'missing-channel')
-    }
+    const averaged = input.averagedAcrossNorth?.[i] === 1
+    const hasVane = !Number.isNaN(input.vane[i]!)
+    const hasOthers = !Number.isNaN(input.windSpeed[i]!) && !Number.isNaN(input.power[i]!)
+    if (!hasOthers || !(hasVane || averaged)) set(i, 'missing-channel')
+    if (averaged) set(i, 'averaged-across-north')
     const time = input.time[i]!
-    if (input.excluded.some(([from, to]) => time + input.intervalMs > from && time < to)) set(i, 'excluded')
+    const excluded = input.excluded.some(([from, to]) => time + input.intervalMs > from && time < to)
+    if (excluded) set(i, 'excluded')
     if (stopped[i] === 1) set(i, 'not-running')
-    if (reason[i] === 0) running[i] = 1
+    // A bad nacelle reading leaves vane and power as they are: such a row still counts for the yaw error.
+    if (hasOthers && hasVane && !excluded && stopped[i] === 0) running[i] = 1
 
     const previous = before[i]!
     const next = after[i]!

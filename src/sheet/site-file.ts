@@ -44,6 +44,12 @@ export const TurbineSetup = Type.Object(
                 '1: positive = wind from clockwise of the axis, seen from above; -1: the reverse. Stated here it counts as checked',
             }),
           ),
+          centre: Type.Optional(
+            Type.Union([Type.Literal(0), Type.Literal(180)], {
+              description:
+                'what the vane reads when the rotor faces the wind; default: told from the rows that produce',
+            }),
+          ),
         },
         { additionalProperties: false },
       ),
