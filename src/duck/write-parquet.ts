@@ -2,9 +2,10 @@ import type { Connection, SqlValue } from './connection.ts'
 import { quoteText } from './quote.ts'
 
 /**
- * Writes the rows of a query to a Parquet file (zstd), in the order of the query.
+ * Writes the rows of a query to a Parquet file, in the order of the query.
  *
  * @param query  SELECT without a final semicolon.
+ * @param compression  zstd for what is kept; snappy, larger and quicker to write, for what is read once.
  * @returns rows written. The file is not synced: the caller does that before making it known.
  */
 export async function writeParquet(
@@ -12,6 +13,10 @@ export async function writeParquet(
   query: string,
   path: string,
   values?: readonly SqlValue[],
+  compression: 'zstd' | 'snappy' = 'zstd',
 ): Promise<number> {
-  return connection.run(`COPY (${query}) TO ${quoteText(path)} (FORMAT parquet, COMPRESSION zstd)`, values)
+  return connection.run(
+    `COPY (${query}) TO ${quoteText(path)} (FORMAT parquet, COMPRESSION ${compression})`,
+    values,
+  )
 }

@@ -8,17 +8,16 @@ import { convertSql } from './units.ts'
 export interface CleanFile {
   readonly path: string
   readonly delimiter: string
-  readonly fields: number
   readonly decimalComma: boolean
   readonly maxLineBytes: number
   /** Position of the turbine's name; -1 = `turbineName` in all rows. */
   readonly turbine: number
   readonly turbineName: string
   readonly channels: readonly MappedColumn[]
-  /** Set when a line is not one row: then `turbine`, `fields` and `channels` speak of the rows made of the lines. */
+  /** Set when a line is not one row: then `turbine` and `channels` speak of the rows made of the lines. */
   readonly shape: SeriesShape | null
-  /** Fields of a line. */
-  readonly lineFields: number
+  /** Positions of the fields of the log that the file holds: c5 is the field in position 5. */
+  readonly kept: readonly number[]
 }
 
 /** Words that stand for an empty cell, in lower case. */
@@ -47,7 +46,7 @@ const isText = (channel: string) => (TEXT_CHANNELS as readonly string[]).include
 /** SQL of the file with all cells as text: line, time, c0, c1, ... Nothing is detected, nothing is skipped. */
 export function cellsSql(file: CleanFile): string {
   const columns = ["'line': 'BIGINT'", "'time': 'BIGINT'"]
-  for (let i = 0; i < file.lineFields; i++) columns.push(`'c${i}': 'VARCHAR'`)
+  for (const i of file.kept) columns.push(`'c${i}': 'VARCHAR'`)
   const lines =
     `read_csv(${quoteText(file.path)}, auto_detect = false, header = false, delim = ${quoteText(file.delimiter)}, ` +
     `quote = '', escape = '', comment = '', new_line = '\\n', nullstr = '', strict_mode = true, ` +
@@ -55,14 +54,8 @@ export function cellsSql(file: CleanFile): string {
   return file.shape ? seriesCellsSql(file.shape, lines) : lines
 }
 
-/** SQL of the rows with canonical columns: src, line, time, turbine, then `channels`, NULL where this file lacks one; `withText`
- * adds `text`, the cells with commas between. */
-export function rowsSql(
-  file: CleanFile,
-  source: number,
-  channels: readonly string[],
-  withText = false,
-): string {
+/** SQL of the rows with canonical columns: src, line, time, turbine, then `channels`, NULL where this file lacks one. */
+export function rowsSql(file: CleanFile, source: number, channels: readonly string[]): string {
   const list = channels.map((channel) => {
     const column = file.channels.find((one) => one.takenFor === channel)
     const name = quoteIdentifier(channel)
@@ -72,10 +65,6 @@ export function rowsSql(
     const value = valueSql(file, column)
     return `CASE WHEN ${value} BETWEEN ${min} AND ${max} THEN ${value} END AS ${name}`
   })
-  if (withText) {
-    const cells = Array.from({ length: file.fields }, (_, k) => `coalesce(c${k}, '')`)
-    list.push(`concat_ws(',', ${cells.join(', ')}) AS text`)
-  }
   const turbine = file.turbine < 0 ? quoteText(file.turbineName) : `trim(c${file.turbine})`
   return `SELECT ${[`${source} AS src`, 'line', 'time', `${turbine} AS turbine`, ...list].join(', ')} FROM ${cellsSql(file)}`
 }

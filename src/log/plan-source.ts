@@ -8,10 +8,10 @@ import type { ReadableSource } from './parquet-source.ts'
 import type { ScanPlan } from './row-scanner.ts'
 import { dateClockTime, dayClockTime, stampTime, type RowTime } from './row-time.ts'
 import { sourceBytes } from './source-bytes.ts'
+import { sentLines } from './sent-lines.ts'
 import { longSeries } from './series-shape.ts'
 import { sniffStamps, type StampFormat } from './stamp-format.ts'
 import { dateReader } from './stamp-reader.ts'
-import { textLines } from './text-lines.ts'
 
 const MOST_TAGS = 20_000
 const SAMPLE_BYTES = 256 * 1024
@@ -71,6 +71,7 @@ export async function planSource(
       delimiter: dialect.delimiter,
       jsonKeys: dialect.form === 'json' ? new Map(dialect.header.map((key, i) => [key, i])) : null,
       fields: dialect.header.length,
+      kept: keptFields(map),
       headerLine: dialect.headerLine,
       safe: dialect.hasQuotes,
       time,
@@ -169,6 +170,17 @@ async function withTags(source: SampledSource, map: ColumnMap, turbineName: stri
   return { ...map, columns: [...own, ...series.columns], channels: series.channels, series }
 }
 
+/** The fields that are read on: turbine and channels; the time is written anew, and what has no use is left behind. */
+function keptFields(map: ColumnMap): number[] {
+  const shape = map.series?.shape
+  const own = map.channels.map((column) => column.index)
+  if (shape?.kind === 'wide')
+    own.splice(0, own.length, ...shape.turbines.flatMap(({ cells }) => cells.filter((cell) => cell !== null)))
+  if (shape?.kind === 'long') own.splice(0, own.length, shape.tag, shape.value)
+  if (map.turbine >= 0) own.push(map.turbine)
+  return [...new Set(own)].sort((a, b) => a - b)
+}
+
 /** Visits the cells of one column of the whole file, for the few questions that its beginning cannot answer. */
 async function visitCells(
   source: SampledSource,
@@ -176,18 +188,11 @@ async function visitCells(
   visit: (cell: string) => void,
 ): Promise<void> {
   const { dialect, limits, encoding } = source
-  const { chunks } = await sourceBytes(source, limits)
-  const position = { lines: 0 }
   const keys = new Map(dialect.header.map((key, i) => [key, i]))
-  for await (const slab of textLines(source.name, toUtf8(chunks, encoding), limits.maxLineBytes, position)) {
-    const lines = slab.toString('utf8').split('\n')
-    lines.pop()
-    for (const line of lines) {
-      position.lines++
-      if (position.lines <= dialect.headerLine) continue
-      const cell = lineFields(dialect, keys, line)?.[column]?.trim()
-      if (cell !== undefined && cell !== '') visit(cell)
-    }
+  for await (const { line, text } of sentLines(source, limits, encoding)) {
+    if (line <= dialect.headerLine) continue
+    const cell = lineFields(dialect, keys, text)?.[column]?.trim()
+    if (cell !== undefined && cell !== '') visit(cell)
   }
 }
 

@@ -37,6 +37,8 @@ export interface ScanPlan {
   /** Keys of the objects when every line is one; null for delimited lines. */
   readonly jsonKeys: ReadonlyMap<string, number> | null
   readonly fields: number
+  /** Positions of the fields that are written on, ascending. */
+  readonly kept: readonly number[]
   readonly headerLine: number
   readonly safe: boolean
   readonly time: RowTime
@@ -50,7 +52,8 @@ export interface ScanPlan {
 }
 
 /**
- * Reads lines and writes clean ones: line number, epoch ms, then the fields as sent, with a delimiter that no field contains.
+ * Reads lines and writes clean ones: line number, epoch ms, then those fields that
+ * are read on, as sent, with a delimiter that no field contains.
  * Lines that are no row are counted or rejected with their reason. Works on bytes: this loop sees every byte of every log.
  */
 export class RowScanner implements LinePosition {
@@ -72,6 +75,7 @@ export class RowScanner implements LinePosition {
   private readonly post: PostState
   private readonly kinds = new Uint8Array(256)
   private readonly ends: Int32Array
+  private readonly kept: Int32Array
   private readonly outByte: number
   private readonly inByte: number
   private out = Buffer.allocUnsafe(2 * 1024 ** 2)
@@ -86,6 +90,7 @@ export class RowScanner implements LinePosition {
     this.outDelimiter = plan.safe ? SAFE_DELIMITER : plan.delimiter
     this.outByte = this.outDelimiter.charCodeAt(0)
     this.ends = new Int32Array(plan.fields + 1)
+    this.kept = Int32Array.from(plan.kept)
     this.emptyCells = new Float64Array(plan.fields)
     this.kinds[this.inByte] = DELIMITER
     this.kinds[LF] = LINE_END
@@ -153,7 +158,7 @@ export class RowScanner implements LinePosition {
     else if (this.plan.jsonKeys) this.jsonLine(bytes, start, end, this.plan.jsonKeys)
     else if (quotes) this.quotedLine(bytes, start, end)
     else if (n !== this.plan.fields) this.reject(bytes, start, end, 'field-count')
-    else this.row(bytes, start, end, this.inByte, bytes, start, end)
+    else this.row(bytes, start, end, bytes, start, end)
   }
 
   /** A line with quotes is taken apart as text and written anew; these lines are slower by an order of magnitude. */
@@ -189,14 +194,13 @@ export class RowScanner implements LinePosition {
       at += Buffer.byteLength(field) + 1
       this.ends[i] = at
     })
-    this.row(clean, 0, clean.length, this.outByte, bytes, start, end)
+    this.row(clean, 0, clean.length, bytes, start, end)
   }
 
   private row(
     bytes: Buffer,
     start: number,
     end: number,
-    delimiter: number,
     sent: Buffer,
     sentStart: number,
     sentEnd: number,
@@ -224,7 +228,7 @@ export class RowScanner implements LinePosition {
       return
     }
     this.note(turbine!, timeMs)
-    this.emit(bytes, start, end, delimiter, timeMs)
+    this.emit(bytes, start, end, timeMs)
   }
 
   private note(turbine: TurbineTrack, timeMs: number): void {
@@ -281,11 +285,11 @@ export class RowScanner implements LinePosition {
     return found
   }
 
-  private emit(bytes: Buffer, start: number, end: number, delimiter: number, timeMs: number): void {
-    const { ends, emptyCells, outByte } = this
-    const length = end - start
-    if (this.used + length + 64 > this.out.length) {
-      const grown = Buffer.allocUnsafe(Math.max(this.out.length * 2, this.used + length + 64))
+  private emit(bytes: Buffer, start: number, end: number, timeMs: number): void {
+    const { ends, kept, emptyCells, outByte } = this
+    const most = end - start + 64
+    if (this.used + most > this.out.length) {
+      const grown = Buffer.allocUnsafe(Math.max(this.out.length * 2, this.used + most))
       this.out.copy(grown, 0, 0, this.used)
       this.out = grown
     }
@@ -293,16 +297,15 @@ export class RowScanner implements LinePosition {
     let at = writeDigits(out, this.used, this.lines)
     out[at++] = outByte
     at = writeTime(out, at, timeMs)
-    out[at++] = outByte
-    const shift = at - start
-    for (let i = start; i < end; i++) out[i + shift] = bytes[i]!
-    if (delimiter !== outByte) for (let k = 0; k < ends.length - 2; k++) out[ends[k]! + shift] = outByte
-    let before = start
-    for (let k = 0; k < emptyCells.length; k++) {
-      if (ends[k] === before) emptyCells[k]!++
-      before = ends[k]! + 1
+    for (let k = 0; k < kept.length; k++) {
+      const field = kept[k]!
+      const from = field === 0 ? start : ends[field - 1]! + 1
+      const to = ends[field]!
+      out[at++] = outByte
+      if (from === to) emptyCells[field]!++
+      else if (to - from > 48) at += bytes.copy(out, at, from, to)
+      else for (let i = from; i < to; i++) out[at++] = bytes[i]!
     }
-    at += length
     out[at++] = LF
     this.used = at
   }

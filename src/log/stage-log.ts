@@ -11,6 +11,7 @@ import { readableSource } from './parquet-source.ts'
 import { planSource, type SourcePlan } from './plan-source.ts'
 import { Rejects } from './rejects.ts'
 import { NeedsSafeDelimiter, RowScanner, type PostState } from './row-scanner.ts'
+import { sentLines } from './sent-lines.ts'
 import { sourceBytes } from './source-bytes.ts'
 import { cellsSql, rowsSql } from './clean-file.ts'
 import { commonestStep } from './row-clock.ts'
@@ -99,8 +100,8 @@ async function scanAll(
       name: plan.source.name,
       path,
       delimiter: scanner.outDelimiter,
-      lineFields: plan.scan.fields,
-      fields: series ? series.channels.length + 1 : plan.scan.fields,
+      kept: plan.scan.kept,
+      sentLines: () => sentLines(plan.source, parts.limits, sniffEncoding(plan.firstBytes)),
       shape: series?.shape ?? null,
       decimalComma: plan.dialect.decimalComma,
       maxLineBytes: parts.limits.maxLineBytes,

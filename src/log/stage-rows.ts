@@ -10,11 +10,14 @@ import {
 import { cellCountsSql, rowsSql, type CleanFile } from './clean-file.ts'
 import type { Rejects } from './rejects.ts'
 import { commonestStep, flushSteps } from './row-clock.ts'
+import type { SentLine } from './sent-lines.ts'
 import type { PostState } from './row-scanner.ts'
 import { snapSql, type TimeGrid } from './time-grid.ts'
 
 export interface NamedCleanFile extends CleanFile {
   readonly name: string
+  /** Reads the lines of the log again, as sent. */
+  sentLines(): AsyncGenerator<SentLine>
 }
 
 /** What became of the cells of one number column. */
@@ -73,7 +76,7 @@ export async function stageRows(
     post.sorted ? '' : 'ORDER BY turbine, time',
   ].join(' ')
   const path = join(parts.folder, 'staged.parquet')
-  const accepted = await writeParquet(connection, query, path)
+  const accepted = await writeParquet(connection, query, path, undefined, 'snappy')
   let kept = accepted
   if (post.mayRepeat) {
     const [counted] = await connection.records(`SELECT count(*) AS n FROM ${rows} WHERE ${hasValue}`)
@@ -114,19 +117,34 @@ async function rejectEmpty(
   for (const [i, file] of files.entries()) {
     const own = channels.filter((channel) => file.channels.some((column) => column.takenFor === channel))
     const isEmpty = own.map((channel) => `${quoteIdentifier(channel)} IS NULL`).join(' AND ')
-    // The text as sent, but for quotes and delimiters, which the clean file does not keep.
-    const source = `(SELECT line, text FROM (${rowsSql(file, i, own, true)}) WHERE ${isEmpty})`
-    for await (const chunk of streamColumns(
-      connection,
-      source,
-      { line: 'number', text: 'text' },
-      { orderBy: 'line' },
-    )) {
-      chunk.columns.text.forEach((line, k) => {
-        rejects.add(file.name, chunk.columns.line[k]!, 'no-values', line ?? '')
-      })
-      await rejects.flush()
+    const source = `(SELECT DISTINCT line, count(*) OVER (PARTITION BY line) AS rows FROM (${rowsSql(file, i, own)}) WHERE ${isEmpty})`
+    const sent = file.sentLines()
+    try {
+      for await (const chunk of streamColumns(
+        connection,
+        source,
+        { line: 'number', rows: 'number' },
+        { orderBy: 'line' },
+      )) {
+        for (const [k, line] of chunk.columns.line.entries()) {
+          const text = await lineAt(sent, line)
+          // A line of a wide log may hold several empty rows.
+          for (let n = chunk.columns.rows[k]!; n > 0; n--) rejects.add(file.name, line, 'no-values', text)
+        }
+        await rejects.flush()
+      }
+    } finally {
+      await sent.return(undefined)
     }
+  }
+}
+
+/** The text of a line as sent; lines are asked for in ascending order. */
+async function lineAt(sent: AsyncGenerator<SentLine>, line: number): Promise<string> {
+  for (;;) {
+    const next = await sent.next()
+    if (next.done) return ''
+    if (next.value.line === line) return next.value.text
   }
 }
 
