@@ -116,8 +116,12 @@ async function startScoring(flags: SettingFlags): Promise<Scoring> {
   for (const name of unknownNames) process.stderr.write(`warning: ${name} is no setting of yawledger\n`)
   const folder = await mkdtemp(join(tmpdir(), 'yawledger-'))
   const stopped = (signal: 'SIGINT' | 'SIGTERM' | 'SIGHUP') => {
-    rmSync(folder, { recursive: true, force: true })
-    process.exit(128 + constants.signals[signal])
+    try {
+      // A query that still runs may write a file while the folder is being emptied: it is emptied again.
+      rmSync(folder, { recursive: true, force: true, maxRetries: 10, retryDelay: 20 })
+    } finally {
+      process.exit(128 + constants.signals[signal])
+    }
   }
   for (const signal of ['SIGINT', 'SIGTERM', 'SIGHUP'] as const) process.once(signal, stopped)
   try {
