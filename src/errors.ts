@@ -29,6 +29,7 @@ export const ERRORS = {
   UNSUPPORTED_MEDIA_TYPE: { status: 415, exit: 2, title: 'Content type not taken here' },
   NOT_FOUND: { status: 404, exit: 2, title: 'Nothing under this address' },
   REPLAY_NOT_FOUND: { status: 404, exit: 2, title: 'No such replay' },
+  FRAME_GONE: { status: 410, exit: 1, title: 'The rows of the replay have been removed' },
   SITE_NOT_FOUND: { status: 404, exit: 2, title: 'No such site' },
   TURBINE_NOT_FOUND: { status: 404, exit: 2, title: 'No such turbine' },
   BATCH_NOT_FOUND: { status: 404, exit: 2, title: 'No such log of this site' },

@@ -1,3 +1,4 @@
+import type { Readable } from 'node:stream'
 import type { ReadingOptions, ScoreSheet, ScoringSettings, SiteFile } from '../sheet/index.ts'
 
 /** A log on this machine's disk, as it was sent. */
@@ -14,6 +15,29 @@ export interface OneShotRequest {
   readonly settings: ScoringSettings
   /** Rated power for turbines whose site file gives none, kW. */
   readonly ratedPowerKw?: number
+}
+
+/** A window of logs that the store holds. */
+export interface StoredRequest {
+  readonly site: string
+  /** Epoch ms, first moment. */
+  readonly fromMs: number
+  /** Epoch ms, first moment after the window. */
+  readonly toMs: number
+  /** Default: all turbines that have rows in the window. */
+  readonly turbines?: readonly string[]
+  readonly settings: ScoringSettings
+  /** Rated power for turbines whose site file gives none, kW. */
+  readonly ratedPowerKw?: number
+}
+
+/** `arrow`: an Arrow IPC stream. */
+export type RowsFormat = 'csv' | 'parquet' | 'arrow'
+
+export interface RowsExport {
+  /** Bytes of the file. Working files go away when it ends or is destroyed. */
+  readonly stream: Readable
+  readonly mediaType: string
 }
 
 export interface Progress {
@@ -34,6 +58,8 @@ export interface ReplayRecord {
   /** The score sheet as JSON text, byte for byte as it was first answered; null until done. */
   readonly sheet: string | null
   readonly problem: { readonly code: string; readonly detail: string } | null
+  /** How far it is; null unless it runs in this process. */
+  readonly progress: Progress | null
 }
 
 /** Runs the questions over logs and keeps the answers. */
@@ -43,9 +69,36 @@ export interface Replays {
    * @throws InputError LOG_*, BAD_SITE, BAD_OPTION
    */
   oneShot(request: OneShotRequest, onProgress?: (progress: Progress) => void): Promise<ScoreSheet>
+  /**
+   * Scores the rows that count in a window of a site, at once and beside whatever waits in the queue. Resolves when the
+   * sheet is on disk. Its receipt: `accepted` are the rows of the window that count; `duplicate` those of the window that
+   * a later log overruled and those overruled inside the logs it draws on; `rejected` those of these logs, in whole, since
+   * a rejected row has no dependable time; `received` is their sum.
+   * @throws InputError SITE_NOT_FOUND, TURBINE_NOT_FOUND, BAD_REQUEST for an empty window, LOG_NO_ROWS when it holds no
+   *   rows, LOG_COLUMNS_MISSING, STORAGE_FULL
+   */
+  stored(request: StoredRequest, onProgress?: (progress: Progress) => void): Promise<ScoreSheet>
+  /**
+   * The same in the background, first come first served. Resolves when it is noted as `queued`; `get` then tells its
+   * state and progress, and its sheet when it is done. What fails later fails the replay: state `failed`, `problem`.
+   * @throws InputError SITE_NOT_FOUND, TURBINE_NOT_FOUND, BAD_REQUEST
+   */
+  start(request: StoredRequest): Promise<{ id: string }>
+  /**
+   * Every row of the frame with the reason it was set aside, or `used`: turbine by turbine (byte order), by time. Rows of
+   * a high-rate log are the 10-minute ones that were scored.
+   * @throws InputError REPLAY_NOT_FOUND (also when it has no sheet), FRAME_GONE when its rows have been removed by age
+   */
+  rows(id: string, format: RowsFormat): Promise<RowsExport>
   /** @throws InputError REPLAY_NOT_FOUND */
   get(id: string): Promise<ReplayRecord>
   list(page: { after?: string; limit: number }): Promise<{ replays: ReplayRecord[]; next: string | null }>
-  /** @throws InputError REPLAY_NOT_FOUND */
+  /**
+   * Cancels a replay that waits or runs: its state becomes `cancelled` and stays to be read. Removes any other one with
+   * its rows.
+   * @throws InputError REPLAY_NOT_FOUND
+   */
   remove(id: string): Promise<void>
+  /** Starts nothing more, stops what runs and waits for it; the next start of the service names it interrupted. */
+  close(): Promise<void>
 }

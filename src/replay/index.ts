@@ -1,4 +1,14 @@
-export type { LogFile, OneShotRequest, Progress, ReplayRecord, Replays, ReplayStateName } from './contract.ts'
+export type {
+  LogFile,
+  OneShotRequest,
+  Progress,
+  ReplayRecord,
+  Replays,
+  ReplayStateName,
+  RowsExport,
+  RowsFormat,
+  StoredRequest,
+} from './contract.ts'
 export { CAUTION_IN_SHORT, CAUTIONS } from './cautions.ts'
 export { correctionInWords } from './advice.ts'
 export { createReplays, type ReplayParts } from './create-replays.ts'
