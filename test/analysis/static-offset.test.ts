@@ -107,7 +107,7 @@ test('the interval holds the truth in noise, and days make it narrower', () => {
 test('turning every vane by one angle moves the offset back by it and leaves the misalignment', () => {
   const columns = syntheticColumns({ offsetDeg: 3, noise: 0.05 })
   const before = offsetOf(columns)
-  for (const turn of [-25, 7.5, 90, 180, 725]) {
+  for (const turn of [-25, 7.5, 20, 360, 725]) {
     const after = offsetOf(withVane(columns, (vane) => vane + turn))
     const moved = after.standing!.offsetDeg + turn - before.standing!.offsetDeg
     expect(Math.abs(moved - 360 * Math.round(moved / 360)), `turn ${turn}`).toBeLessThan(1e-6)
@@ -120,6 +120,14 @@ test('turning every vane by one angle moves the offset back by it and leaves the
       ).toBeLessThan(1e-6)
     }
   }
+})
+
+test('a vane that reads 180 when the rotor faces the wind is one that reads 0', () => {
+  const columns = syntheticColumns({ offsetDeg: 3, noise: 0.05 })
+  const before = offsetOf(columns).standing!
+  const after = offsetOf(withVane(columns, (vane) => vane + 180)).standing!
+  expect(Math.abs(after.offsetDeg - before.offsetDeg)).toBeLessThan(1e-6)
+  expect(Math.abs(after.standingDeg - before.standingDeg)).toBeLessThan(1e-6)
 })
 
 test('mirroring every vane mirrors the offset', () => {
