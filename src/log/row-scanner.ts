@@ -76,6 +76,8 @@ export class RowScanner implements LinePosition {
   private readonly kinds = new Uint8Array(256)
   private readonly ends: Int32Array
   private readonly kept: Int32Array
+  /** First and last field of stretches that are copied in one piece. */
+  private readonly runs: Int32Array
   private readonly outByte: number
   private readonly inByte: number
   private out = Buffer.allocUnsafe(2 * 1024 ** 2)
@@ -91,6 +93,7 @@ export class RowScanner implements LinePosition {
     this.outByte = this.outDelimiter.charCodeAt(0)
     this.ends = new Int32Array(plan.fields + 1)
     this.kept = Int32Array.from(plan.kept)
+    this.runs = Int32Array.from(runsOf(plan.kept, this.inByte === this.outByte))
     this.emptyCells = new Float64Array(plan.fields)
     this.kinds[this.inByte] = DELIMITER
     this.kinds[LF] = LINE_END
@@ -286,7 +289,7 @@ export class RowScanner implements LinePosition {
   }
 
   private emit(bytes: Buffer, start: number, end: number, timeMs: number): void {
-    const { ends, kept, emptyCells, outByte } = this
+    const { ends, kept, runs, emptyCells, outByte } = this
     const most = end - start + 64
     if (this.used + most > this.out.length) {
       const grown = Buffer.allocUnsafe(Math.max(this.out.length * 2, this.used + most))
@@ -297,14 +300,17 @@ export class RowScanner implements LinePosition {
     let at = writeDigits(out, this.used, this.lines)
     out[at++] = outByte
     at = writeTime(out, at, timeMs)
+    for (let k = 0; k < runs.length; k += 2) {
+      const first = runs[k]!
+      const from = first === 0 ? start : ends[first - 1]! + 1
+      const to = ends[runs[k + 1]!]!
+      out[at++] = outByte
+      if (to - from > 64) at += bytes.copy(out, at, from, to)
+      else for (let i = from; i < to; i++) out[at++] = bytes[i]!
+    }
     for (let k = 0; k < kept.length; k++) {
       const field = kept[k]!
-      const from = field === 0 ? start : ends[field - 1]! + 1
-      const to = ends[field]!
-      out[at++] = outByte
-      if (from === to) emptyCells[field]!++
-      else if (to - from > 48) at += bytes.copy(out, at, from, to)
-      else for (let i = from; i < to; i++) out[at++] = bytes[i]!
+      if (ends[field] === (field === 0 ? start : ends[field - 1]! + 1)) emptyCells[field]!++
     }
     out[at++] = LF
     this.used = at
@@ -313,6 +319,16 @@ export class RowScanner implements LinePosition {
   private reject(bytes: Buffer, start: number, end: number, reason: RejectReason): void {
     this.post.rejects.add(this.plan.name, this.lines, reason, bytes.toString('utf8', start, end))
   }
+}
+
+/** Fields side by side are copied together, unless the delimiter between them changes. */
+function runsOf(kept: readonly number[], together: boolean): number[] {
+  const runs: number[] = []
+  for (const field of kept) {
+    if (together && runs.length > 0 && runs.at(-1) === field - 1) runs[runs.length - 1] = field
+    else runs.push(field, field)
+  }
+  return runs
 }
 
 function isBlank(bytes: Buffer, start: number, end: number): boolean {
