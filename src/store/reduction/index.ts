@@ -1,0 +1,2 @@
+export { isHighRate, REDUCED_INTERVAL_S } from './high-rate.ts'
+export { reduceRows } from './reduce-rows.ts'
