@@ -1,10 +1,12 @@
 import { circularMean, circularMedian, wrap180 } from '../kernel/angle/index.ts'
+import { robustSd } from '../kernel/stats/index.ts'
 
 /**
- * A reading must stand this far from what the rows around it say, degrees. Ten-minute means of a quiet turbine agree
- * within a few degrees; twice the scatter of the rows around is added.
+ * A reading must stand this far from what the rows around it say, degrees, and this many times the turbine's usual unrest.
+ * Twice the scatter of the rows around is added.
  */
 const CONTRADICTION_DEG = 15
+const UNREST_TIMES = 6
 /** The same where the interval's own extremes show that it crossed the seam, or another channel contradicts. */
 const CONTRADICTION_WITH_EVIDENCE_DEG = 10
 /** What the rows around say must lie this near to the seam: half of a large yaw move. */
@@ -23,6 +25,8 @@ const PRODUCING_VANE_DEG = 45
 const ARITHMETIC_SHARE = 0.05
 /** Readings on both sides of the seam cannot have so small an SD, unless the mean is right to a degree; degrees. */
 const SD_ACQUITS_DEG = 15
+/** A step of more is a jump from one end of a scale to the other, degrees. */
+const JUMP_DEG = 270
 /** Share of readings that must lie on a scale for it to be that scale: sentinels may remain. */
 const SCALE_SHARE = 0.999
 
@@ -97,8 +101,12 @@ export function acrossNorth(input: AcrossNorthInput): AcrossNorth {
       if (steady && steady.count > 0) return { ...steady, angleDeg: wrap180(steady.angleDeg - vane[i]!) }
       return around(alone, i)
     }
-    flags.nacelle_position = findChannel(nacellePosition, seam, { expect, drop }, (i) =>
-      mismatch ? windAgrees(mismatch[i]!, around(windDirection!.mean, i), windDirection!.mean[i]!) : false,
+    flags.nacelle_position = findChannel(
+      nacellePosition,
+      seam,
+      { expect, drop, unrestDeg: unrestOf(sum ?? alone) },
+      (i) =>
+        mismatch ? windAgrees(mismatch[i]!, around(windDirection!.mean, i), windDirection!.mean[i]!) : false,
     )
   }
   if (windDirection) {
@@ -107,15 +115,15 @@ export function acrossNorth(input: AcrossNorthInput): AcrossNorth {
     flags.wind_direction = findChannel(
       windDirection,
       seam,
-      { expect: (i) => around(alone, i), drop: (i) => (alone[i] = NaN) },
+      { expect: (i) => around(alone, i), drop: (i) => (alone[i] = NaN), unrestDeg: unrestOf(alone) },
       (i) =>
         mismatch !== undefined &&
         flags.nacelle_position[i] === 0 &&
         windAgrees(mismatch[i]!, around(sum!, i), sum![i]!),
     )
   }
-  if (loggedVane && !vaneAhead && !Number.isNaN(vaneSeam)) {
-    flags.vane = findVanesAstern(input, loggedVane, sum, flags.nacelle_position, around)
+  if (loggedVane && !vaneAhead && !Number.isNaN(vaneSeam) && nacellePosition) {
+    flags.vane = findVanesAstern(input, loggedVane, nacellePosition.mean)
   }
   const count = (flag: Uint8Array): number => flag.reduce((total, one) => total + one, 0)
   return {
@@ -157,24 +165,47 @@ function neighbourhood(time: Float64Array, intervalMs: number): Around {
   }
 }
 
-/** Where a scale jumps: 0 for 0 to 360, 180 for -180 to 180, NaN for one that is wound. */
+/**
+ * Where a scale jumps: 0 for 0 to 360, 180 for -180 to 180, NaN for one that is wound. Readings that never jump from one end
+ * to the other within two rows show no seam: a wound scale may lie within one turn for a month.
+ */
 function seamOf(mean: Float64Array): number {
   let known = 0
   let wrapped = 0
   let signed = 0
-  for (const angle of mean) {
+  let jumps = 0
+  for (let i = 0; i < mean.length; i++) {
+    const angle = mean[i]!
     if (Number.isNaN(angle)) continue
     known++
     if (angle >= 0 && angle <= 360) wrapped++
     if (angle >= -180 && angle <= 180) signed++
+    if (
+      Math.abs(angle - (mean[i - 1] ?? NaN)) > JUMP_DEG ||
+      Math.abs(angle - (mean[i - 2] ?? NaN)) > JUMP_DEG
+    )
+      jumps++
   }
-  if (known === 0) return NaN
+  if (jumps === 0) return NaN
   if (wrapped >= SCALE_SHARE * known) return 0
   return signed >= SCALE_SHARE * known ? 180 : NaN
 }
 
+/** How far a row stands from the mean of the rows before and after, as a robust SD, degrees. */
+function unrestOf(angles: Float64Array): number {
+  return robustSd(
+    angles.map((angle, i) => {
+      const before = wrap180((angles[i - 1] ?? NaN) - angle)
+      const after = wrap180((angles[i + 1] ?? NaN) - angle)
+      return (before + after) / 2
+    }),
+  )
+}
+
 /** What the rows around say of a row, and how to leave a row out of that from now on. */
 interface Judge {
+  /** Robust SD of a row against the rows before and after, degrees. */
+  readonly unrestDeg: number
   readonly expect: (i: number) => Expectation
   readonly drop: (i: number) => void
 }
@@ -190,7 +221,7 @@ function findChannel(
   for (let pass = 0; pass < PASSES; pass++) {
     const found: number[] = []
     for (let i = 0; i < flags.length; i++) {
-      if (flags[i] === 0 && isAveraged(angle, seam, i, judge.expect, isContradicted)) found.push(i)
+      if (flags[i] === 0 && isAveraged(angle, seam, i, judge, isContradicted)) found.push(i)
     }
     for (const i of found) {
       flags[i] = 1
@@ -205,7 +236,7 @@ function isAveraged(
   angle: LoggedAngle,
   seam: number,
   i: number,
-  expect: (i: number) => Expectation,
+  judge: Judge,
   isContradicted: (i: number) => boolean,
 ): boolean {
   const value = angle.mean[i]!
@@ -214,9 +245,12 @@ function isAveraged(
   if (!(fromSeamDeg > CONTRADICTION_WITH_EVIDENCE_DEG)) return false
   const crossed = crossing(angle, i, seam)
   if (crossed === 'no' || crossed === 'proved') return crossed === 'proved'
-  const expected = expect(i)
+  const expected = judge.expect(i)
   if (expected.count === 0) return crossed === 'yes' && fromSeamDeg > REACH_DEG
-  const least = crossed === 'yes' || isContradicted(i) ? CONTRADICTION_WITH_EVIDENCE_DEG : CONTRADICTION_DEG
+  const hasEvidence = crossed === 'yes' || isContradicted(i)
+  const least = hasEvidence
+    ? CONTRADICTION_WITH_EVIDENCE_DEG
+    : Math.max(CONTRADICTION_DEG, UNREST_TIMES * judge.unrestDeg)
   const off = Math.abs(wrap180(value - expected.angleDeg))
   const expectedFromSeam = Math.abs(wrap180(expected.angleDeg - seam))
   return off > least + 2 * expected.scatterDeg && expectedFromSeam < Math.min(REACH_DEG, fromSeamDeg)
@@ -278,23 +312,14 @@ function findVanesAhead(input: AcrossNorthInput, logged: LoggedAngle, seam: numb
   return flags
 }
 
-/** The seam lies astern: only a turbine that does not produce has its vane near it. */
-function findVanesAstern(
-  input: AcrossNorthInput,
-  logged: LoggedAngle,
-  sum: Float64Array | undefined,
-  badNacelle: Uint8Array,
-  around: Around,
-): Uint8Array {
-  const { vane, nacellePosition } = input
-  const expect = (i: number): Expectation => {
-    if (!sum || !nacellePosition) return around(vane, i)
-    if (badNacelle[i] === 1) return { angleDeg: NaN, scatterDeg: NaN, count: 0 }
-    const steady = around(sum, i)
-    return { ...steady, angleDeg: wrap180(steady.angleDeg - nacellePosition.mean[i]!) }
-  }
-  const idle = vane.map((angle, i) => (input.power[i]! > 0 ? NaN : angle))
-  // Statistics of the interval are in the logged scale, the seam's place in it included.
-  const inConvention: LoggedAngle = { mean: idle, sd: logged.sd }
-  return findChannel(inConvention, -180, { expect, drop: () => undefined }, () => false)
+/** The seam lies astern: only a turbine that stands still has its vane pass through it, with the nacelle at rest. */
+function findVanesAstern(input: AcrossNorthInput, logged: LoggedAngle, nacelle: Float64Array): Uint8Array {
+  const { vane, power } = input
+  const near = (i: number): boolean => Math.abs(vane[i] ?? NaN) > 180 - REACH_DEG
+  const rests = (i: number, j: number): boolean => Math.abs(wrap180(nacelle[j]! - nacelle[i]!)) < 2
+  return Uint8Array.from(vane, (angle, i) => {
+    if (Number.isNaN(angle) || power[i]! > 0 || near(i)) return 0
+    if (crossing({ mean: vane, sd: logged.sd }, i, -180) === 'proved') return 1
+    return near(i - 1) && near(i + 1) && rests(i, i - 1) && rests(i, i + 1) ? 1 : 0
+  })
 }
