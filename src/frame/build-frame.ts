@@ -98,6 +98,7 @@ function buildTurbine(
       nacelleMax: numbers['nacelle_position_max'],
       direction: nacelle || windDirection ? indicatedDirection : undefined,
       averagedAcrossNorth: angles.averaged,
+      coverage: numbers['coverage'],
       status: texts['status'],
       runningStatus: request.site.runningStatus,
       availability: texts['availability_category'],

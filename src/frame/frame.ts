@@ -8,7 +8,7 @@ export interface TurbineColumns {
   readonly turbine: string
   /** Start of the interval, epoch ms; rising; length n. */
   readonly time: Float64Array
-  /** Canonical channel -> values; length n; NaN = missing. */
+  /** Canonical channel -> values; length n; NaN = missing. `coverage`: of rows made of high-rate ones, 0 to 1. */
   readonly numbers: Readonly<Record<string, Float64Array>>
   /** Canonical text channel -> values; length n; null = missing. */
   readonly texts: Readonly<Record<string, readonly (string | null)[]>>
@@ -53,7 +53,7 @@ export interface TurbineFrame {
   readonly densitySource: string
   /** 0 = used for the static offset, else 1 + index into SET_ASIDE_REASONS. */
   readonly reason: Uint8Array
-  /** 1 = wind speed, vane and power are there, not excluded, and the turbine produces. */
+  /** 1 = wind speed, vane and power are there, the interval is complete, not excluded, and the turbine produces. */
   readonly running: Uint8Array
   /** 1 = held below what the wind offers, by set-point, pitch or category. */
   readonly limited: Uint8Array

@@ -16,6 +16,8 @@ const SET_POINT_SHARE = 0.99
 const PARKED_PITCH_DEG = 45
 /** A rotor slower than this share of its usual running speed is idling. Common practice, no source. */
 const IDLE_ROTOR_SHARE = 0.3
+/** Share of the rows due in an interval below which its statistics are not taken for those of the interval. */
+const COVERAGE_LEAST = 0.75
 
 /** What the tests of one turbine look at. Arrays of length n, NaN = missing; absent channels are undefined. */
 export interface SetAsideInput {
@@ -36,6 +38,8 @@ export interface SetAsideInput {
   readonly direction?: Float64Array | undefined
   /** 1 = an angle of the row was averaged across the end of its scale. */
   readonly averagedAcrossNorth?: Uint8Array | undefined
+  /** Of intervals made of high-rate rows: rows that are there over rows due, 0 to 1. */
+  readonly coverage?: Float64Array | undefined
   readonly status?: readonly (string | null)[] | undefined
   readonly runningStatus?: readonly string[] | undefined
   readonly availability?: readonly (string | null)[] | undefined
@@ -47,7 +51,7 @@ export interface SetAsideInput {
 export interface EarlySetAside {
   /** 0 = still used, else a code of REASON_CODE. */
   readonly reason: Uint8Array
-  /** 1 = wind speed, vane and power are there, not excluded, and the turbine produces. */
+  /** 1 = wind speed, vane and power are there, the interval is complete, not excluded, and the turbine produces. */
   readonly running: Uint8Array
   /** 1 = held below what the wind offers, by set-point, pitch or category; whatever else holds. */
   readonly limited: Uint8Array
@@ -77,12 +81,14 @@ export function setAsideBeforeCurve(input: SetAsideInput, settings: ScoringSetti
     const hasOthers = !Number.isNaN(input.windSpeed[i]!) && !Number.isNaN(input.power[i]!)
     if (!hasOthers || !(hasVane || averaged)) set(i, 'missing-channel')
     if (averaged) set(i, 'averaged-across-north')
+    const incomplete = input.coverage !== undefined && !(input.coverage[i]! >= COVERAGE_LEAST)
+    if (incomplete) set(i, 'incomplete-interval')
     const time = input.time[i]!
     const excluded = input.excluded.some(([from, to]) => time + input.intervalMs > from && time < to)
     if (excluded) set(i, 'excluded')
     if (stopped[i] === 1) set(i, 'not-running')
     // A bad nacelle reading leaves vane and power as they are: such a row still counts for the yaw error.
-    if (hasOthers && hasVane && !excluded && stopped[i] === 0) running[i] = 1
+    if (hasOthers && hasVane && !incomplete && !excluded && stopped[i] === 0) running[i] = 1
 
     const previous = before[i]!
     const next = after[i]!

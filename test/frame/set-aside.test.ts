@@ -49,6 +49,15 @@ test('quiet rows with wind speed, vane and power alone are all used', () => {
   expect(reasons(input())).toEqual(usedBut({}))
 })
 
+test('an interval made of less than 0.75 of its rows is set aside and does not count as running', () => {
+  const given = input({ coverage: series(1, { 3: 0.75, 4: 0.7499, 5: NaN }) })
+  expect(reasons(given)).toEqual(usedBut({ 4: 'incomplete-interval', 5: 'incomplete-interval' }))
+  const { running } = setAsideBeforeCurve(given, SETTINGS)
+  expect(Array.from(running)).toEqual([1, 1, 1, 1, 0, 0, 1, 1, 1, 1])
+  const withoutVane = input({ coverage: series(1, { 5: 0.1 }), vane: series(1, { 5: NaN }) })
+  expect(reasons(withoutVane)).toEqual(usedBut({ 5: 'missing-channel' })) // the first reason in order holds
+})
+
 test('a missing wind speed, vane or power sets its own row aside', () => {
   for (const channel of ['windSpeed', 'vane', 'power'] as const) {
     const usual = { windSpeed: 8, vane: 1, power: 900 }[channel]
