@@ -197,6 +197,7 @@ export const TurbineSheet = Type.Object(
           Type.Literal('anemometer'),
           Type.Literal('power'),
           Type.Literal('air'),
+          Type.Literal('clock'),
         ]),
         finding: Type.String(),
         severity: Type.Union([Type.Literal('info'), Type.Literal('warn'), Type.Literal('fault')]),
