@@ -27,7 +27,31 @@ export async function readRows(scans: Scans, path: string): Promise<TurbineRows[
   return scans.withConnection((connection) => rowsOf(connection, `read_parquet(${quoteText(path)})`))
 }
 
-/** The same from any source of such rows: SQL after FROM. */
+/** Rows and extent of every turbine in a Parquet file of clean rows, byte order of their names. */
+export interface TurbineCount {
+  readonly turbine: string
+  readonly rows: number
+  readonly firstMs: number
+  readonly lastMs: number
+}
+
+/** @param scans  may read the file's folder. */
+export async function countRows(scans: Scans, path: string): Promise<TurbineCount[]> {
+  const rows = await scans.withConnection((connection) =>
+    connection.records(
+      `SELECT turbine, count(*) AS row_count, min(time) AS first_ms, max(time) AS last_ms
+       FROM read_parquet(${quoteText(path)}) GROUP BY turbine ORDER BY turbine COLLATE "C"`,
+    ),
+  )
+  return rows.map((row) => ({
+    turbine: row['turbine'] as string,
+    rows: row['row_count'] as number,
+    firstMs: row['first_ms'] as number,
+    lastMs: row['last_ms'] as number,
+  }))
+}
+
+/** As `readRows`, from any source of such rows: SQL after FROM. */
 export async function rowsOf(connection: Connection, source: string): Promise<TurbineRows[]> {
   const described = await connection.records(`DESCRIBE SELECT * FROM ${source}`)
   const kinds: Record<string, ColumnKind> = {}

@@ -16,13 +16,23 @@ export interface StoredReplay {
 }
 
 export interface ReplayStore {
-  /** Notes a replay as running. Epoch milliseconds, whole. */
-  begin(replay: { id: string; site: string | null; createdMs: number }): Promise<void>
+  /** Notes a replay as running, or as waiting for its turn. Epoch milliseconds, whole. */
+  begin(replay: {
+    id: string
+    site: string | null
+    createdMs: number
+    state?: 'queued' | 'running'
+  }): Promise<void>
+  /** Its turn has come. @throws InputError REPLAY_NOT_FOUND when it does not wait (any more) */
+  run(id: string): Promise<void>
   /**
    * Keeps the sheet and the state `done` together. Resolves when they are on disk.
+   * @param request  what the sheet was made with beside the rows, as JSON; read by `request`, removed with the replay.
    * @throws InputError REPLAY_NOT_FOUND when it is not running (any more), STORAGE_FULL
    */
-  finish(id: string, sheet: string, finishedMs: number): Promise<void>
+  finish(id: string, sheet: string, finishedMs: number, request?: string): Promise<void>
+  /** What `finish` was given as request; undefined when there is none. */
+  request(id: string): Promise<string | undefined>
   /** @throws InputError REPLAY_NOT_FOUND when it is not running (any more) */
   fail(id: string, problem: { code: string; detail: string }, finishedMs?: number): Promise<void>
   /** @throws InputError REPLAY_NOT_FOUND when it is not running (any more) */
@@ -31,6 +41,8 @@ export interface ReplayStore {
   /**
    * Newest first. `next` is the cursor of the following page, null on the last one.
    * @param page.limit  1 to 1000
+   * @param page.site  only replays of this site
+   * @param page.state  only replays in this state
    * @param page.sheets  false leaves `sheet` null, for lists that do not show it; default true
    * @throws InputError BAD_REQUEST for a cursor of another origin
    */
@@ -38,7 +50,11 @@ export interface ReplayStore {
     after?: string
     limit: number
     sheets?: boolean
+    site?: string
+    state?: StoredReplay['state']
   }): Promise<{ replays: StoredReplay[]; next: string | null }>
+  /** How many replays there are in each state that has any. */
+  counts(): Promise<Partial<Record<StoredReplay['state'], number>>>
   /** True when there was one. Its frame is removed by `frames.remove`. */
   remove(id: string): Promise<boolean>
 }
@@ -56,16 +72,27 @@ export function replayStore(driver: CatalogueDriver, clock: () => number): Repla
       if (changed.length === 0) throw notRunning(id)
     })
   return {
-    async begin({ id, site, createdMs }) {
+    async begin({ id, site, createdMs, state = 'running' }) {
       checkId(id)
       await driver.write((transaction) =>
-        transaction.query(
-          `INSERT INTO replays (id, state, site, created_ms) VALUES ($1, 'running', $2, $3)`,
-          [id, site, createdMs],
-        ),
+        transaction.query(`INSERT INTO replays (id, state, site, created_ms) VALUES ($1, $2, $3, $4)`, [
+          id,
+          state,
+          site,
+          createdMs,
+        ]),
       )
     },
-    async finish(id, sheet, finishedMs) {
+    async run(id) {
+      await driver.write(async (transaction) => {
+        const changed = await transaction.query(
+          `UPDATE replays SET state = 'running' WHERE id = $1 AND state = 'queued' RETURNING id`,
+          [id],
+        )
+        if (changed.length === 0) throw notRunning(id)
+      })
+    },
+    async finish(id, sheet, finishedMs, request) {
       await driver.write(async (transaction) => {
         const changed = await transaction.query(
           `UPDATE replays SET state = 'done', finished_ms = $2
@@ -74,7 +101,17 @@ export function replayStore(driver: CatalogueDriver, clock: () => number): Repla
         )
         if (changed.length === 0) throw notRunning(id)
         await transaction.query('INSERT INTO replay_sheets (replay_id, sheet) VALUES ($1, $2)', [id, sheet])
+        if (request === undefined) return
+        await transaction.query('INSERT INTO replay_requests (replay_id, request) VALUES ($1, $2)', [
+          id,
+          request,
+        ])
       })
+    },
+    async request(id) {
+      if (!isId(id)) return undefined
+      const rows = await driver.query('SELECT request FROM replay_requests WHERE replay_id = $1', [id])
+      return rows[0]?.['request'] as string | undefined
     },
     fail: (id, problem, finishedMs = clock()) => end(id, 'failed', finishedMs, problem),
     cancel: (id, finishedMs = clock()) => end(id, 'cancelled', finishedMs),
@@ -86,17 +123,26 @@ export function replayStore(driver: CatalogueDriver, clock: () => number): Repla
       )
       return rows[0] && toReplay(rows[0])
     },
-    async list({ after, limit, sheets = true }) {
+    async list({ after, limit, sheets = true, site, state }) {
       if (!(Number.isInteger(limit) && limit >= 1 && limit <= 1000)) {
         throw new InputError('BAD_REQUEST', `limit: expected a whole number from 1 to 1000, got ${limit}`)
       }
       const cursor = after === undefined ? undefined : readCursor(after)
+      const values: (string | number)[] = [limit + 1]
+      const bind = (value: string | number) => `$${values.push(value)}`
+      const conditions: string[] = []
+      if (cursor) {
+        const ms = bind(cursor.ms)
+        conditions.push(`(r.created_ms < ${ms} OR (r.created_ms = ${ms} AND r.id < ${bind(cursor.id)}))`)
+      }
+      if (site !== undefined) conditions.push(`r.site = ${bind(site)}`)
+      if (state !== undefined) conditions.push(`r.state = ${bind(state)}`)
       const rows = await driver.query(
         `SELECT ${COLUMNS}, ${sheets ? 's.sheet' : 'NULL AS sheet'} FROM replays r
          ${sheets ? 'LEFT JOIN replay_sheets s ON s.replay_id = r.id' : ''}
-         ${cursor ? 'WHERE r.created_ms < $2 OR (r.created_ms = $2 AND r.id < $3)' : ''}
+         ${conditions.length > 0 ? `WHERE ${conditions.join(' AND ')}` : ''}
          ORDER BY r.created_ms DESC NULLS LAST, r.id DESC NULLS LAST LIMIT $1`,
-        cursor ? [limit + 1, cursor.ms, cursor.id] : [limit + 1],
+        values,
       )
       const replays = rows.slice(0, limit).map(toReplay)
       const last = replays.at(-1)
@@ -105,10 +151,15 @@ export function replayStore(driver: CatalogueDriver, clock: () => number): Repla
         next: last && rows.length > limit ? writeCursor({ ms: last.createdMs, id: last.id }) : null,
       }
     },
+    async counts() {
+      const rows = await driver.query('SELECT state, count(*) AS replays FROM replays GROUP BY state')
+      return Object.fromEntries(rows.map((row) => [row['state'] as string, Number(row['replays'])]))
+    },
     async remove(id) {
       if (!isId(id)) return false
       return driver.write(async (transaction) => {
         await transaction.query('DELETE FROM replay_sheets WHERE replay_id = $1', [id])
+        await transaction.query('DELETE FROM replay_requests WHERE replay_id = $1', [id])
         const removed = await transaction.query('DELETE FROM replays WHERE id = $1 RETURNING id', [id])
         return removed.length > 0
       })

@@ -456,3 +456,20 @@ async function siteStore(
   await store.sites.put('quern-hill', { turbines: [{ turbine: 'Q01', ratedPowerKw: 2300 }] })
   return store
 }
+
+test('a window says which logs it draws on, and how many of its rows a later log overruled', async () => {
+  const store = await openTestStore(await makeFolder())
+  await store.sites.put('quern-hill', { turbines: [{ turbine: 'A' }] })
+  const first = await addRows(store, 'quern-hill', [
+    ['A', 0, 1],
+    ['A', 600_000, 2],
+    ['A', 1_200_000, 3],
+  ])
+  const second = await addRows(store, 'quern-hill', [['A', 600_000, 5]])
+  const whole = await store.logs.readWindow('quern-hill')
+  expect(whole).toMatchObject({ rows: 3, overruled: 1 })
+  expect(whole.batches.map(({ batch }) => batch)).toEqual([first.batch.batch, second.batch.batch])
+  const end = await store.logs.readWindow('quern-hill', { fromMs: 1_200_000 })
+  expect(end).toMatchObject({ rows: 1, overruled: 0 })
+  expect(end.batches.map(({ batch }) => batch)).toEqual([first.batch.batch])
+})

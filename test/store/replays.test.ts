@@ -12,7 +12,7 @@ test('a finished replay comes back byte for byte after a restart', async () => {
   await first.close()
   const second = await openTestStore(folder)
   // Assigned, so that the compiler holds the two shapes together.
-  const record: ReplayRecord | undefined = await second.replays.get('r1')
+  const record: Omit<ReplayRecord, 'progress'> | undefined = await second.replays.get('r1')
   expect(record).toEqual({
     id: 'r1',
     state: 'done',
@@ -22,6 +22,23 @@ test('a finished replay comes back byte for byte after a restart', async () => {
     sheet,
     problem: null,
   } satisfies StoredReplay)
+})
+
+test('a replay that waits gets its turn once, and keeps what it was made with until it is removed', async () => {
+  const store = await openTestStore(await makeFolder())
+  const notRunning: unknown = expect.objectContaining({ code: 'REPLAY_NOT_FOUND' })
+  await store.replays.begin({ id: 'r1', site: 'quern-hill', createdMs: 5, state: 'queued' })
+  expect(await store.replays.get('r1')).toMatchObject({ state: 'queued' })
+  await store.replays.run('r1')
+  expect(await store.replays.get('r1')).toMatchObject({ state: 'running' })
+  await expect(store.replays.run('r1')).rejects.toThrow(notRunning)
+  await store.replays.finish('r1', '{}', 6, '{"site":{}}')
+  expect(await store.replays.request('r1')).toBe('{"site":{}}')
+  await store.replays.remove('r1')
+  expect(await store.replays.request('r1')).toBeUndefined()
+  await store.replays.begin({ id: 'r2', site: null, createdMs: 5, state: 'queued' })
+  await store.replays.cancel('r2')
+  await expect(store.replays.run('r2')).rejects.toThrow(notRunning)
 })
 
 test('a running replay is running, and failed with INTERRUPTED after a restart', async () => {

@@ -77,6 +77,16 @@ export const MIGRATIONS: readonly { version: number; statements: readonly string
        )`,
     ],
   },
+  {
+    version: 3,
+    statements: [
+      // Site file and settings that a sheet was made with: its frame is made again from them.
+      `CREATE TABLE replay_requests (
+         replay_id text NOT NULL PRIMARY KEY,
+         request text NOT NULL
+       )`,
+    ],
+  },
 ]
 
 export const VERSIONS_TABLE = `CREATE TABLE IF NOT EXISTS schema_versions (

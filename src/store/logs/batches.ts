@@ -177,6 +177,20 @@ export async function requireBatch(
   throw new InputError('BATCH_NOT_FOUND', `log: expected one of site "${site}", got "${batch.slice(0, 100)}"`)
 }
 
+/** The batches of these numbers that are there, earliest first. */
+export async function batchesOf(
+  source: Pick<Transaction, 'query'>,
+  seqs: readonly number[],
+): Promise<StoredBatch[]> {
+  if (seqs.length === 0) return []
+  const rows = await source.query(
+    `SELECT ${COLUMNS} FROM batches WHERE seq IN (${seqs.map((_, i) => `$${i + 1}`).join(', ')})
+     ORDER BY seq NULLS LAST`,
+    seqs,
+  )
+  return rows.map(toBatch)
+}
+
 /** Newest first. @throws InputError SITE_NOT_FOUND, BAD_REQUEST */
 export async function listBatches(
   driver: CatalogueDriver,

@@ -10,6 +10,7 @@ import { requireSite } from '../sites.ts'
 import { rowsOf, type TurbineRows } from '../read-rows.ts'
 import { asStorageFull, type Space } from '../space.ts'
 import {
+  batchesOf,
   deleteBatch,
   deleteSite,
   findByContent,
@@ -20,8 +21,8 @@ import {
   type StoredBatch,
 } from './batches.ts'
 import { compact, type CompactionLimits } from './compaction.ts'
-import { fileChecksum, segmentFiles } from './segment-files.ts'
-import { winningRows, type LogWindow } from './winning-rows.ts'
+import { fileChecksum, segmentFiles, type SegmentFiles } from './segment-files.ts'
+import { winningRows, type LogWindow, type WinningRows } from './winning-rows.ts'
 import { writeSegments, type WrittenSegment } from './write-segments.ts'
 
 export interface StagedBatch {
@@ -45,6 +46,17 @@ export interface DayRows {
   readonly rows: number
   readonly firstMs: number
   readonly lastMs: number
+}
+
+/** The rows that count in a window, in a file, and where they come from. */
+export interface ReadWindow {
+  readonly path: string | null
+  readonly rows: number
+  readonly channels: string[]
+  /** Rows of the window that a later batch overruled. */
+  readonly overruled: number
+  /** Batches that reach into the window, earliest first. */
+  readonly batches: readonly StoredBatch[]
 }
 
 export interface TurbineExtent {
@@ -80,10 +92,7 @@ export interface LogStore {
    * @param window.folder  where to; default: the temporary folder
    * @throws InputError SITE_NOT_FOUND, STORAGE_FULL
    */
-  readWindow(
-    site: string,
-    window?: LogWindow & { folder?: string },
-  ): Promise<{ path: string | null; rows: number; channels: string[] }>
+  readWindow(site: string, window?: LogWindow & { folder?: string }): Promise<ReadWindow>
   /**
    * The rows that count in a window, in memory: one entry per turbine, byte order of their names. Writes no file, so it
    * answers on a full disk as long as the rows fit into the memory of scans.
@@ -210,8 +219,14 @@ export function logStore(driver: CatalogueDriver, options: LogStoreParts): LogSt
     readWindow: (site, window = {}) =>
       files.reading(async () => {
         await requireSite(driver, site)
-        const { source, isSorted } = await winningRows(driver, files, site, window)
-        if (source === undefined) return { path: null, rows: 0, channels: [] }
+        const { source, withOverruled, isSorted, batches } = await windowWithBatches(
+          driver,
+          files,
+          site,
+          window,
+        )
+        const nothing: ReadWindow = { path: null, rows: 0, channels: [], overruled: 0, batches }
+        if (source === undefined) return nothing
         const path = join(window.folder ?? tempFolder, `${newId()}.parquet`)
         try {
           return await scans.withConnection(async (connection) => {
@@ -220,11 +235,16 @@ export function logStore(driver: CatalogueDriver, options: LogStoreParts): LogSt
             const rows = await writeParquet(connection, query, path)
             if (rows === 0) {
               await rm(path, { force: true })
-              return { path: null, rows, channels: [] }
+              return nothing
             }
+            const all =
+              withOverruled &&
+              (await connection.records(`SELECT count(*) AS row_count FROM ${withOverruled}`))
+            const overruled = all ? (all[0]!['row_count'] as number) - rows : 0
             const columns = await connection.records(`DESCRIBE SELECT * EXCLUDE (batch_seq) FROM ${source}`)
             const names = columns.map((column) => column['column_name'] as string)
-            return { path, rows, channels: names.filter((name) => name !== 'turbine' && name !== 'time') }
+            const channels = names.filter((name) => name !== 'turbine' && name !== 'time')
+            return { path, rows, channels, overruled, batches }
           })
         } catch (error) {
           await rm(path, { force: true })
@@ -289,6 +309,20 @@ export function logStore(driver: CatalogueDriver, options: LogStoreParts): LogSt
       await compacting.catch(() => 0)
       await files.settled()
     },
+  }
+}
+
+/** Asked again where a batch was deleted between the two questions. */
+async function windowWithBatches(
+  driver: CatalogueDriver,
+  files: SegmentFiles,
+  site: string,
+  window: LogWindow,
+): Promise<WinningRows & { batches: StoredBatch[] }> {
+  for (;;) {
+    const winning = await winningRows(driver, files, site, window)
+    const batches = await batchesOf(driver, winning.seqs)
+    if (batches.length === winning.seqs.length) return { ...winning, batches }
   }
 }
 

@@ -15,6 +15,10 @@ export interface LogWindow {
 export interface WinningRows {
   /** SQL of rows with `batch_seq`, no two of the same turbine and time; undefined when there are none. */
   readonly source: string | undefined
+  /** SQL of all rows of the window, also those that a later batch overruled; undefined where none can be. */
+  readonly withOverruled: string | undefined
+  /** Numbers of the batches that reach into the window; rising. */
+  readonly seqs: readonly number[]
   /** Whether the rows come sorted by turbine and time as they are. */
   readonly isSorted: boolean
 }
@@ -40,9 +44,9 @@ export async function winningRows(
   window: LogWindow,
 ): Promise<WinningRows> {
   const parts = await overlappingParts(driver, site, window)
-  if (parts.length === 0) return { source: undefined, isSorted: true }
+  if (parts.length === 0) return { source: undefined, withOverruled: undefined, seqs: [], isSorted: true }
   const segments = [...new Map(parts.map((part) => [part.segment, part])).values()]
-  const seqs = [...new Set(parts.map(({ seq }) => seq))]
+  const seqs = [...new Set(parts.map(({ seq }) => seq))].sort((a, b) => a - b)
   const hasDead = parts.some(({ deadRows }) => deadRows > 0)
   const conditions = [
     window.fromMs === undefined ? '' : `time >= ${Math.ceil(window.fromMs)}`,
@@ -53,7 +57,9 @@ export async function winningRows(
   const rows = `SELECT * FROM ${segmentRows(files, segments)}
     ${conditions.length > 0 ? `WHERE ${conditions.join(' AND ')}` : ''}`
   const contested = contestedTurbines(parts)
-  if (contested.length === 0) return { source: `(${rows})`, isSorted: segments.length === 1 }
+  if (contested.length === 0) {
+    return { source: `(${rows})`, withOverruled: undefined, seqs, isSorted: segments.length === 1 }
+  }
   const turbines = inList(contested)
   const own = `(SELECT * FROM (${rows}) WHERE turbine IN ${turbines})`
   // A join over three columns spills to disk; a window over whole rows fails at 256 MB on two months of 1 Hz rows.
@@ -61,6 +67,8 @@ export async function winningRows(
   return {
     source: `(SELECT * FROM (${rows}) WHERE turbine NOT IN ${turbines}
       UNION ALL SELECT * FROM ${own} SEMI JOIN (${winners}) USING (turbine, time, batch_seq))`,
+    withOverruled: `(${rows})`,
+    seqs,
     isSorted: false,
   }
 }

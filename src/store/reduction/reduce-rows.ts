@@ -1,5 +1,5 @@
 import { quoteText, readColumns, type Connection, type Scans } from '../../duck/index.ts'
-import type { TurbineRows } from '../read-rows.ts'
+import { countRows, type TurbineCount, type TurbineRows } from '../read-rows.ts'
 import { REDUCED_INTERVAL_S } from './high-rate.ts'
 import { highRateChannels, intervalSumsSql, sumNames, type HighRateChannel } from './interval-sums.ts'
 import { intervalValues } from './interval-values.ts'
@@ -29,17 +29,8 @@ export async function reduceRows(scans: Scans, path: string, intervalS: number):
     const nameOf = (column: (typeof described)[number]) => String(column['column_name'])
     const channels = highRateChannels(described.filter((column) => !isText(column)).map(nameOf))
     const texts = described.filter(isText).map(nameOf)
-    const turbines = await connection.records(
-      `SELECT turbine, min(time) AS first_ms, max(time) AS last_ms FROM ${source}
-       GROUP BY turbine ORDER BY turbine COLLATE "C"`,
-    )
     const reduced: TurbineRows[] = []
-    for (const row of turbines) {
-      const extent = {
-        turbine: row['turbine'] as string,
-        firstMs: row['first_ms'] as number,
-        lastMs: row['last_ms'] as number,
-      }
+    for (const extent of await countRows(scans, path)) {
       reduced.push(await reduceTurbine(connection, source, extent, { channels, texts, intervalS }))
     }
     return reduced
@@ -49,7 +40,7 @@ export async function reduceRows(scans: Scans, path: string, intervalS: number):
 async function reduceTurbine(
   connection: Connection,
   source: string,
-  { turbine, firstMs, lastMs }: { turbine: string; firstMs: number; lastMs: number },
+  { turbine, firstMs, lastMs }: TurbineCount,
   about: { channels: readonly HighRateChannel[]; texts: readonly string[]; intervalS: number },
 ): Promise<TurbineRows> {
   const own = `turbine = ${quoteText(turbine)}`
