@@ -54,7 +54,11 @@ function medianDifference(values: Float64Array, reference: Float64Array): number
   return differences.length === 0 ? NaN : wrap180(circularMedian(differences))
 }
 
-function meanDirection(indicated: GridChannel, constant: Float64Array, length: number): Float64Array<ArrayBuffer> {
+function meanDirection(
+  indicated: GridChannel,
+  constant: Float64Array,
+  length: number,
+): Float64Array<ArrayBuffer> {
   const mean = new Float64Array(length).fill(NaN)
   for (let t = 0; t < length; t++) {
     let sin = 0
@@ -73,7 +77,7 @@ function meanDirection(indicated: GridChannel, constant: Float64Array, length: n
 /** The constant is taken day by day, so that a position sensor that loses its zero spoils a day and no more. */
 function localDirection(values: Float64Array, consensus: Float64Array, grid: FarmGrid): Float64Array {
   const local = new Float64Array(values.length).fill(NaN)
-  for (let from = 0; from < values.length; ) {
+  for (let from = 0; from < values.length;) {
     let to = from + 1
     while (to < values.length && grid.day[to] === grid.day[from]) to++
     const differences: number[] = []

@@ -4,6 +4,7 @@ import {
   dayCellSums,
   huberWeight,
   robustSd,
+  robustStretch,
   serialNoise,
   slopeWithinCells,
   whiten,
@@ -41,6 +42,8 @@ export interface NeighbourSlope {
   /** Sums over days and sectors: their slope is that of the difference to the neighbours on x. */
   readonly sums: DayCellSums
   readonly direct: number
+  /** Deviations of resampled slopes times this are those of the estimate, as robust weights let it spread. */
+  readonly stretch: number
   readonly rows: number
   readonly days: number
 }
@@ -145,19 +148,22 @@ function compareOne(
   const white = partialOut(whiten(raw, places, noise), z.length)
   let weight = new Float64Array(n).fill(1)
   let sums = dayCellSums(layout, white[0]!, white[1]!, weight)
+  let stretch = 1
   for (let round = 0; round < ROBUST_ROUNDS; round++) {
     const s = slopeWithinCells(sums)
     const levels = cellLevels(sums, s)
     const left = white[1]!.map((value, r) => value - s * white[0]![r]! - levels[cell[r]!]!)
     const sd = robustSd(left)
-    weight = Float64Array.from(left, (value) => huberWeight(value / sd))
+    const standardised = left.map((value) => value / sd)
+    weight = standardised.map((value) => huberWeight(value))
+    stretch = robustStretch(standardised, white[0]!, huberWeight)
     sums = dayCellSums(layout, white[0]!, white[1]!, weight)
   }
   shared.forEach((_, j) => {
     if (j === i) return
     coupling[i * k + j] = slopeWithinCells(dayCellSums(layout, white[0]!, white[2 + j]!, weight))
   })
-  return { sums, direct: slopeWithinCells(sums), rows: n, days: new Set(day).size }
+  return { sums, direct: slopeWithinCells(sums), stretch, rows: n, days: new Set(day).size }
 }
 
 /** Takes the level of each turbine in each sector out, against the mean of all at the same time. */
@@ -204,7 +210,11 @@ function levelledAgainst(own: GridChannel, others: GridChannel, sector: Int32Arr
   })
 }
 
-function sectorMeans(series: Float64Array, mean: Float64Array, sector: Int32Array): Float64Array<ArrayBuffer> {
+function sectorMeans(
+  series: Float64Array,
+  mean: Float64Array,
+  sector: Int32Array,
+): Float64Array<ArrayBuffer> {
   const sum = new Float64Array(SECTORS)
   const count = new Float64Array(SECTORS)
   for (let t = 0; t < series.length; t++) {

@@ -6,6 +6,7 @@ import {
   dayCellSums,
   huberWeight,
   robustSd,
+  robustStretch,
   serialNoise,
   slopeWithinCells,
   whiten,
@@ -51,6 +52,8 @@ export interface OffsetFit {
   readonly converged: boolean
   /** Sums at the end: their slope is the last step of d, so resampled slopes are deviations of d. */
   readonly sums: DayCellSums
+  /** Resampled slopes times this are deviations of d as robust weights let it spread. */
+  readonly stretch: number
   /** Change of d per unit of anemometer response (relative change of wind speed per degree of vane), radians. */
   readonly perResponse: number
   readonly noise: OffsetNoise
@@ -87,6 +90,7 @@ export function fitOffset(
   let weight = new Float64Array(n).fill(1)
   let sums = dayCellSums(layout, x, y, weight)
   let converged = false
+  let stretch = 1
 
   const first = known ? SETTLING_ITERATIONS : 0
   for (let iteration = first; iteration < MAX_ITERATIONS && !converged; iteration++) {
@@ -96,13 +100,14 @@ export function fitOffset(
     const [whiteX, whiteY] = whiten([levelX, levelY], rows, noise.serial) as [Float64Array, Float64Array]
     sums = dayCellSums(layout, whiteX, whiteY, weight)
     const step = slopeWithinCells(sums)
-    if (Number.isNaN(step)) return { offset: NaN, converged: false, sums, perResponse: NaN, noise }
+    if (Number.isNaN(step))
+      return { offset: NaN, converged: false, sums, stretch: NaN, perResponse: NaN, noise }
     offset = clamp(offset + step, MAX_YAW_ERROR_RAD)
     if (iteration < SETTLING_ITERATIONS) {
       noise = measureNoise(rows, levelX, levelY, step, noise.scale)
     } else {
       const biweightFrom = SETTLING_ITERATIONS + HUBER_ITERATIONS
-      weight = robustWeights(
+      const robust = robustWeights(
         rows,
         whiteX,
         whiteY,
@@ -110,6 +115,8 @@ export function fitOffset(
         sums,
         iteration < biweightFrom ? huberWeight : biweight,
       )
+      weight = robust.weight
+      stretch = robust.stretch
       converged = iteration > biweightFrom && Math.abs(step) < CONVERGED_RAD
     }
   }
@@ -117,6 +124,7 @@ export function fitOffset(
     offset,
     converged,
     sums,
+    stretch,
     perResponse: perResponseOf(rows, layout, x, bySpeed, noise, weight),
     noise,
   }
@@ -212,14 +220,18 @@ function robustWeights(
   slope: number,
   sums: DayCellSums,
   robust: (standardised: number) => number,
-): Float64Array<ArrayBuffer> {
+): { weight: Float64Array<ArrayBuffer>; stretch: number } {
   const level = cellLevels(sums, slope)
   const weight = new Float64Array(x.length).fill(1)
   const residual = new Float64Array(x.length)
   for (let i = 0; i < x.length; i++) residual[i] = y[i]! - slope * x[i]! - level[rows.cell[i]!]!
   const sd = robustSd(residual)
-  if (sd > 0) for (let i = 0; i < x.length; i++) weight[i] = robust(residual[i]! / sd)
-  return weight
+  if (!(sd > 0)) return { weight, stretch: 1 }
+  for (let i = 0; i < x.length; i++) {
+    residual[i]! /= sd
+    weight[i] = robust(residual[i]!)
+  }
+  return { weight, stretch: robustStretch(residual, x, robust) }
 }
 
 function clamp(value: number, most: number): number {

@@ -1,29 +1,31 @@
-import { circularMean, wrap180 } from '../kernel/angle/index.ts'
-import { resampledSlopes, studentQuantile, type DayWeights } from '../kernel/stats/index.ts'
-import { powerAt } from '../kernel/wind/index.ts'
+import { DEG_PER_RAD, wrap180 } from '../kernel/angle/index.ts'
+import type { DayWeights } from '../kernel/stats/index.ts'
 import type { TurbineFrame } from '../frame/index.ts'
 import type { ScoringSettings, TurbineSheet } from '../sheet/index.ts'
+import type { TurbineResponse } from './anemometer-response.ts'
+import { furtherDays } from './further-days.ts'
 import { fitOffset } from './offset-fit.ts'
+import { offsetSpread, vaneByDay } from './offset-interval.ts'
 import { offsetRows, type OffsetRows } from './offset-rows.ts'
+import { powerByVane } from './power-by-vane.ts'
 import type { Block } from './readiness.ts'
-import { runningBelowRated } from './vane-statistics.ts'
+import { NORMAL_95 } from './resampled-spread.ts'
 
-const DEG_PER_RAD = 180 / Math.PI
 /** Exponents shown side by side: a low field value, the disk rule, and the cos-cubed rule. */
 export const SHOWN_EXPONENTS = [1.4, 2, 3] as const
-const NORMAL_95 = 1.959963984540054
 /**
  * Slow vane noise that the rotor does not feel flattens power against vane, so that m comes out too small by 2 to 9 %
  * (measured on simulated farms). Without a second vane its size is not known: half-width as a share of |m|.
  */
 const DILUTION_SHARE = 0.05
-const BIN_DEG = 2
 
 export interface StaticOffsetRequest {
   readonly settings: ScoringSettings
   /** Blocks of 1, 2 and 4 days over the calendar of the farm; the same for all its turbines. */
   readonly dayWeights: readonly DayWeights[]
   readonly days: number
+  /** What the neighbours tell of this anemometer's response; null or absent: nothing. */
+  readonly response?: TurbineResponse | null
 }
 
 /** The offset, and why there is none. */
@@ -45,7 +47,7 @@ export interface StaticOffsetAnswer {
  *
  * Days, not rows, are taken as independent: whole days are resampled in blocks of 1, 2 and 4, the levels refitted in each
  * resample; the widest of the three half-widths counts, with a t quantile for the number of blocks. To it come, as the
- * root of the sum of squares, what an unknown response of the anemometer would shift, and what slow vane noise may hide.
+ * root of the sum of squares, what is not known of the anemometer's response, and what slow vane noise may hide.
  *
  * @param block  a sensor that forbids an estimate, if any.
  * @returns null in the sheet, with `failure`, when there are too few rows or days, the vane does not vary, or a sensor blocks.
@@ -59,77 +61,58 @@ export function staticOffset(
   const rows = offsetRows(frame, days)
   const usedDays = new Set(rows.day).size
   const counts = { rows: rows.vane.length, days: usedDays }
-  const vane = vaneByDay(frame, days)
 
   const failure = block ?? tooLittle(rows, usedDays, settings)
   if (failure) return unanswered(frame, counts, failure)
 
-  const known = settings.assumedResponsePctPerDeg
-  const responsePerDeg = (known ?? 0) / 100
-  const fit = fitOffset(rows, { exponent: settings.exponent, responsePerDeg })
+  const anemometer = responseInForce(request)
+  const model = { exponent: settings.exponent, responsePerDeg: anemometer.perDeg }
+  const fit = fitOffset(rows, model)
   if (!fit.converged) {
     return unanswered(frame, counts, { code: 'no-fit', text: 'the fit of power against vane did not settle' })
   }
-  const statistical = dayWeights
-    .map((weights) => halfWidths(resampledSlopes(fit.sums, weights), vane, weights, usedDays))
-    .reduce((widest, next) => (next.standing > widest.standing ? next : widest))
-  const response =
-    known === null
-      ? (NORMAL_95 * settings.responseSpreadPctPerDeg * Math.abs(fit.perResponse) * DEG_PER_RAD) / 100
-      : 0
+  const vane = vaneByDay(frame, days)
+  const statistical = offsetSpread(fit, vane, dayWeights, usedDays)
+  const response = NORMAL_95 * Math.abs(fit.perResponse) * DEG_PER_RAD * anemometer.sdPerDeg
 
   const offsetDeg = wrap180(fit.offset * DEG_PER_RAD - rows.centreDeg)
   const standingDeg = wrap180(offsetDeg + vane.meanDeg)
   const dilution = DILUTION_SHARE * Math.abs(standingDeg)
-  const half = Math.hypot(statistical.offset, response, dilution)
-  const standingHalf = Math.hypot(statistical.standing, response, dilution)
+  const around = (centre: number, half: number): [number, number] => [centre - half, centre + half]
+  const interval = around(offsetDeg, Math.hypot(statistical.offset, response, dilution))
+  const standingInterval = around(standingDeg, Math.hypot(statistical.standing, response, dilution))
+
   const byExponent = SHOWN_EXPONENTS.map((exponent) => {
-    const shown =
-      exponent === settings.exponent
-        ? fit
-        : fitOffset(rows, { exponent, responsePerDeg }, { offset: fit.offset, noise: fit.noise })
+    if (exponent === settings.exponent) return { exponent, offsetDeg, standingDeg }
+    const shown = fitOffset(rows, { ...model, exponent }, { offset: fit.offset, noise: fit.noise })
     const shownDeg = shown.converged ? wrap180(shown.offset * DEG_PER_RAD - rows.centreDeg) : NaN
     return { exponent, offsetDeg: shownDeg, standingDeg: wrap180(shownDeg + vane.meanDeg) }
   })
-  const further = furtherDays(
-    standingDeg,
-    { statistical: statistical.standing, fixed: response },
-    usedDays,
-    settings,
-  )
-  const method = 'power against vane, own anemometer'
-  const leansOn =
-    known === null
-      ? `the anemometer's response to the vane is not known: taken as 0 +- ${settings.responseSpreadPctPerDeg} % per degree`
-      : `the anemometer's response to the vane is taken as known: ${known} % per degree`
+  // Neighbours' comparison shrinks with days; a response that is only bounded by a setting does not.
+  const shrinking = anemometer.measured ? Math.hypot(statistical.standing, response) : statistical.standing
+  const fixed = anemometer.measured ? dilution : Math.hypot(response, dilution)
+  const further = furtherDays(standingDeg, { shrinking, fixed }, usedDays, settings.actionThresholdDeg)
+  const method = anemometer.measured
+    ? 'power against vane, own anemometer corrected for its response'
+    : 'power against vane, own anemometer'
   return {
     failure: null,
     byExponent,
-    standing: {
-      offsetDeg,
-      standingDeg,
-      standingInterval95Deg: [standingDeg - standingHalf, standingDeg + standingHalf],
-    },
+    standing: { offsetDeg, standingDeg, standingInterval95Deg: standingInterval },
     sheet: {
       ...emptySheet(frame, counts),
       estimateDeg: offsetDeg,
-      interval95Deg: [offsetDeg - half, offsetDeg + half],
+      interval95Deg: interval,
       standingMisalignmentDeg: standingDeg,
-      standingInterval95Deg: [standingDeg - standingHalf, standingDeg + standingHalf],
-      intervalParts: {
-        statistical: statistical.standing,
-        response,
-        exponent: 0,
-        instrument: 0,
-        dilution: null,
-      },
+      standingInterval95Deg: standingInterval,
+      intervalParts: { statistical: statistical.standing, response, exponent: 0, instrument: 0, dilution },
       method,
       estimates: [
         {
           method,
           estimateDeg: offsetDeg,
-          interval95Deg: [offsetDeg - half, offsetDeg + half],
-          leansOn,
+          interval95Deg: interval,
+          leansOn: anemometer.text,
           kind: 'slope',
           ...counts,
         },
@@ -143,6 +126,41 @@ export function staticOffset(
       furtherNote: further.note,
       bins: powerByVane(frame),
     },
+  }
+}
+
+/** The response that the fit takes: a stated one, else what neighbours tell, else none with the setting's spread. */
+function responseInForce({ settings, response }: StaticOffsetRequest): {
+  perDeg: number
+  sdPerDeg: number
+  measured: TurbineResponse | null
+  text: string
+} {
+  const known = settings.assumedResponsePctPerDeg
+  if (known !== null) {
+    return {
+      perDeg: known / 100,
+      sdPerDeg: 0,
+      measured: null,
+      text: `the anemometer's response to the vane is taken as known: ${known} % per degree`,
+    }
+  }
+  if (response) {
+    const pct = (value: number): string => (100 * value).toFixed(3)
+    return {
+      perDeg: response.perDeg,
+      sdPerDeg: response.sdPerDeg,
+      measured: response,
+      text:
+        `the anemometer's response to the vane, from ${response.rows} intervals against its neighbours: ` +
+        `${pct(response.perDeg)} +- ${pct(response.sdPerDeg)} % per degree`,
+    }
+  }
+  return {
+    perDeg: 0,
+    sdPerDeg: settings.responseSpreadPctPerDeg / 100,
+    measured: null,
+    text: `the anemometer's response to the vane is not known: taken as 0 +- ${settings.responseSpreadPctPerDeg} % per degree`,
   }
 }
 
@@ -177,122 +195,6 @@ function tooLittle(
     }
   }
   return null
-}
-
-interface VaneByDay {
-  readonly meanDeg: number
-  readonly sin: Float64Array
-  readonly cos: Float64Array
-}
-
-/** Sums per day of the running vane below rated: its mean turns d into m. */
-function vaneByDay(frame: TurbineFrame, days: number): VaneByDay {
-  const sin = new Float64Array(days)
-  const cos = new Float64Array(days)
-  const angles: number[] = []
-  for (const i of runningBelowRated(frame)) {
-    const angle = frame.vane[i]! / DEG_PER_RAD
-    sin[frame.day[i]!]! += Math.sin(angle)
-    cos[frame.day[i]!]! += Math.cos(angle)
-    angles.push(frame.vane[i]!)
-  }
-  return { meanDeg: wrap180(circularMean(angles).direction), sin, cos }
-}
-
-/** Half-widths at 95 %, degrees, of d and of m from one set of resamples. */
-function halfWidths(
-  deviations: Float64Array,
-  vane: VaneByDay,
-  weights: DayWeights,
-  usedDays: number,
-): { offset: number; standing: number } {
-  const blocks = usedDays / weights.blockDays
-  if (!(blocks >= 2)) return { offset: NaN, standing: -Infinity } // too few blocks of this length to say anything
-  const standing = new Float64Array(deviations.length)
-  for (let r = 0; r < deviations.length; r++) {
-    let sin = 0
-    let cos = 0
-    for (let d = 0; d < weights.days; d++) {
-      const times = weights.counts[r * weights.days + d]!
-      sin += times * vane.sin[d]!
-      cos += times * vane.cos[d]!
-    }
-    const meanDeg = Math.atan2(sin, cos) * DEG_PER_RAD
-    standing[r] = deviations[r]! * DEG_PER_RAD + wrap180(meanDeg - vane.meanDeg)
-  }
-  // A bootstrap over B blocks spreads as (B - 1) / B of the true variance.
-  const factor = studentQuantile(0.975, blocks - 1) * Math.sqrt(blocks / (blocks - 1))
-  return { offset: factor * spreadOf(deviations) * DEG_PER_RAD, standing: factor * spreadOf(standing) }
-}
-
-/** SD of resampled values; NaN (a resample without variation) is left out. */
-function spreadOf(values: Float64Array): number {
-  let n = 0
-  let mean = 0
-  let squares = 0
-  for (const value of values) {
-    if (Number.isNaN(value)) continue
-    n++
-    const delta = value - mean
-    mean += delta / n
-    squares += delta * (value - mean)
-  }
-  return n > 1 ? Math.sqrt(squares / (n - 1)) : NaN
-}
-
-/**
- * How many more days would give a verdict, from half-width^2 = A^2 / days + B^2: A the statistical part, B what days do not shrink.
- */
-function furtherDays(
-  standingDeg: number,
-  half: { statistical: number; fixed: number },
-  days: number,
-  settings: ScoringSettings,
-): { days: number | null; note: string } {
-  const threshold = settings.actionThresholdDeg
-  const size = Math.abs(standingDeg)
-  const needed = size < threshold ? threshold - size : size - threshold / 2
-  const now = Math.hypot(half.statistical, half.fixed)
-  if (now <= needed) return { days: null, note: 'no more days are needed for this verdict' }
-  if (half.fixed >= needed) {
-    return {
-      days: null,
-      note: 'more days will not settle it; a reference instrument, neighbours or a month of rows at 1 Hz would',
-    }
-  }
-  const total = (half.statistical ** 2 * days) / (needed ** 2 - half.fixed ** 2)
-  const further = Math.ceil(total - days)
-  if (further > 730)
-    return {
-      days: null,
-      note: 'the offset lies so close to the threshold that no practical number of days will settle it',
-    }
-  return { days: further, note: `about ${further} more days of such data would settle it` }
-}
-
-/** Power over the measured curve by vane, rows used for the offset. */
-function powerByVane(frame: TurbineFrame): TurbineSheet['staticOffset']['bins'] {
-  const groups = new Map<number, number[]>()
-  for (let i = 0; i < frame.time.length; i++) {
-    if (frame.reason[i] !== 0) continue
-    const bin = Math.floor((frame.vane[i]! + BIN_DEG / 2) / BIN_DEG)
-    const ratio = frame.power[i]! / powerAt(frame.curve, frame.normalisedSpeed[i]!)
-    const group = groups.get(bin)
-    if (group) group.push(ratio)
-    else groups.set(bin, [ratio])
-  }
-  return [...groups]
-    .sort(([a], [b]) => a - b)
-    .map(([bin, ratios]) => {
-      const mean = ratios.reduce((sum, ratio) => sum + ratio, 0) / ratios.length
-      return {
-        vaneFromDeg: bin * BIN_DEG - BIN_DEG / 2,
-        vaneToDeg: bin * BIN_DEG + BIN_DEG / 2,
-        rows: ratios.length,
-        relativePowerMean: mean,
-        relativePowerSd: spreadOf(Float64Array.from(ratios)),
-      }
-    })
 }
 
 function emptySheet(

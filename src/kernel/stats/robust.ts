@@ -89,3 +89,29 @@ export function biweight(standardised: number, cut = 4.685): number {
   const ratio = standardised / cut
   return Math.abs(ratio) < 1 ? (1 - ratio * ratio) ** 2 : 0
 }
+
+/**
+ * By how much estimates spread more than a regression with the final robust weights held fixed says: a row that moves
+ * outwards also loses weight. Sum of w x^2 over sum of psi' x^2, with psi = w(z) z the score and psi' its derivative.
+ *
+ * @param standardised  residuals over their standard deviation; length n. x: the regressor; length n.
+ * @param weightOf  {@link huberWeight} or {@link biweight}
+ * @returns >= 1 for these weights; 1 where nothing is known.
+ * @source Huber & Ronchetti (2009), Robust Statistics, 2nd ed., section 7.6: asymptotic variance of M-estimates of regression.
+ */
+export function robustStretch(
+  standardised: Float64Array,
+  x: Float64Array,
+  weightOf: (standardised: number) => number,
+): number {
+  const step = 1e-4
+  let weights = 0
+  let slopes = 0
+  for (let i = 0; i < x.length; i++) {
+    const z = standardised[i]!
+    const square = x[i]! * x[i]!
+    weights += weightOf(z) * square
+    slopes += ((weightOf(z + step) * (z + step) - weightOf(z - step) * (z - step)) / (2 * step)) * square
+  }
+  return slopes > 0 && weights > slopes ? weights / slopes : 1
+}
