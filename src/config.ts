@@ -101,9 +101,13 @@ function scoring(key: NumberSetting, unit: string, defaultValue: number): Entry<
   })
 }
 
+const [responseRange] = ScoringSettings.properties.assumedResponsePctPerDeg.anyOf as unknown as [
+  { minimum: number; maximum: number },
+]
+
 const assumedResponse = number({
-  min: -5,
-  max: 5,
+  min: responseRange.minimum,
+  max: responseRange.maximum,
   default: 0,
   unit: '% per degree',
   text: 'response of the anemometer to the vane, taken as known; none: unknown',
@@ -157,6 +161,20 @@ export const SETTINGS = {
     default: Math.max(1, availableParallelism() - 1),
     unit: '',
     text: 'worker threads that score turbines; default: cores less one',
+  }),
+  uploadsAtOnce: integer({
+    min: 1,
+    max: 64,
+    default: 2,
+    unit: '',
+    text: 'most requests whose logs are read and scored at once; others wait',
+  }),
+  uploadsWaiting: integer({
+    min: 0,
+    max: 1000,
+    default: 16,
+    unit: '',
+    text: 'most requests that wait for their turn; one more is refused (503 BUSY)',
   }),
   uploadIdleS: integer({
     min: 1,

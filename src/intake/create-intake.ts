@@ -1,7 +1,14 @@
 import { mkdir, rm } from 'node:fs/promises'
 import { join } from 'node:path'
 import { InputError } from '../errors.ts'
-import { stageLog, type LogLimits, type LogReading, type LogSource } from '../log/index.ts'
+import {
+  describeLog,
+  stageLog,
+  type LogDescription,
+  type LogLimits,
+  type LogReading,
+  type LogSource,
+} from '../log/index.ts'
 import type { ReadingOptions, Receipt, SiteFile } from '../sheet/index.ts'
 import type { Store, StoredBatch } from '../store/index.ts'
 import { contentKey, fileHashes } from './content-key.ts'
@@ -19,6 +26,12 @@ export interface Intake {
     logs: readonly LogSource[],
     reading: ReadingOptions,
   ): Promise<{ batch: StoredBatch; isNew: boolean }>
+  /**
+   * Says how logs would be read, one answer a log, and keeps nothing.
+   * @param file  the site file whose zone and stamp count where the reading says nothing
+   * @throws InputError LOG_NOT_FOUND, LOG_CORRUPT, LOG_EMPTY
+   */
+  describe(logs: readonly LogSource[], reading: ReadingOptions, file?: SiteFile): Promise<LogDescription[]>
   /** @throws InputError SITE_NOT_FOUND, BATCH_NOT_FOUND */
   get(site: string, batch: string): Promise<StoredBatch>
   /** Newest first. @throws InputError SITE_NOT_FOUND, BAD_REQUEST */
@@ -70,6 +83,12 @@ export function createIntake({ store, limits, newId }: IntakeParts): Intake {
       } finally {
         await rm(folder, { recursive: true, force: true })
       }
+    },
+    async describe(logs, reading, file = {}) {
+      const parts = { scans: store.scans, folder: store.tempFolder, limits }
+      const descriptions: LogDescription[] = []
+      for (const log of logs) descriptions.push(await describeLog(log, withDefaults(reading, file), parts))
+      return descriptions
     },
     get: (site, batch) => store.logs.get(site, batch),
     list: (site, page) => store.logs.list(site, page),

@@ -92,7 +92,13 @@ export interface Replays {
   rows(id: string, format: RowsFormat): Promise<RowsExport>
   /** @throws InputError REPLAY_NOT_FOUND */
   get(id: string): Promise<ReplayRecord>
-  list(page: { after?: string; limit: number }): Promise<{ replays: ReplayRecord[]; next: string | null }>
+  /** Newest first, without sheets. `site`, `state`: only such replays. @throws InputError BAD_REQUEST */
+  list(page: {
+    after?: string
+    limit: number
+    site?: string
+    state?: ReplayStateName
+  }): Promise<{ replays: ReplayRecord[]; next: string | null }>
   /**
    * Cancels a replay that waits or runs: its state becomes `cancelled` and stays to be read. Removes any other one with
    * its rows.

@@ -3,6 +3,14 @@ import { TurbineSetup, type SiteFile } from '../sheet/index.ts'
 import type { Store } from '../store/index.ts'
 import { checkShape } from './check-shape.ts'
 import { checkSite } from './check-site.ts'
+import {
+  checkEntry,
+  entriesOf,
+  withEntry,
+  withoutEntry,
+  type EntryList,
+  type SiteEntry,
+} from './site-entries.ts'
 
 /** What is known about sites and their turbines. */
 export interface Setup {
@@ -24,6 +32,19 @@ export interface Setup {
   getTurbine(site: string, turbine: string): Promise<TurbineSetup>
   /** Its set-up; rows of its logs stay. @throws InputError SITE_NOT_FOUND, TURBINE_NOT_FOUND */
   removeTurbine(site: string, turbine: string): Promise<void>
+  /** What a list of the site file holds, by time. @throws InputError SITE_NOT_FOUND */
+  listEntries<L extends EntryList>(site: string, list: L): Promise<SiteEntry<L>[]>
+  /**
+   * Adds an entry to a list of the site file; one that is there already is not added again.
+   * @throws InputError SITE_NOT_FOUND, BAD_SITE
+   */
+  addEntry<L extends EntryList>(
+    site: string,
+    list: L,
+    value: unknown,
+  ): Promise<{ entry: SiteEntry<L>; isNew: boolean }>
+  /** @throws InputError SITE_NOT_FOUND, ENTRY_NOT_FOUND */
+  removeEntry(site: string, list: EntryList, id: string): Promise<void>
 }
 
 export function createSetup(store: Store): Setup {
@@ -82,6 +103,19 @@ export function createSetup(store: Store): Setup {
         if (turbines.length === (file.turbines ?? []).length) missing(site, turbine)
         return { ...file, turbines }
       })
+    },
+    listEntries: async (site, list) => entriesOf(await getSite(site), list),
+    async addEntry(site, list, value) {
+      const entry = checkEntry(list, value)
+      let isNew = false
+      await store.sites.change(site, (file) => {
+        isNew = !entriesOf(file, list).some(({ id }) => id === entry.id)
+        return isNew ? checkSite(withEntry(file, list, entry), 'site') : file
+      })
+      return { entry, isNew }
+    },
+    async removeEntry(site, list, id) {
+      await store.sites.change(site, (file) => withoutEntry(file, list, id))
     },
   }
 }

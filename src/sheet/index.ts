@@ -1,4 +1,5 @@
 export * from './channels.ts'
+export * from './common.ts'
 export * from './problem.ts'
 export * from './reading.ts'
 export * from './receipt.ts'

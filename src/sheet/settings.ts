@@ -22,6 +22,7 @@ export const ScoringSettings = Type.Object(
     seed: Type.Integer({ minimum: 0, maximum: 4294967295, description: 'seed of the day weights' }),
     assumedResponsePctPerDeg: Nullable(
       'response of the anemometer to the vane, % per degree, taken as known; null: unknown',
+      { minimum: -5, maximum: 5 },
     ),
     responseSpreadPctPerDeg: Type.Number({
       minimum: 0,

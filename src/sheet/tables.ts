@@ -1,0 +1,68 @@
+import { table } from 'arquero'
+import type { ScoreSheet, TurbineSheet, WorklistEntry } from './score-sheet.ts'
+
+// Not listed in index.ts: whoever wants the shapes alone shall not load a table library, and worker threads least of all.
+
+export type Cell = string | number | boolean | null
+export type TableRow = Readonly<Record<string, Cell>>
+
+/**
+ * Rows as CSV with a header. What is not known is an empty field.
+ * @param columns  header of a table without a row; otherwise the names of the first row count.
+ */
+export function toCsv(rows: readonly TableRow[], columns: readonly string[]): string {
+  const [first] = rows
+  if (first === undefined) return `${columns.join(',')}\n`
+  const names = Object.keys(first)
+  const known = (cell: Cell | undefined) => (cell === undefined || Number.isNaN(cell) ? null : cell)
+  const cells = Object.fromEntries(names.map((name) => [name, rows.map((row) => known(row[name]))]))
+  return table(cells, names).toCSV()
+}
+
+/** The worklist, first rank first. */
+export function worklistRows(worklist: readonly WorklistEntry[]): TableRow[] {
+  return worklist.map((one, index) => ({
+    rank: index + 1,
+    turbine: one.turbine,
+    standingMisalignmentDeg: one.standingMisalignmentDeg,
+    addToVaneDeg: one.addToVaneDeg,
+    expectedAnnualMwh: one.expectedAnnualMwh,
+    lowerMwh: one.interval95Mwh[0] ?? null,
+    upperMwh: one.interval95Mwh[1] ?? null,
+    why: one.why,
+    checkFirst: one.checkFirst,
+    cautions: one.cautions.join('; '),
+  }))
+}
+
+/** One row a turbine: verdict, misalignment, loss. */
+export function turbineRows(turbines: readonly TurbineSheet[]): TableRow[] {
+  return turbines.map((one) => ({
+    turbine: one.turbine,
+    verdict: one.verdict,
+    reason: one.reason,
+    standingMisalignmentDeg: one.staticOffset.standingMisalignmentDeg,
+    standingLowerDeg: one.staticOffset.standingInterval95Deg[0] ?? null,
+    standingUpperDeg: one.staticOffset.standingInterval95Deg[1] ?? null,
+    staticOffsetDeg: one.staticOffset.estimateDeg,
+    score: one.score,
+    vaneMeanDeg: one.vane.meanDeg,
+    yawErrorCircularSdDeg: one.yawError.circularSdDeg,
+    recoverablePctOfProduced: one.energyLoss.static.recoverablePctOfProduced,
+    annualMwh: one.energyLoss.static.annualMwh,
+    annualLowerMwh: one.energyLoss.static.annualInterval95Mwh[0] ?? null,
+    annualUpperMwh: one.energyLoss.static.annualInterval95Mwh[1] ?? null,
+    rowsAccepted: one.rows.accepted,
+    rowsUsed: one.rows.used,
+    signChecked: one.staticOffset.signChecked,
+    vaneLogged: one.staticOffset.vaneLogged,
+    cautions: one.cautions.join('; '),
+  }))
+}
+
+/** Rows set aside, by turbine and reason. */
+export function setAsideRows(sheet: ScoreSheet): TableRow[] {
+  return sheet.turbines.flatMap((one) =>
+    one.rows.setAside.map(({ reason, rows }) => ({ turbine: one.turbine, reason, rows })),
+  )
+}
