@@ -8,3 +8,5 @@ export { SHOWN_EXPONENTS, staticOffset, type StaticOffsetAnswer } from './static
 export { vaneStatistics } from './vane-statistics.ts'
 export { verdictOf, type Verdict } from './verdict.ts'
 export { yawError } from './yaw-error.ts'
+export { clockLags, clockLagsOf, type ClockLag } from './clock-lag.ts'
+export { signChecks, type SignCheck } from './sign-check.ts'
