@@ -66,7 +66,7 @@ export function signChecks(frame: Frame): SignCheck[] {
   const consensus = consensusOfOthers(turns)
   return frame.turbines.map((turbine, k) => {
     const own = ownMoves(turbine)
-    const neighbours = consensus === null ? UNKNOWN : neighbourTurns(turns[k]!, consensus(k))
+    const neighbours = consensus === null ? UNKNOWN : neighbourTurns(turns[k]!, consensus)
     return conclude(turbine, own, neighbours, frame.turbines.length)
   })
 }
@@ -179,33 +179,36 @@ function turnsOf(turbine: TurbineFrame, frame: Frame): Turns {
   }
 }
 
-/** For a turbine, the median turn of the others in each slot where at least two know theirs; null for too small a farm. */
-function consensusOfOthers(turns: readonly Turns[]): ((k: number) => Map<number, number>) | null {
+/** For a turbine, the median turn of the others at each moment where at least two know theirs. */
+type Consensus = (at: number, ownTurnDeg: number) => number
+
+/** NaN where too few others turn; null for too small a farm. */
+function consensusOfOthers(turns: readonly Turns[]): Consensus | null {
   if (turns.filter(({ slot }) => slot.length > 0).length < FEWEST_TURBINES) return null
-  const bySlot = new Map<number, { turbine: number; turnDeg: number }[]>()
-  turns.forEach(({ slot, turnDeg }, turbine) => {
+  const bySlot = new Map<number, number[]>()
+  for (const { slot, turnDeg } of turns) {
     slot.forEach((at, i) => {
-      const entry = { turbine, turnDeg: turnDeg[i]! }
       const list = bySlot.get(at)
-      if (list) list.push(entry)
-      else bySlot.set(at, [entry])
+      if (list) list.push(turnDeg[i]!)
+      else bySlot.set(at, [turnDeg[i]!])
     })
-  })
-  return (k) => {
-    const medians = new Map<number, number>()
-    for (const [at, list] of bySlot) {
-      const others = list.filter(({ turbine }) => turbine !== k).map(({ turnDeg }) => turnDeg)
-      if (others.length >= FEWEST_TURBINES - 1) medians.set(at, medianOf(others))
-    }
-    return medians
+  }
+  for (const list of bySlot.values()) list.sort((a, b) => a - b)
+  return (at, ownTurnDeg) => {
+    const sorted = bySlot.get(at)!
+    const others = sorted.length - 1
+    if (others < FEWEST_TURBINES - 1) return NaN
+    const own = sorted.indexOf(ownTurnDeg)
+    const nth = (rank: number): number => sorted[rank < own ? rank : rank + 1]!
+    return (nth((others - 1) >> 1) + nth(others >> 1)) / 2
   }
 }
 
-function neighbourTurns(own: Turns, others: Map<number, number>): Agreement {
+function neighbourTurns(own: Turns, consensus: Consensus): Agreement {
   const sums = new PairSums()
   own.slot.forEach((at, i) => {
-    const other = others.get(at)
-    if (other !== undefined) sums.add(own.block[i]!, own.turnDeg[i]!, other)
+    const others = consensus(at, own.turnDeg[i]!)
+    if (!Number.isNaN(others)) sums.add(own.block[i]!, own.turnDeg[i]!, others)
   })
   return sums.agreement()
 }

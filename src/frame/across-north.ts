@@ -104,7 +104,7 @@ export function acrossNorth(input: AcrossNorthInput): AcrossNorth {
     flags.nacelle_position = findChannel(
       nacellePosition,
       seam,
-      { expect, drop, unrestDeg: unrestOf(sum ?? alone) },
+      { expect, drop, unrestDeg: unrestOf(sum ?? alone), isSteady: steadyIn(sum ?? alone) },
       (i) =>
         mismatch ? windAgrees(mismatch[i]!, around(windDirection!.mean, i), windDirection!.mean[i]!) : false,
     )
@@ -115,7 +115,12 @@ export function acrossNorth(input: AcrossNorthInput): AcrossNorth {
     flags.wind_direction = findChannel(
       windDirection,
       seam,
-      { expect: (i) => around(alone, i), drop: (i) => (alone[i] = NaN), unrestDeg: unrestOf(alone) },
+      {
+        expect: (i) => around(alone, i),
+        drop: (i) => (alone[i] = NaN),
+        unrestDeg: unrestOf(alone),
+        isSteady: steadyIn(alone),
+      },
       (i) =>
         mismatch !== undefined &&
         flags.nacelle_position[i] === 0 &&
@@ -202,10 +207,18 @@ function unrestOf(angles: Float64Array): number {
   )
 }
 
+function steadyIn(angles: Float64Array): (i: number) => boolean {
+  const near = (i: number, j: number): boolean =>
+    Math.abs(wrap180(angles[i]! - (angles[j] ?? NaN))) < CONTRADICTION_WITH_EVIDENCE_DEG
+  return (i) => near(i, i - 1) && near(i, i + 1)
+}
+
 /** What the rows around say of a row, and how to leave a row out of that from now on. */
 interface Judge {
   /** Robust SD of a row against the rows before and after, degrees. */
   readonly unrestDeg: number
+  /** Whether a row agrees with the rows before and after, so that nothing has to be looked at. */
+  readonly isSteady: (i: number) => boolean
   readonly expect: (i: number) => Expectation
   readonly drop: (i: number) => void
 }
@@ -218,16 +231,22 @@ function findChannel(
 ): Uint8Array {
   const flags = new Uint8Array(angle.mean.length)
   if (Number.isNaN(seam)) return flags
+  let open: number[] = []
+  for (let i = 0; i < flags.length; i++) {
+    // Both sides of the seam, averaged, give something well away from it.
+    if (!(Math.abs(wrap180(angle.mean[i]! - seam)) > CONTRADICTION_WITH_EVIDENCE_DEG)) continue
+    const crossed = crossing(angle, i, seam)
+    if (crossed === 'yes' || crossed === 'proved' || (crossed === 'unknown' && !judge.isSteady(i)))
+      open.push(i)
+  }
   for (let pass = 0; pass < PASSES; pass++) {
-    const found: number[] = []
-    for (let i = 0; i < flags.length; i++) {
-      if (flags[i] === 0 && isAveraged(angle, seam, i, judge, isContradicted)) found.push(i)
-    }
+    const found = open.filter((i) => isAveraged(angle, seam, i, judge, isContradicted))
     for (const i of found) {
       flags[i] = 1
       judge.drop(i)
     }
     if (found.length === 0) break
+    open = open.filter((i) => flags[i] === 0)
   }
   return flags
 }
@@ -241,10 +260,8 @@ function isAveraged(
 ): boolean {
   const value = angle.mean[i]!
   const fromSeamDeg = Math.abs(wrap180(value - seam))
-  // Both sides of the seam, averaged, give something well away from it.
-  if (!(fromSeamDeg > CONTRADICTION_WITH_EVIDENCE_DEG)) return false
   const crossed = crossing(angle, i, seam)
-  if (crossed === 'no' || crossed === 'proved') return crossed === 'proved'
+  if (crossed === 'proved') return true
   const expected = judge.expect(i)
   if (expected.count === 0) return crossed === 'yes' && fromSeamDeg > REACH_DEG
   const hasEvidence = crossed === 'yes' || isContradicted(i)
