@@ -1,11 +1,18 @@
 import { mkdir, rm } from 'node:fs/promises'
 import { join } from 'node:path'
+import PQueue from 'p-queue'
 import { InputError } from '../errors.ts'
 import { stageLog, type LogLimits, type StagedLog } from '../log/index.ts'
-import { readRows, type Store } from '../store/index.ts'
-import type { OneShotRequest, Progress, ReplayRecord, Replays } from './contract.ts'
-import { scoreFarm } from './score-farm.ts'
+import type { Receipt, ScoreSheet } from '../sheet/index.ts'
+import type { Store, StoredReplay } from '../store/index.ts'
+import type { OneShotRequest, Progress, ReplayRecord, Replays, StoredRequest } from './contract.ts'
+import { frameRows, type KeptRequest } from './frame-rows.ts'
+import { guardedScorers } from './guarded-scorers.ts'
+import { exportRows } from './rows-export.ts'
+import { RunningReplays, type Run } from './running-replays.ts'
+import { scoreRows, type RowsToScore } from './score-rows.ts'
 import type { Scorers } from './scorers.ts'
+import { checkStored, readStored } from './stored-window.ts'
 
 export interface ReplayParts {
   readonly store: Store
@@ -15,77 +22,179 @@ export interface ReplayParts {
   readonly version: string
   readonly clock: () => number
   readonly newId: () => string
+  /** Replays of the queue that run side by side. Default 1. */
+  readonly replaysAtOnce?: number
+  /** Told of faults of this program in replays that run in the background. Default: nobody. */
+  readonly report?: (error: unknown) => void
 }
 
 /** Runs replays over the given store and keeps their sheets and frames in it. */
 export function createReplays(parts: ReplayParts): Replays {
-  const { store } = parts
+  const { store, clock, report = () => undefined } = parts
+  const running = new RunningReplays()
+  const queue = new PQueue({ concurrency: parts.replaysAtOnce ?? 1 })
 
-  const oneShot = async (
-    request: OneShotRequest,
-    onProgress: (progress: Progress) => void = () => undefined,
-  ) => {
+  const score = (work: RowsToScore, { signal, onProgress }: Run) => {
+    const scorers = { ...parts.scorers, ...guardedScorers(parts.scorers, signal) }
+    return scoreRows({ store, scorers, version: parts.version, clock }, work, signal, onProgress)
+  }
+
+  const scoreStored = async (id: string, request: StoredRequest, run: Run, folder: string) => {
+    run.onProgress({ stage: 'reading', share: 0 })
+    const window = await readStored(store, request, folder)
+    checkChannels(window)
+    run.signal.throwIfAborted()
+    return score({ ...request, ...window, id, keepScoredOnly: true }, run)
+  }
+
+  /** A replay whose caller waits for the sheet: when it fails, the caller has the error in hand and nothing is listed. */
+  const inForeground = async (
+    work: (id: string, run: Run, folder: string) => Promise<ScoreSheet>,
+    onProgress?: (progress: Progress) => void,
+  ): Promise<ScoreSheet> => {
     const id = parts.newId()
-    // A folder of its own: the log reader's working files have fixed names, and replays run side by side.
-    const folder = join(store.tempFolder, `replay-${id}`)
-    await mkdir(folder)
+    const run = running.enter(id, onProgress)
+    return running.carry(id, async () => {
+      try {
+        return await withFolder(store, id, (folder) => work(id, run, folder))
+      } catch (error) {
+        await store.frames.remove(id)
+        if (run.signal.aborted) throw run.signal.reason
+        await store.replays.remove(id)
+        throw error
+      }
+    })
+  }
+
+  const inBackground = async (id: string, request: StoredRequest, run: Run): Promise<void> => {
     try {
-      const staged = await stage(parts, folder, request, onProgress)
-      await store.replays.begin({ id, site: request.site.site ?? null, createdMs: parts.clock() })
-      checkChannels(staged)
-      const farm = await readRows(store.scans, staged.path)
-      onProgress({ stage: 'scoring', share: 0 })
-      const sheet = await scoreFarm(
-        farm,
-        {
-          replay: id,
-          version: parts.version,
-          site: request.site,
-          settings: request.settings,
-          ratedPowerKw: request.ratedPowerKw,
-          receipt: staged.receipt,
-          reading: { ...request.reading },
-        },
-        parts.scorers,
-        (done, of) => {
-          onProgress({ stage: 'scoring', share: done / of })
-        },
-      )
-      onProgress({ stage: 'writing', share: 0 })
-      await store.frames.keep(id, staged.path)
-      await store.replays.finish(id, JSON.stringify(sheet), parts.clock())
-      return sheet
+      await store.replays.run(id)
+      await withFolder(store, id, (folder) => scoreStored(id, request, run, folder))
     } catch (error) {
       await store.frames.remove(id)
-      await store.replays.remove(id) // the caller has the error in hand; a replay that never was is not listed
-      throw error
-    } finally {
-      await rm(folder, { recursive: true, force: true })
+      if (run.signal.aborted) return // cancelled, and noted so; or interrupted, which the next start notes
+      if (!(error instanceof InputError)) report(error)
+      await store.replays.fail(id, problemOf(error), clock())
     }
   }
 
   return {
-    oneShot,
+    oneShot: (request, onProgress) =>
+      inForeground(async (id, run, folder) => {
+        run.onProgress({ stage: 'reading', share: 0 })
+        const staged = await stage(parts, folder, request)
+        run.signal.throwIfAborted()
+        await store.replays.begin({ id, site: request.site.site ?? null, createdMs: clock() })
+        checkChannels(staged)
+        const { site, settings, ratedPowerKw } = request
+        const { path, receipt } = staged
+        return score(
+          {
+            id,
+            path,
+            receipt,
+            site,
+            settings,
+            ratedPowerKw,
+            loggedIntervalsS: [receipt.intervalS],
+            reading: { ...request.reading },
+            keepScoredOnly: false,
+          },
+          run,
+        )
+      }, onProgress),
+    stored: (request, onProgress) =>
+      inForeground(async (id, run, folder) => {
+        await checkStored(store, request)
+        await store.replays.begin({ id, site: request.site, createdMs: clock() })
+        return scoreStored(id, request, run, folder)
+      }, onProgress),
+    async start(request) {
+      await checkStored(store, request)
+      const id = parts.newId()
+      const run = running.enter(id)
+      try {
+        await store.replays.begin({ id, site: request.site, createdMs: clock(), state: 'queued' })
+      } catch (error) {
+        running.leave(id)
+        throw error
+      }
+      queue
+        .add(() => running.carry(id, () => inBackground(id, request, run)), { signal: run.signal })
+        .catch((error: unknown) => {
+          running.leave(id)
+          if (!run.signal.aborted) report(error)
+        })
+      return { id }
+    },
+    async rows(id, format) {
+      const record = await store.replays.get(id)
+      if (!record?.sheet) throw notFound(id, 'the id of a replay with a sheet')
+      const path = await store.frames.path(id)
+      const request = await store.replays.request(id)
+      if (path === undefined || request === undefined) {
+        throw new InputError(
+          'FRAME_GONE',
+          `replay ${id}: expected its rows, got none: they are kept for some days only; its sheet is still there`,
+        )
+      }
+      const kept = JSON.parse(request) as KeptRequest
+      const sheet = JSON.parse(record.sheet) as ScoreSheet
+      const farm = await frameRows(store.scans, path, kept.reducedFromS)
+      return exportRows(store, farm, {
+        kept,
+        format,
+        intervalS: sheet.window.intervalS ?? 600,
+        folder: join(store.tempFolder, `rows-${parts.newId()}`),
+      })
+    },
     async get(id): Promise<ReplayRecord> {
       const record = await store.replays.get(id)
       if (!record) throw notFound(id)
-      return record
+      return withProgress(record, running)
     },
-    list: (page) => store.replays.list({ ...page, sheets: false }),
+    async list(page) {
+      const { replays, next } = await store.replays.list({ ...page, sheets: false })
+      return { replays: replays.map((record) => withProgress(record, running)), next }
+    },
     async remove(id) {
+      if (running.has(id) && (await cancelled(store, id, clock()))) {
+        running.cancel(id)
+        return
+      }
       await store.frames.remove(id)
       if (!(await store.replays.remove(id))) throw notFound(id)
+    },
+    async close() {
+      queue.pause()
+      await running.close()
     },
   }
 }
 
-async function stage(
-  parts: ReplayParts,
-  folder: string,
-  request: OneShotRequest,
-  onProgress: (progress: Progress) => void,
-): Promise<StagedLog> {
-  onProgress({ stage: 'reading', share: 0 })
+/** A folder of its own: working files have fixed names, and replays run side by side. */
+async function withFolder<T>(store: Store, id: string, work: (folder: string) => Promise<T>): Promise<T> {
+  const folder = join(store.tempFolder, `replay-${id}`)
+  await mkdir(folder)
+  try {
+    return await work(folder)
+  } finally {
+    await rm(folder, { recursive: true, force: true })
+  }
+}
+
+/** False when it had ended in the meantime, or is not noted yet. */
+async function cancelled(store: Store, id: string, nowMs: number): Promise<boolean> {
+  try {
+    await store.replays.cancel(id, nowMs)
+    return true
+  } catch (error) {
+    if (error instanceof InputError && error.code === 'REPLAY_NOT_FOUND') return false
+    throw error
+  }
+}
+
+async function stage(parts: ReplayParts, folder: string, request: OneShotRequest): Promise<StagedLog> {
   const { site, reading } = request
   return stageLog(
     request.logs,
@@ -99,8 +208,12 @@ async function stage(
 }
 
 /** The offset needs these; anything else in the log is welcome but not needed. */
-function checkChannels({ channels, receipt }: StagedLog): void {
-  const missing = ['wind_speed', 'vane', 'power'].filter((channel) => !channels.includes(channel))
+function checkChannels({ channels, receipt }: { channels: readonly string[]; receipt: Receipt }): void {
+  const has = (channel: string) => channels.includes(channel)
+  const isVaneWorkedOut = has('wind_direction') && has('nacelle_position')
+  const missing = ['wind_speed', 'vane', 'power'].filter(
+    (channel) => !has(channel) && !(channel === 'vane' && isVaneWorkedOut),
+  )
   if (missing.length === 0) return
   const recognised = receipt.columns
     .filter(({ takenFor }) => takenFor !== null)
@@ -114,9 +227,15 @@ function checkChannels({ channels, receipt }: StagedLog): void {
   )
 }
 
-function notFound(id: string): InputError {
-  return new InputError(
-    'REPLAY_NOT_FOUND',
-    `replay: expected the id of a kept replay, got "${id.slice(0, 100)}"`,
-  )
+function withProgress(record: StoredReplay, running: RunningReplays): ReplayRecord {
+  return { ...record, progress: record.state === 'running' ? running.progress(record.id) : null }
+}
+
+function problemOf(error: unknown): { code: string; detail: string } {
+  if (error instanceof InputError) return { code: error.code, detail: error.message }
+  return { code: 'INTERNAL', detail: 'a fault of this program; its log says more' }
+}
+
+function notFound(id: string, expected = 'the id of a kept replay'): InputError {
+  return new InputError('REPLAY_NOT_FOUND', `replay: expected ${expected}, got "${id.slice(0, 100)}"`)
 }

@@ -1,3 +1,4 @@
+export { csvToParquet, type CsvColumn } from './csv-to-parquet.ts'
 export type { FrameStore } from './frames.ts'
 export type { StoredBatch } from './logs/batches.ts'
 export type { CompactionLimits } from './logs/compaction.ts'
