@@ -5,7 +5,7 @@ import { neighbourSlopes, type NeighbourSlopes } from './neighbour-slopes.ts'
 import { NORMAL_95, resampledHalfWidth } from './resampled-spread.ts'
 
 /** Scale of the half-normal prior of the spread between anemometers of a model, per degree: 0.07 % was seen on a real farm. */
-const SPREAD_SCALE_PER_DEG = 0.0003
+const SPREAD_SCALE_PER_DEG = 0.0006
 
 /** What neighbours tell of one anemometer; relative change of the reading per degree of vane. */
 export interface TurbineResponse {
@@ -73,7 +73,7 @@ export function anemometerResponse(
 
   const k = grid.turbines.length
   const ownSd = new Float64Array(k).fill(NaN)
-  for (let i = 0; i < k; i++) ownSd[i] = widestSd(mixed, i, dayWeights)
+  for (let i = 0; i < k; i++) ownSd[i] = meanSd(mixed, i, dayWeights)
   const turbines: (TurbineResponse | null)[] = new Array<TurbineResponse | null>(k).fill(null)
   const models: ModelResponse[] = []
   // What stays open between the two forms moves all turbines alike.
@@ -158,12 +158,15 @@ function mix(plain: Resampled, lagged: Resampled, share: number): Resampled {
   }
 }
 
-/** SD of a coefficient: the widest half-width over block lengths, as the SD of a normal error. */
-function widestSd(resampled: Resampled, i: number, dayWeights: readonly DayWeights[]): number {
+/**
+ * SD of a coefficient as the spread between turbines is judged by: the mean over block lengths, since the widest of
+ * several would make turbines look more alike than they are.
+ */
+function meanSd(resampled: Resampled, i: number, dayWeights: readonly DayWeights[]): number {
   const halves = dayWeights
     .map((weights, w) => resampledHalfWidth(resampled.deviations[w]![i]!, weights, resampled.days[i]!))
     .filter((half) => !Number.isNaN(half))
-  return halves.length > 0 ? Math.max(...halves) / NORMAL_95 : NaN
+  return halves.reduce((sum, half) => sum + half, 0) / halves.length / NORMAL_95
 }
 
 /** Whether the two forms differ beyond chance, over all turbines that both can compare. */

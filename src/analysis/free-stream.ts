@@ -2,12 +2,12 @@ import { medianOf, quantileOf } from '../kernel/stats/index.ts'
 import type { FarmDirection } from './farm-direction.ts'
 import type { FarmGrid, GridChannel } from './farm-grid.ts'
 
-const BIN_DEG = 10
+const BIN_DEG = 5
 const BINS = 360 / BIN_DEG
 /** Rows of a turbine in a bin below which the bin says nothing. */
 const MIN_ROWS = 12
 /** A bin this far below the turbine's usual share of the farm's wind speed lies in a wake (ln). */
-const WAKE_DEPTH = 0.04
+const WAKE_DEPTH = 0.06
 
 /** Where and when turbines stand in free stream: [i][t], 1 = free. */
 export type FreeStream = readonly Uint8Array[]
