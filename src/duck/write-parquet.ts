@@ -2,7 +2,8 @@ import type { Connection, SqlValue } from './connection.ts'
 import { quoteText } from './quote.ts'
 
 /**
- * Writes the rows of a query to a Parquet file, in the order of the query.
+ * Writes the rows of a query to a Parquet file, in the order of the query. Version 2 writes times that rise evenly as differences,
+ * which takes a tenth of their place.
  *
  * @param query  SELECT without a final semicolon.
  * @param compression  zstd for what is kept; snappy, larger and quicker to write, for what is read once.
@@ -16,7 +17,7 @@ export async function writeParquet(
   compression: 'zstd' | 'snappy' = 'zstd',
 ): Promise<number> {
   return connection.run(
-    `COPY (${query}) TO ${quoteText(path)} (FORMAT parquet, COMPRESSION ${compression})`,
+    `COPY (${query}) TO ${quoteText(path)} (FORMAT parquet, COMPRESSION ${compression}, PARQUET_VERSION V2)`,
     values,
   )
 }

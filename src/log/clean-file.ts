@@ -1,12 +1,15 @@
 import { quoteIdentifier, quoteText } from '../duck/index.ts'
 import { NUMBER_CHANNELS, TEXT_CHANNELS, type BaseChannel } from '../sheet/index.ts'
+import type { AlikeForm } from './alike-lines.ts'
 import type { MappedColumn } from './mapped-column.ts'
 import { seriesCellsSql, type SeriesShape } from './series-shape.ts'
 import { convertSql } from './units.ts'
 
-/** A file of clean lines (line, time, fields as sent) and what its columns are. */
+/** A file of clean lines (line, time, fields as sent), or a log whose lines are all alike, and what its columns are. */
 export interface CleanFile {
   readonly path: string
+  /** Set when the file is the log itself. */
+  readonly alike: AlikeForm | null
   readonly delimiter: string
   readonly decimalComma: boolean
   readonly maxLineBytes: number
@@ -18,6 +21,8 @@ export interface CleanFile {
   readonly shape: SeriesShape | null
   /** Positions of the fields of the log that the file holds: c5 is the field in position 5. */
   readonly kept: readonly number[]
+  /** Channel -> values that stand for no value. */
+  readonly sentinels: ReadonlyMap<string, readonly number[]>
 }
 
 /** Words that stand for an empty cell, in lower case. */
@@ -43,30 +48,61 @@ const EMPTY_WORDS = [
 
 const isText = (channel: string) => (TEXT_CHANNELS as readonly string[]).includes(channel)
 
-/** SQL of the file with all cells as text: line, time, c0, c1, ... Nothing is detected, nothing is skipped. */
-export function cellsSql(file: CleanFile): string {
-  const columns = ["'line': 'BIGINT'", "'time': 'BIGINT'"]
-  for (const i of file.kept) columns.push(`'c${i}': 'VARCHAR'`)
-  const lines =
-    `read_csv(${quoteText(file.path)}, auto_detect = false, header = false, delim = ${quoteText(file.delimiter)}, ` +
-    `quote = '', escape = '', comment = '', new_line = '\\n', nullstr = '', strict_mode = true, ` +
-    `max_line_size = ${file.maxLineBytes + 128}, columns = {${columns.join(', ')}})`
+/**
+ * SQL of the file with all cells as text: line, time, c0, c1, ... Nothing is detected, nothing is skipped.
+ * @param numbered  whether line numbers are asked for; a log that is read itself has to count them, one thread at a time.
+ */
+export function cellsSql(file: CleanFile, numbered = true): string {
+  if (file.alike) return alikeCellsSql(file, file.alike, numbered)
+  const columns = ["'line': 'BIGINT'", "'time': 'BIGINT'", ...file.kept.map(textColumn)]
+  const lines = linesSql(file, columns, { skip: 0, lineEnd: '\n' })
   return file.shape ? seriesCellsSql(file.shape, lines) : lines
 }
 
-/** SQL of the rows with canonical columns: src, line, time, turbine, then `channels`, NULL where this file lacks one. */
-export function rowsSql(file: CleanFile, source: number, channels: readonly string[]): string {
+const textColumn = (i: number) => `'c${i}': 'VARCHAR'`
+
+function alikeCellsSql(file: CleanFile, form: AlikeForm, numbered: boolean): string {
+  const columns = Array.from({ length: form.fields }, (_, i) => textColumn(i))
+  const lines = linesSql(file, columns, { skip: form.headerLine, lineEnd: form.lineEnd })
+  const line = numbered ? `row_number() OVER () + ${form.headerLine}` : 'NULL::BIGINT'
+  const time = `epoch_ms(c${form.stamp}::TIMESTAMP) - ${form.offsetMs}`
+  const kept = file.kept.filter((i) => i !== form.stamp).map((i) => `c${i}`)
+  return `(SELECT ${[`${line} AS line`, `${time} AS time`, ...kept].join(', ')} FROM ${lines})`
+}
+
+function linesSql(
+  file: CleanFile,
+  columns: readonly string[],
+  { skip, lineEnd }: { skip: number; lineEnd: '\n' | '\r\n' },
+): string {
+  const newLine = lineEnd === '\n' ? '\\n' : '\\r\\n'
+  return (
+    `read_csv(${quoteText(file.path)}, auto_detect = false, header = false, skip = ${skip}, delim = ${quoteText(file.delimiter)}, ` +
+    `quote = '', escape = '', comment = '', new_line = '${newLine}', nullstr = '', strict_mode = true, ` +
+    `max_line_size = ${file.maxLineBytes + 128}, columns = {${columns.join(', ')}})`
+  )
+}
+
+/**
+ * SQL of the rows with canonical columns: src, line, time, turbine, then `channels`, NULL where this file lacks one.
+ * @param numbered  whether line numbers are asked for.
+ */
+export function rowsSql(
+  file: CleanFile,
+  source: number,
+  channels: readonly string[],
+  numbered = true,
+): string {
   const list = channels.map((channel) => {
     const column = file.channels.find((one) => one.takenFor === channel)
     const name = quoteIdentifier(channel)
     if (!column) return `NULL::${isText(channel) ? 'VARCHAR' : 'DOUBLE'} AS ${name}`
     if (isText(channel)) return `nullif(trim(c${column.index}), '') AS ${name}`
-    const { min, max } = limitsOf(channel)
     const value = valueSql(file, column)
-    return `CASE WHEN ${value} BETWEEN ${min} AND ${max} THEN ${value} END AS ${name}`
+    return `CASE WHEN ${isWithinSql(file, channel, value)} THEN ${value} END AS ${name}`
   })
   const turbine = file.turbine < 0 ? quoteText(file.turbineName) : `trim(c${file.turbine})`
-  return `SELECT ${[`${source} AS src`, 'line', 'time', `${turbine} AS turbine`, ...list].join(', ')} FROM ${cellsSql(file)}`
+  return `SELECT ${[`${source} AS src`, 'line', 'time', `${turbine} AS turbine`, ...list].join(', ')} FROM ${cellsSql(file, numbered)}`
 }
 
 /** SQL of one row per number channel of the file, with what became of its cells. */
@@ -74,7 +110,7 @@ export function cellCountsSql(file: CleanFile): string {
   const numbers = file.channels.filter((column) => !isText(column.takenFor!))
   const list = numbers.flatMap((column, i) => {
     const cell = `c${column.index}`
-    const { min, max } = limitsOf(column.takenFor!)
+    const { max } = limitsOf(column.takenFor!)
     const value = valueSql(file, column)
     const filled = `lower(trim(${cell})) NOT IN (${EMPTY_WORDS.map(quoteText).join(', ')})`
     const unreadable = `${filled} AND ${value} IS NULL`
@@ -83,12 +119,20 @@ export function cellCountsSql(file: CleanFile): string {
       `count(*) FILTER (${unreadable}) AS unreadable${i}`,
       `arg_min(${cell}, line) FILTER (${unreadable}) AS example${i}`,
       `min(line) FILTER (${unreadable}) AS exampleLine${i}`,
-      `count(*) FILTER (${filled} AND ${value} IS NOT NULL AND NOT ${value} BETWEEN ${min} AND ${max}) AS outside${i}`,
+      `count(*) FILTER (${filled} AND ${value} IS NOT NULL AND NOT (${isWithinSql(file, column.takenFor!, value)})) AS outside${i}`,
       `count(*) FILTER (${value} > ${max}) AS above${i}`,
       `approx_count_distinct(${value}) FILTER (${value} > ${max}) AS aboveKinds${i}`,
     ]
   })
   return list.length === 0 ? '' : `SELECT ${list.join(', ')} FROM ${cellsSql(file)}`
+}
+
+/** SQL of whether a value lies within the limits of the channel and is none that stands for nothing. */
+function isWithinSql({ sentinels }: CleanFile, channel: string, value: string): string {
+  const { min, max } = limitsOf(channel)
+  const none = sentinels.get(channel) ?? []
+  const list = none.map((one) => `${one}::DOUBLE`).join(', ')
+  return `${value} BETWEEN ${min} AND ${max}${none.length > 0 ? ` AND ${value} NOT IN (${list})` : ''}`
 }
 
 /** SQL of the number in a cell, canonical unit; NULL when it is none. Thousands separators are never guessed. */

@@ -3,13 +3,13 @@ import type { Receipt } from '../sheet/index.ts'
 import type { LogReading } from './contract.ts'
 import { limitsOf } from './clean-file.ts'
 import type { SourcePlan } from './plan-source.ts'
-import type { PostState, RowScanner } from './row-scanner.ts'
+import type { PostState, ScanCounts } from './post-state.ts'
 import type { CellCount, StagedRows } from './stage-rows.ts'
 
 /** What the scan of one source left behind. */
 export interface SourceAccount {
   readonly plan: SourcePlan
-  readonly scanner: RowScanner
+  readonly scanner: ScanCounts
   readonly sha256: string
   readonly rejectedInScan: number
   /** Rows passed on: lines, or what was made of them. */
@@ -156,7 +156,7 @@ function columnAccounts(
 
 function addWarnings(parts: Parameters<typeof buildReceipt>[0]): void {
   const { accounts, post, reading, warnings, channels } = parts
-  const sum = (of: (scanner: RowScanner) => number) =>
+  const sum = (of: (scanner: ScanCounts) => number) =>
     accounts.reduce((total, { scanner }) => total + of(scanner), 0)
   const unzoned = sum((scanner) => scanner.unzonedRows)
   if (unzoned > 0 && reading.timezone === undefined && reading.defaultTimezone === undefined) {

@@ -7,7 +7,7 @@ import { lineFields, sniffDialect, type Dialect } from './dialect.ts'
 import type { ReadableSource } from './parquet-source.ts'
 import type { ScanPlan } from './row-scanner.ts'
 import { dateClockTime, dayClockTime, stampTime, type RowTime } from './row-time.ts'
-import { sourceBytes } from './source-bytes.ts'
+import { sourceBytes, startsAsGzip } from './source-bytes.ts'
 import { sentLines } from './sent-lines.ts'
 import { longSeries } from './series-shape.ts'
 import { sniffStamps, type StampFormat } from './stamp-format.ts'
@@ -20,6 +20,9 @@ const SAMPLE_BYTES = 256 * 1024
 export interface SourcePlan {
   readonly source: ReadableSource
   readonly firstBytes: Uint8Array
+  readonly isGzip: boolean
+  /** Whether the lines may still all be alike, so that SQL can read the log itself. */
+  readonly mayBeAlike: boolean
   readonly dialect: Dialect
   readonly map: ColumnMap
   readonly timeFormat: string
@@ -63,6 +66,8 @@ export async function planSource(
   return {
     source,
     firstBytes: bytes.subarray(0, 4096),
+    isGzip: await startsAsGzip(source),
+    mayBeAlike: true,
     dialect,
     map,
     timeFormat: description,

@@ -2,8 +2,9 @@ import type { FileHandle } from 'node:fs/promises'
 import { InputError } from '../errors.ts'
 import { validUtf8 } from './clean-text.ts'
 import type { LogLimits } from './contract.ts'
-import type { RejectReason, Rejects } from './rejects.ts'
-import { instantOf, newTrack, track, type TurbineTrack } from './row-clock.ts'
+import { MOST_TURBINES, noteRow, trackOf, type PostState, type ScanCounts } from './post-state.ts'
+import type { RejectReason } from './rejects.ts'
+import { instantOf, type TurbineTrack } from './row-clock.ts'
 import type { RowTime } from './row-time.ts'
 import { SAFE_DELIMITER, splitFields } from './split-fields.ts'
 import { jsonFields } from './json-line.ts'
@@ -11,22 +12,8 @@ import { lineTooLong, type LinePosition } from './text-lines.ts'
 import type { ZoneTable } from './zone-table.ts'
 
 const [LF, SPACE, QUOTE] = [10, 32, 34]
-const MOST_TURBINES = 20_000
-const MOST_TURBINE_BYTES = 100
+export const MOST_TURBINE_BYTES = 100
 const [ORDINARY, DELIMITER, LINE_END, QUOTES, CONTROL] = [0, 1, 2, 3, 4]
-
-/** What all sources of one post share. */
-export interface PostState {
-  readonly tracks: Map<string, TurbineTrack>
-  readonly rejects: Rejects
-  /** Rows passed on so far come sorted by turbine and time. */
-  sorted: boolean
-  /** Turbine of the last row. */
-  last: TurbineTrack | null
-  /** A pair of turbine and time may have occurred twice. */
-  mayRepeat: boolean
-  rows: number
-}
 
 /** Rows of the log that need the delimiter inside a field: the pass is made again with the safe delimiter. */
 export class NeedsSafeDelimiter extends Error {}
@@ -56,7 +43,7 @@ export interface ScanPlan {
  * are read on, as sent, with a delimiter that no field contains.
  * Lines that are no row are counted or rejected with their reason. Works on bytes: this loop sees every byte of every log.
  */
-export class RowScanner implements LinePosition {
+export class RowScanner implements LinePosition, ScanCounts {
   /** Lines seen, header and preamble included. */
   lines = 0
   blankLines = 0
@@ -236,18 +223,8 @@ export class RowScanner implements LinePosition {
 
   private note(turbine: TurbineTrack, timeMs: number): void {
     const { post } = this
-    if (turbine !== post.last) {
-      const isLower =
-        post.last !== null && Buffer.compare(Buffer.from(post.last.name), Buffer.from(turbine.name)) > 0
-      if (turbine.rows > 0 || isLower) post.sorted = false
-      post.last = turbine
-    }
-    if (!track(turbine, timeMs)) {
-      post.sorted = false
-      post.mayRepeat = true
-    }
+    noteRow(post, turbine, timeMs)
     this.rows++
-    post.rows++
     if (post.rows > this.plan.limits.maxRows) {
       throw new InputError(
         'LOG_TOO_MANY_ROWS',
@@ -274,16 +251,12 @@ export class RowScanner implements LinePosition {
   }
 
   private trackOf(name: string): TurbineTrack {
-    const { tracks } = this.post
-    let found = tracks.get(name)
+    const found = trackOf(this.post, name)
     if (!found) {
-      if (tracks.size >= MOST_TURBINES) {
-        throw new InputError(
-          'LOG_COLUMN_MAP',
-          `${this.plan.name} line ${this.lines}: expected at most ${MOST_TURBINES} turbines, got more; is the column of turbines the right one?`,
-        )
-      }
-      tracks.set(name, (found = newTrack(name)))
+      throw new InputError(
+        'LOG_COLUMN_MAP',
+        `${this.plan.name} line ${this.lines}: expected at most ${MOST_TURBINES} turbines, got more; is the column of turbines the right one?`,
+      )
     }
     return found
   }

@@ -66,7 +66,7 @@ async function* chunksOf(
   }
 }
 
-async function startsAsGzip(source: LogSource): Promise<boolean> {
+export async function startsAsGzip(source: LogSource): Promise<boolean> {
   let file
   try {
     file = await open(source.path, 'r')

@@ -3,6 +3,7 @@ import { join } from 'node:path'
 import { InputError } from '../errors.ts'
 import type { Connection } from '../duck/index.ts'
 import type { Receipt } from '../sheet/index.ts'
+import { alikeForm, AlikeScanner, beginsSorted, NotAlike, type AlikeForm } from './alike-lines.ts'
 import { sniffEncoding, toUtf8 } from './clean-text.ts'
 import type { LogLimits, LogParts, LogReading, LogSource, StagedLog } from './contract.ts'
 import type { MappedColumn } from './mapped-column.ts'
@@ -10,7 +11,9 @@ import { buildReceipt, refuseUnfit, type SourceAccount } from './log-account.ts'
 import { readableSource } from './parquet-source.ts'
 import { planSource, type SourcePlan } from './plan-source.ts'
 import { Rejects } from './rejects.ts'
-import { NeedsSafeDelimiter, RowScanner, type PostState } from './row-scanner.ts'
+import type { PostState, ScanCounts } from './post-state.ts'
+import { NeedsSafeDelimiter, RowScanner } from './row-scanner.ts'
+import { linkedSource, scanAlike } from './scan-alike.ts'
 import { sentLines } from './sent-lines.ts'
 import { sourceBytes } from './source-bytes.ts'
 import { cellsSql, rowsSql } from './clean-file.ts'
@@ -45,9 +48,16 @@ export async function stageLog(
     for (const [i, source] of sources.entries()) {
       plans.push(await planSource(await readableSource(source, i, parts, working), reading, parts.limits))
     }
+    // Each further attempt knows one log more for what it is.
     for (;;) {
       const attempt = await scanAll(plans, reading, parts, working)
-      if (attempt !== null) return await parts.scans.withConnection((c) => stage(c, attempt, reading, parts))
+      if (attempt === null) continue
+      try {
+        return await parts.scans.withConnection((c) => stage(c, attempt, reading, parts))
+      } catch (error) {
+        if (!(error instanceof NotAlike)) throw error
+        for (const [i, plan] of plans.entries()) plans[i] = { ...plan, mayBeAlike: false }
+      }
     }
   } finally {
     for (const path of working) await rm(path, { force: true })
@@ -58,9 +68,11 @@ interface Scanned {
   readonly post: PostState
   readonly accounts: readonly SourceAccount[]
   readonly files: readonly NamedCleanFile[]
+  /** Rows written while the log was looked at; null when that was not to be tried. */
+  readonly copied: number | null
 }
 
-/** @returns null when a source turned out to need the safe delimiter: its plan says so now, and all is read again. */
+/** @returns null when a source turned out to be another than its plan says: the plan says so now, and all is read again. */
 async function scanAll(
   plans: SourcePlan[],
   reading: LogReading,
@@ -72,45 +84,72 @@ async function scanAll(
   const zone = zoneTable(reading.timezone ?? reading.defaultTimezone ?? 'UTC')
   const accounts: SourceAccount[] = []
   const files: NamedCleanFile[] = []
+  let copied: number | null = null
   for (const [i, plan] of plans.entries()) {
-    const path = join(parts.folder, `clean-${i}.csv`)
-    if (!working.includes(path)) working.push(path)
+    const scan = { ...plan.scan, zone, limits: parts.limits }
     const rejectedBefore = rejects.rows
-    const scanner = new RowScanner({ ...plan.scan, zone, limits: parts.limits }, post)
     try {
-      const sha256 = await scanSource(plan, scanner, path, parts.limits)
-      accounts.push({
-        plan,
-        scanner,
-        sha256,
-        rejectedInScan: rejects.rows - rejectedBefore,
-        rows: scanner.rows,
-      })
+      const form = plan.mayBeAlike ? alikeForm(plan, zone) : null
+      const path = form
+        ? await linkedSource(plan.source, i, parts.folder, working)
+        : join(parts.folder, `clean-${i}.csv`)
+      if (path === null) throw new NotAlike()
+      if (!working.includes(path)) working.push(path)
+      let counts: ScanCounts
+      let sha256: string
+      if (form) {
+        const isCopied = plans.length === 1 && !statesEnd(reading) && beginsSorted(plan)
+        const file = cleanFile(plan, path, parts.limits, plan.dialect.delimiter, form)
+        const scanned = await scanAlike(new AlikeScanner(form, scan, post), file, isCopied, plan, parts)
+        ;({ counts, sha256, copied } = scanned)
+        files.push(file)
+      } else {
+        const scanner = new RowScanner(scan, post)
+        sha256 = await scanSource(plan, scanner, path, parts.limits)
+        counts = scanner
+        files.push(cleanFile(plan, path, parts.limits, scanner.outDelimiter, null))
+      }
+      const rejectedInScan = rejects.rows - rejectedBefore
+      accounts.push({ plan, scanner: counts, sha256, rejectedInScan, rows: counts.rows })
     } catch (error) {
       await rejects.close()
       await rm(join(parts.folder, 'rejected.csv'), { force: true })
-      if (!(error instanceof NeedsSafeDelimiter)) throw error
-      plans[i] = { ...plan, scan: { ...plan.scan, safe: true } }
+      if (error instanceof NotAlike) plans[i] = { ...plan, mayBeAlike: false }
+      else if (error instanceof NeedsSafeDelimiter) plans[i] = { ...plan, scan: { ...plan.scan, safe: true } }
+      else throw error
       return null
     }
-    const series = plan.map.series
     // Rows that SQL makes of lines are sorted and counted there.
-    if (series) post.sorted = !(post.mayRepeat = true)
-    files.push({
-      name: plan.source.name,
-      path,
-      delimiter: scanner.outDelimiter,
-      kept: plan.scan.kept,
-      sentLines: () => sentLines(plan.source, parts.limits, sniffEncoding(plan.firstBytes)),
-      shape: series?.shape ?? null,
-      decimalComma: plan.dialect.decimalComma,
-      maxLineBytes: parts.limits.maxLineBytes,
-      turbine: series ? 0 : plan.scan.turbine,
-      turbineName: plan.scan.turbineName,
-      channels: plan.map.channels,
-    })
+    if (plan.map.series) post.sorted = !(post.mayRepeat = true)
   }
-  return { post, accounts, files }
+  return { post, accounts, files, copied }
+}
+
+const statesEnd = (reading: LogReading) => (reading.stamp ?? reading.defaultStamp) === 'end'
+
+function cleanFile(
+  plan: SourcePlan,
+  path: string,
+  limits: LogLimits,
+  delimiter: string,
+  alike: AlikeForm | null,
+): NamedCleanFile {
+  const { series } = plan.map
+  return {
+    name: plan.source.name,
+    path,
+    alike,
+    delimiter,
+    kept: plan.scan.kept,
+    sentinels: new Map(),
+    sentLines: () => sentLines(plan.source, limits, sniffEncoding(plan.firstBytes)),
+    shape: series?.shape ?? null,
+    decimalComma: plan.dialect.decimalComma,
+    maxLineBytes: limits.maxLineBytes,
+    turbine: series ? 0 : plan.scan.turbine,
+    turbineName: plan.scan.turbineName,
+    channels: plan.map.channels,
+  }
 }
 
 async function scanSource(
@@ -138,7 +177,7 @@ async function stage(
   reading: LogReading,
   parts: LogParts,
 ): Promise<StagedLog> {
-  const { post, accounts, files } = scanned
+  const { post, accounts, files, copied } = scanned
   const warnings: string[] = []
   try {
     refuseUnfit(accounts, post)
@@ -155,7 +194,7 @@ async function stage(
     const mixed = overall === null ? null : otherIntervals(steps, overall, byTurbine)
     if (mixed !== null) warnings.push(mixed)
     const shiftMs = new Map<string, number>()
-    if ((reading.stamp ?? reading.defaultStamp) === 'end') {
+    if (statesEnd(reading)) {
       if (overall === null)
         warnings.push('stamp: the log has no two rows of one turbine; its times are kept as they are')
       for (const name of new Set([...post.tracks.keys(), ...byTurbine.keys()])) {
@@ -170,9 +209,10 @@ async function stage(
       grid: snap?.grid ?? null,
       rejects: post.rejects,
       folder: parts.folder,
+      copied,
     })
     const cells = []
-    for (const [i, file] of files.entries()) {
+    for (const [i, file] of staged.files.entries()) {
       const doubt =
         files.length > 1 ||
         accounts[i]!.scanner.rows !== staged.accepted ||
@@ -209,7 +249,7 @@ async function findSnap(
   const grid = findGrid(found.steps)
   if (!grid) return null
   const point = gridPointSql('time', grid)
-  const rows = files.map((file, i) => rowsSql(file, i, [])).join(' UNION ALL ')
+  const rows = files.map((file, i) => rowsSql(file, i, [], false)).join(' UNION ALL ')
   const [counts] = await connection.records(
     `SELECT count(*) FILTER (abs(time - ${point}) <= ${grid.toleranceMs}) AS near, count(*) FILTER (time = ${point}) AS exact FROM (${rows})`,
   )

@@ -7,11 +7,13 @@ import {
   writeParquet,
   type Connection,
 } from '../duck/index.ts'
+import { NotAlike } from './alike-lines.ts'
 import { cellCountsSql, rowsSql, type CleanFile } from './clean-file.ts'
 import type { Rejects } from './rejects.ts'
 import { commonestStep, flushSteps } from './row-clock.ts'
+import { findSentinels } from './sentinels.ts'
 import type { SentLine } from './sent-lines.ts'
-import type { PostState } from './row-scanner.ts'
+import type { PostState } from './post-state.ts'
 import { snapSql, type TimeGrid } from './time-grid.ts'
 
 export interface NamedCleanFile extends CleanFile {
@@ -35,6 +37,8 @@ export interface CellCount {
 
 export interface StagedRows {
   readonly path: string
+  /** The files with what was learnt from their rows. */
+  readonly files: readonly NamedCleanFile[]
   readonly accepted: number
   readonly duplicate: number
   /** Per channel: cells that hold a value. */
@@ -42,47 +46,63 @@ export interface StagedRows {
   readonly turbines: readonly { turbine: string; rows: number; firstMs: number; lastMs: number }[]
 }
 
+export interface RowParts {
+  readonly files: readonly NamedCleanFile[]
+  readonly channels: readonly string[]
+  readonly post: PostState
+  /** Per turbine: subtracted from its times. */
+  readonly shiftMs: ReadonlyMap<string, number>
+  /** Stamps near this grid are moved to it; null: none is moved. */
+  readonly grid: TimeGrid | null
+  readonly rejects: Rejects
+  readonly folder: string
+  /** Rows that `copyRows` has written already; null when it was not asked. */
+  readonly copied: number | null
+}
+
+const stagedPath = (folder: string) => join(folder, 'staged.parquet')
+
+/**
+ * Writes the rows of one file as they come, while they are still being looked at. When they prove to be sorted, without repetitions
+ * and whole, `stageRows` takes this for the result.
+ * @returns rows written
+ */
+export async function copyRows(
+  connection: Connection,
+  file: CleanFile,
+  channels: readonly string[],
+  folder: string,
+): Promise<number> {
+  const list = ['turbine', 'time', ...channels.map(quoteIdentifier)].join(', ')
+  const query = `SELECT ${list} FROM (${rowsSql(file, 0, channels, false)})`
+  return writeParquet(connection, query, stagedPath(folder), undefined, 'snappy')
+}
+
 /**
  * Writes the clean rows to one sorted Parquet file; rows without any value go to `rejects`.
- *
- * @param shiftMs  per turbine: subtracted from its times.
- * @param emptyCells  per channel: cells that were empty in the text; when this and the file agree, nothing was lost.
+ * @throws NotAlike when SQL finds other rows in a log than the scan
  */
-export async function stageRows(
-  connection: Connection,
-  parts: {
-    files: readonly NamedCleanFile[]
-    channels: readonly string[]
-    post: PostState
-    shiftMs: ReadonlyMap<string, number>
-    /** Stamps near this grid are moved to it; null: none is moved. */
-    grid: TimeGrid | null
-    rejects: Rejects
-    folder: string
-  },
-): Promise<StagedRows> {
-  const { files, channels, post, rejects } = parts
-  const asRead = `(${files.map((file, i) => rowsSql(file, i, channels)).join(' UNION ALL ')})`
-  const rows = parts.grid
-    ? `(SELECT * REPLACE (${snapSql('time', parts.grid)} AS time) FROM ${asRead})`
-    : asRead
-  const hasValue = `(${channels.map((channel) => `${quoteIdentifier(channel)} IS NOT NULL`).join(' OR ')})`
-  const list = channels.map(quoteIdentifier).join(', ')
-  const query = [
-    `SELECT turbine, time - ${shiftSql(parts.shiftMs)} AS time, ${list} FROM ${rows} WHERE ${hasValue}`,
-    post.mayRepeat
-      ? 'QUALIFY row_number() OVER (PARTITION BY turbine, time ORDER BY src DESC, line DESC) = 1'
-      : '',
-    post.sorted ? '' : 'ORDER BY turbine, time',
-  ].join(' ')
-  const path = join(parts.folder, 'staged.parquet')
-  const accepted = await writeParquet(connection, query, path, undefined, 'snappy')
+export async function stageRows(connection: Connection, parts: RowParts): Promise<StagedRows> {
+  const { channels, post, rejects } = parts
+  const path = stagedPath(parts.folder)
+  let files = parts.files
+  let accepted = (await isAsCopied(connection, parts)) ? parts.copied! : await writeRows(connection, parts)
+  const sentinels = await findSentinels(connection, path, files, channels)
+  if (sentinels.size > 0) {
+    files = files.map((file) => ({ ...file, sentinels }))
+    accepted = await writeRows(connection, { ...parts, files })
+  }
   let kept = accepted
   if (post.mayRepeat) {
-    const [counted] = await connection.records(`SELECT count(*) AS n FROM ${rows} WHERE ${hasValue}`)
+    const [counted] = await connection.records(
+      `SELECT count(*) AS n FROM ${rowsOf({ ...parts, files }, false)} WHERE ${hasValueSql(channels)}`,
+    )
     kept = Number(counted!['n'])
   }
+  const rejectedBefore = rejects.rows
   if (kept < post.rows) await rejectEmpty(connection, files, channels, rejects)
+  if (files.some(({ alike }) => alike) && kept + rejects.rows - rejectedBefore !== post.rows)
+    throw new NotAlike()
 
   const staged = `read_parquet(${quoteText(path)})`
   const counts = channels.map((channel, i) => `count(${quoteIdentifier(channel)}) AS n${i}`)
@@ -95,6 +115,7 @@ export async function stageRows(
   )
   return {
     path,
+    files,
     accepted,
     duplicate: kept - accepted,
     present: new Map(channels.map((channel, i) => [channel, Number(present![`n${i}`])])),
@@ -106,6 +127,39 @@ export async function stageRows(
     })),
   }
 }
+
+/** Whether what `copyRows` wrote is the result: nothing to be sorted, moved or left out. */
+async function isAsCopied(connection: Connection, parts: RowParts): Promise<boolean> {
+  const { copied, post, channels } = parts
+  if (copied === null || !post.sorted || post.mayRepeat || parts.grid || parts.shiftMs.size > 0) return false
+  if (copied !== post.rows) throw new NotAlike()
+  const [counted] = await connection.records(
+    `SELECT count(*) AS n FROM read_parquet(${quoteText(stagedPath(parts.folder))}) WHERE NOT ${hasValueSql(channels)}`,
+  )
+  return Number(counted!['n']) === 0
+}
+
+async function writeRows(connection: Connection, parts: RowParts): Promise<number> {
+  const { channels, post } = parts
+  const list = channels.map(quoteIdentifier).join(', ')
+  const rows = rowsOf(parts, post.mayRepeat)
+  const query = [
+    `SELECT turbine, time - ${shiftSql(parts.shiftMs)} AS time, ${list} FROM ${rows} WHERE ${hasValueSql(channels)}`,
+    post.mayRepeat
+      ? 'QUALIFY row_number() OVER (PARTITION BY turbine, time ORDER BY src DESC, line DESC) = 1'
+      : '',
+    post.sorted ? '' : 'ORDER BY turbine, time',
+  ].join(' ')
+  return writeParquet(connection, query, stagedPath(parts.folder), undefined, 'snappy')
+}
+
+function rowsOf({ files, channels, grid }: RowParts, numbered: boolean): string {
+  const asRead = `(${files.map((file, i) => rowsSql(file, i, channels, numbered)).join(' UNION ALL ')})`
+  return grid ? `(SELECT * REPLACE (${snapSql('time', grid)} AS time) FROM ${asRead})` : asRead
+}
+
+const hasValueSql = (channels: readonly string[]) =>
+  `(${channels.map((channel) => `${quoteIdentifier(channel)} IS NOT NULL`).join(' OR ')})`
 
 /** Looks up the rows without any value: only asked for when the counts disagree. */
 async function rejectEmpty(
@@ -192,7 +246,7 @@ export async function intervals(
       byName.set(name, track.steps)
     }
   } else {
-    const rows = files.map((file, i) => rowsSql(file, i, [])).join(' UNION ALL ')
+    const rows = files.map((file, i) => rowsSql(file, i, [], false)).join(' UNION ALL ')
     const steps = `SELECT turbine, time - lag(time) OVER (PARTITION BY turbine ORDER BY time) AS step
       FROM (SELECT DISTINCT turbine, time FROM (${rows}))`
     const { columns } = await readColumns(

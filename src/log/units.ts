@@ -102,3 +102,12 @@ export function convertSql(value: string, from: Unit): string {
   if (from.divideBy !== 1) sql = `(${sql} / ${from.divideBy}::DOUBLE)`
   return sql
 }
+
+/** The same arithmetic as `convertSql`, step by step. */
+export function convert(value: number, from: Unit): number {
+  let number = value
+  if (from.subtract !== 0) number -= from.subtract
+  if (from.multiplyBy !== 1) number *= from.multiplyBy
+  if (from.divideBy !== 1) number /= from.divideBy
+  return number
+}
