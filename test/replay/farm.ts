@@ -53,10 +53,12 @@ export async function openService(
   const newId = () => `${prefix}${String(++count).padStart(4, '0')}`
   const clock = () => (now += 1000)
   const store = await openStore({ folder, clock, newId, keepFreeBytes: 0 })
+  const replays = createReplays({ store, limits: LIMITS, scorers, version: '0.0.0-test', clock, newId })
   return {
     store,
-    replays: createReplays({ store, limits: LIMITS, scorers, version: '0.0.0-test', clock, newId }),
+    replays,
     async close() {
+      await replays.close()
       await scorers.close()
       await store.close()
     },
