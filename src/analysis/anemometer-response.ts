@@ -7,6 +7,9 @@ import { NORMAL_95, resampledHalfWidth } from './resampled-spread.ts'
 /** Scale of the half-normal prior of the spread between anemometers of a model, per degree: 0.07 % was seen on a real farm. */
 const SPREAD_SCALE_PER_DEG = 0.0006
 
+/** A difference between the two forms of less than the root of this many SDs counts as none. */
+const CHANCE = 3
+
 /** What neighbours tell of one anemometer; relative change of the reading per degree of vane. */
 export interface TurbineResponse {
   /** Estimate, with what its model tells. */
@@ -192,5 +195,5 @@ function linkBetween(
     const half = resampledHalfWidth(differences, weights, days)
     if (half / NORMAL_95 > sd) sd = half / NORMAL_95
   })
-  return { share: sd > 0 ? Math.max(0, 1 - (sd / mean) ** 2) : 1, mean, sd }
+  return { share: sd > 0 ? Math.max(0, 1 - CHANCE * (sd / mean) ** 2) : 1, mean, sd }
 }

@@ -19,6 +19,8 @@ export interface FarmComparison {
   readonly free: FreeStream
   /** ln of normalised wind speed where turbines can be compared, else NaN; [i][t]. */
   readonly logSpeed: GridChannel
+  /** 1 where the farm's wind is in range and steady, [t]. */
+  readonly steady: Uint8Array
   /** Vane, degrees, [i][t]. */
   readonly vane: GridChannel
   /** Median wind speed of the farm, m/s, [t]; NaN with fewer than two turbines. */
@@ -31,8 +33,12 @@ export interface FarmComparison {
  * Lays the farm on one clock and says where neighbours can be compared: running steadily, in free stream, at wind speeds
  * of the farm (not of the turbine itself) in range, while the farm's wind neither turns nor changes fast.
  */
-export function farmComparison(frame: Frame, settings: ScoringSettings): FarmComparison {
-  const grid = farmGrid(frame)
+export function farmComparison(
+  farm: Pick<Frame, 'intervalS' | 'fromMs' | 'toMs' | 'turbines'>,
+  days: number,
+  settings: ScoringSettings,
+): FarmComparison {
+  const grid = farmGrid(farm)
   const direction = farmDirection(grid)
   const anySpeed = onGrid(grid, (turbine, row) =>
     turbine.running[row] === 1 ? Math.log(turbine.normalisedSpeed[row]!) : NaN,
@@ -51,9 +57,10 @@ export function farmComparison(frame: Frame, settings: ScoringSettings): FarmCom
   const hasPosition = direction.localDeg.some((values) => values.some((value) => !Number.isNaN(value)))
   return {
     grid,
-    days: frame.calendar.days,
+    days,
     direction,
     free,
+    steady,
     logSpeed,
     vane: onGrid(grid, (turbine, row) => turbine.vane[row]!),
     farmSpeed: farmLogSpeed.map((value) => Math.exp(value)),

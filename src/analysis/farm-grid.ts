@@ -15,7 +15,7 @@ export interface FarmGrid {
 }
 
 /** Places the rows of all turbines on one clock of the frame's interval. */
-export function farmGrid(frame: Frame): FarmGrid {
+export function farmGrid(frame: Pick<Frame, 'intervalS' | 'fromMs' | 'toMs' | 'turbines'>): FarmGrid {
   const intervalMs = frame.intervalS * 1000
   const length = Math.max(1, Math.round((frame.toMs - frame.fromMs) / intervalMs))
   const day = new Int32Array(length).fill(-1)

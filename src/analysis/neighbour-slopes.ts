@@ -70,9 +70,16 @@ export function neighbourSlopes(question: NeighbourQuestion): NeighbourSlopes {
   )
   const others = withoutLevels(question.others, sector, grid.length)
   const own = question.own === question.others ? others : levelledAgainst(question.own, others, sector)
+  const prepared: Prepared = {
+    own,
+    others,
+    sector,
+    sum: totals(others, others),
+    nuisanceSums: question.nuisance.map((values) => totals(values, others)),
+  }
   const slopes: (NeighbourSlope | null)[] = []
   const coupling = new Float64Array(k * k)
-  for (let i = 0; i < k; i++) slopes.push(compareOne(question, { own, others, sector }, i, coupling))
+  for (let i = 0; i < k; i++) slopes.push(compareOne(question, prepared, i, coupling))
   const solve = (direct: ArrayLike<number>): Float64Array => solveCoupled(direct, coupling, slopes)
   return {
     slopes,
@@ -81,20 +88,49 @@ export function neighbourSlopes(question: NeighbourQuestion): NeighbourSlopes {
   }
 }
 
+/** Sum and count over turbines at each interval. */
+interface Totals {
+  readonly sum: Float64Array
+  readonly count: Int32Array
+}
+
+interface Prepared {
+  readonly own: GridChannel
+  readonly others: GridChannel
+  readonly sector: Int32Array
+  readonly sum: Totals
+  readonly nuisanceSums: readonly Totals[]
+}
+
+/** Totals of `values` over the turbines that are neighbours, i.e. have a value in `others`. */
+function totals(values: GridChannel, others: GridChannel): Totals {
+  const length = values[0]?.length ?? 0
+  const sum = new Float64Array(length)
+  const count = new Int32Array(length)
+  values.forEach((series, j) => {
+    const neighbour = others[j]!
+    for (let t = 0; t < length; t++) {
+      if (Number.isNaN(neighbour[t]!) || Number.isNaN(series[t]!)) continue
+      sum[t]! += series[t]!
+      count[t]!++
+    }
+  })
+  return { sum, count }
+}
+
 function compareOne(
   question: NeighbourQuestion,
-  series: { own: GridChannel; others: GridChannel; sector: Int32Array },
+  prepared: Prepared,
   i: number,
   coupling: Float64Array,
 ): NeighbourSlope | null {
-  const { grid, nuisance, otherX } = question
-  const { own, others, sector } = series
-  const k = grid.turbines.length
+  const { grid, nuisance } = question
+  const { own, others, sector, sum } = prepared
+  const isNeighbour = others[i]!
   const at: number[] = []
   for (let t = 0; t < grid.length; t++) {
     if (sector[t]! < 0 || Number.isNaN(own[i]![t]!) || Number.isNaN(question.x[i]![t]!)) continue
-    let neighbours = 0
-    for (let j = 0; j < k; j++) if (j !== i && !Number.isNaN(others[j]![t]!)) neighbours++
+    const neighbours = sum.count[t]! - (Number.isNaN(isNeighbour[t]!) ? 0 : 1)
     if (neighbours === 0 || nuisance.some((values) => Number.isNaN(values[i]![t]!))) continue
     at.push(t)
   }
@@ -103,67 +139,85 @@ function compareOne(
   const x = new Float64Array(n)
   const y = new Float64Array(n)
   const z = nuisance.map(() => new Float64Array(n))
-  const shared = otherX === null ? [] : Array.from({ length: k }, () => new Float64Array(n))
-  at.forEach((t, r) => {
-    let sum = 0
-    let count = 0
-    const zSum = new Float64Array(nuisance.length)
-    const zCount = new Float64Array(nuisance.length)
-    for (let j = 0; j < k; j++) {
-      if (j === i || Number.isNaN(others[j]![t]!)) continue
-      sum += others[j]![t]!
-      count++
-      nuisance.forEach((values, l) => {
-        const value = values[j]![t]!
-        if (Number.isNaN(value)) return
-        zSum[l]! += value
-        zCount[l]!++
-      })
-    }
+  const day = new Int32Array(n)
+  const cell = new Int32Array(n)
+  for (let r = 0; r < n; r++) {
+    const t = at[r]!
     x[r] = question.x[i]![t]!
-    y[r] = own[i]![t]! - sum / count
-    nuisance.forEach((values, l) => {
-      z[l]![r] = values[i]![t]! - (zCount[l]! > 0 ? zSum[l]! / zCount[l]! : 0)
-    })
-    if (otherX === null) return
-    for (let j = 0; j < k; j++) {
-      if (j !== i && !Number.isNaN(others[j]![t]!)) shared[j]![r] = (otherX[j]![t]! || 0) / count
+    y[r] = own[i]![t]! - meanOfOthers(sum, others[i]!, others[i]!, t)
+    for (let l = 0; l < z.length; l++) {
+      z[l]![r] =
+        nuisance[l]![i]![t]! - meanOfOthers(prepared.nuisanceSums[l]!, nuisance[l]![i]!, others[i]!, t)
     }
-  })
-  const day = Int32Array.from(at, (t) => grid.day[t]!)
-  const cell = Int32Array.from(at, (t) => sector[t]!)
+    day[r] = grid.day[t]!
+    cell[r] = sector[t]!
+  }
   const places = { position: Int32Array.from(at), chain: day }
   const layout = dayCells(day, cell, { days: question.days, cells: SECTORS })
 
-  const level = (values: Float64Array): Float64Array => demeaned(values, cell, SECTORS)
-  const raw = [x, y, ...z, ...shared].map(level)
-  const first = partialOut(raw, z.length)
-  const slope = slopeOf(first[0]!, first[1]!)
-  const residual = first[1]!.map((value, r) => value - slope * first[0]![r]!)
+  const raw = [x, y, ...z].map((values) => demeaned(values, cell, SECTORS))
+  const [freeX, freeY] = partialOut(raw) as [Float64Array, Float64Array]
+  const slope = dot(freeX, freeY) / dot(freeX, freeX)
+  const residual = new Float64Array(n)
+  for (let r = 0; r < n; r++) residual[r] = freeY[r]! - slope * freeX[r]!
   const scale = robustSd(residual)
-  const noise = serialNoise(
-    residual.map((value) => Math.max(-CLIP, Math.min(CLIP, value / scale))),
-    places,
-  )
-  const white = partialOut(whiten(raw, places, noise), z.length)
-  let weight = new Float64Array(n).fill(1)
-  let sums = dayCellSums(layout, white[0]!, white[1]!, weight)
+  for (let r = 0; r < n; r++) residual[r] = Math.max(-CLIP, Math.min(CLIP, residual[r]! / scale))
+  const noise = serialNoise(residual, places)
+  const [whiteX, whiteY] = partialOut(whiten(raw, places, noise)) as [Float64Array, Float64Array]
+  const weight = new Float64Array(n).fill(1)
+  let sums = dayCellSums(layout, whiteX, whiteY, weight)
   let stretch = 1
   for (let round = 0; round < ROBUST_ROUNDS; round++) {
     const s = slopeWithinCells(sums)
     const levels = cellLevels(sums, s)
-    const left = white[1]!.map((value, r) => value - s * white[0]![r]! - levels[cell[r]!]!)
-    const sd = robustSd(left)
-    const standardised = left.map((value) => value / sd)
-    weight = standardised.map((value) => huberWeight(value))
-    stretch = robustStretch(standardised, white[0]!, huberWeight)
-    sums = dayCellSums(layout, white[0]!, white[1]!, weight)
+    for (let r = 0; r < n; r++) residual[r] = whiteY[r]! - s * whiteX[r]! - levels[cell[r]!]!
+    const sd = robustSd(residual)
+    for (let r = 0; r < n; r++) {
+      residual[r]! /= sd
+      weight[r] = huberWeight(residual[r]!)
+    }
+    stretch = robustStretch(residual, whiteX, huberWeight)
+    sums = dayCellSums(layout, whiteX, whiteY, weight)
   }
-  shared.forEach((_, j) => {
-    if (j === i) return
-    coupling[i * k + j] = slopeWithinCells(dayCellSums(layout, white[0]!, white[2 + j]!, weight))
-  })
+  if (question.otherX !== null) couple(question.otherX, prepared, { i, at, x: freeX }, coupling)
   return { sums, direct: slopeWithinCells(sums), stretch, rows: n, days: new Set(day).size }
+}
+
+function meanOfOthers(all: Totals, own: Float64Array, isNeighbour: Float64Array, t: number): number {
+  const counted = !Number.isNaN(isNeighbour[t]!) && !Number.isNaN(own[t]!)
+  const count = all.count[t]! - (counted ? 1 : 0)
+  return count > 0 ? (all.sum[t]! - (counted ? own[t]! : 0)) / count : 0
+}
+
+/**
+ * How much of each neighbour's coefficient is in the slope of turbine i: slope of the neighbour's share of the mean on x.
+ * `x` has its levels taken out, so that those of the neighbour need not be.
+ */
+function couple(
+  otherX: GridChannel,
+  prepared: Prepared,
+  one: { i: number; at: readonly number[]; x: Float64Array },
+  coupling: Float64Array,
+): void {
+  const { others, sum } = prepared
+  const { i, at, x } = one
+  const k = others.length
+  const share = new Float64Array(at.length)
+  for (let r = 0; r < at.length; r++) {
+    const t = at[r]!
+    share[r] = x[r]! / (sum.count[t]! - (Number.isNaN(others[i]![t]!) ? 0 : 1))
+  }
+  const spread = dot(x, x)
+  for (let j = 0; j < k; j++) {
+    if (j === i) continue
+    let joint = 0
+    for (let r = 0; r < at.length; r++) {
+      const t = at[r]!
+      const value = otherX[j]![t]!
+      if (!Number.isNaN(others[j]![t]!) && !Number.isNaN(value)) joint += share[r]! * value
+    }
+    coupling[i * k + j] = joint / spread
+  }
 }
 
 /** Takes the level of each turbine in each sector out, against the mean of all at the same time. */
@@ -233,19 +287,21 @@ function demeaned(values: Float64Array, cell: Int32Array, cells: number): Float6
     sum[cell[r]!]! += values[r]!
     count[cell[r]!]!++
   }
-  return values.map((value, r) => value - sum[cell[r]!]! / count[cell[r]!]!)
+  const out = new Float64Array(values.length)
+  for (let r = 0; r < values.length; r++) out[r] = values[r]! - sum[cell[r]!]! / count[cell[r]!]!
+  return out
 }
 
-/** Series 0, 1 and those behind the `nuisance` ones, each minus its projection on the nuisance ones (at 2 to 2 + nuisance - 1). */
-function partialOut(series: readonly Float64Array[], nuisance: number): Float64Array[] {
+/** Series 0 and 1, each minus its projection on the ones behind. */
+function partialOut(series: readonly Float64Array[]): Float64Array[] {
   const basis: Float64Array[] = []
-  for (let l = 0; l < nuisance; l++) {
-    let vector = series[2 + l]!.slice()
+  for (const nuisance of series.slice(2)) {
+    let vector = nuisance
     for (const other of basis) vector = minusProjection(vector, other)
     if (dot(vector, vector) > 1e-12 * vector.length) basis.push(vector)
   }
   return series
-    .filter((_, s) => s < 2 || s >= 2 + nuisance)
+    .slice(0, 2)
     .map((values) => basis.reduce((left, vector) => minusProjection(left, vector), values))
 }
 
@@ -260,10 +316,6 @@ function dot(a: Float64Array, b: Float64Array): number {
   let sum = 0
   for (let r = 0; r < a.length; r++) sum += a[r]! * b[r]!
   return sum
-}
-
-function slopeOf(x: Float64Array, y: Float64Array): number {
-  return dot(x, y) / dot(x, x)
 }
 
 /** Solves direct_i = c_i - sum_j coupling_ij c_j by iteration; the coupling is small, so a few rounds do. */

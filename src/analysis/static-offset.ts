@@ -1,9 +1,10 @@
 import { DEG_PER_RAD, wrap180 } from '../kernel/angle/index.ts'
 import type { DayWeights } from '../kernel/stats/index.ts'
-import type { TurbineFrame } from '../frame/index.ts'
+import { correctSpeed, type TurbineFrame } from '../frame/index.ts'
 import type { ScoringSettings, TurbineSheet } from '../sheet/index.ts'
 import type { TurbineResponse } from './anemometer-response.ts'
 import { furtherDays } from './further-days.ts'
+import { disagree, type FarmEstimate } from './farm-estimates.ts'
 import { fitOffset } from './offset-fit.ts'
 import { offsetSpread, vaneByDay } from './offset-interval.ts'
 import { offsetRows, type OffsetRows } from './offset-rows.ts'
@@ -26,6 +27,8 @@ export interface StaticOffsetRequest {
   readonly days: number
   /** What the neighbours tell of this anemometer's response; null or absent: nothing. */
   readonly response?: TurbineResponse | null
+  /** Estimates that lean on neighbours, to stand beside this one. */
+  readonly farmEstimates?: readonly FarmEstimate[]
 }
 
 /** The offset, and why there is none. */
@@ -33,6 +36,10 @@ export interface StaticOffsetAnswer {
   readonly sheet: TurbineSheet['staticOffset']
   /** d and m for each exponent shown, and for the one in force. */
   readonly byExponent: readonly { exponent: number; offsetDeg: number; standingDeg: number }[]
+  /** The frame with wind speeds corrected for the response in force, for the questions that build on it. */
+  readonly frame: TurbineFrame
+  /** Estimates that differ beyond chance; null = none. */
+  readonly disagreement: string | null
   /** What the sheet's estimate means, for the questions that build on it; null = no estimate. */
   readonly standing: {
     readonly offsetDeg: number
@@ -53,11 +60,13 @@ export interface StaticOffsetAnswer {
  * @returns null in the sheet, with `failure`, when there are too few rows or days, the vane does not vary, or a sensor blocks.
  */
 export function staticOffset(
-  frame: TurbineFrame,
+  asRead: TurbineFrame,
   request: StaticOffsetRequest,
   block: Block | null = null,
 ): StaticOffsetAnswer {
   const { settings, dayWeights, days } = request
+  const anemometer = responseInForce(request)
+  const frame = correctSpeed(asRead, anemometer.perDeg, settings.vaneMaxDeg)
   const rows = offsetRows(frame, days)
   const usedDays = new Set(rows.day).size
   const counts = { rows: rows.vane.length, days: usedDays }
@@ -65,8 +74,7 @@ export function staticOffset(
   const failure = block ?? tooLittle(rows, usedDays, settings)
   if (failure) return unanswered(frame, counts, failure)
 
-  const anemometer = responseInForce(request)
-  const model = { exponent: settings.exponent, responsePerDeg: anemometer.perDeg }
+  const model = { exponent: settings.exponent, responsePerDeg: 0 }
   const fit = fitOffset(rows, model)
   if (!fit.converged) {
     return unanswered(frame, counts, { code: 'no-fit', text: 'the fit of power against vane did not settle' })
@@ -95,9 +103,18 @@ export function staticOffset(
   const method = anemometer.measured
     ? 'power against vane, own anemometer corrected for its response'
     : 'power against vane, own anemometer'
+  const own = { offsetDeg, halfWidthDeg: Math.hypot(statistical.offset, response, dilution) }
+  const others = request.farmEstimates ?? []
+  const apart = others.filter((other) => disagree(own, other))
   return {
     failure: null,
+    frame,
     byExponent,
+    disagreement:
+      apart.length === 0
+        ? null
+        : `estimates differ beyond chance: ${method} ${offsetDeg.toFixed(1)}, ` +
+          apart.map((other) => `${other.method} ${other.offsetDeg.toFixed(1)}`).join(', '),
     standing: { offsetDeg, standingDeg, standingInterval95Deg: standingInterval },
     sheet: {
       ...emptySheet(frame, counts),
@@ -113,9 +130,18 @@ export function staticOffset(
           estimateDeg: offsetDeg,
           interval95Deg: interval,
           leansOn: anemometer.text,
-          kind: 'slope',
+          kind: 'slope' as const,
           ...counts,
         },
+        ...others.map((other) => ({
+          method: other.method,
+          estimateDeg: other.offsetDeg,
+          interval95Deg: around(other.offsetDeg, other.halfWidthDeg),
+          leansOn: other.leansOn,
+          kind: 'slope' as const,
+          rows: other.rows,
+          days: other.days,
+        })),
       ],
       byExponent: byExponent.map((shown) => ({
         exponent: shown.exponent,
@@ -173,7 +199,14 @@ function unanswered(
     failure.code === 'too-few-rows' || failure.code === 'too-few-days'
       ? `${failure.text}; post a month of this turbine, or add a reference instrument`
       : ''
-  return { sheet: { ...emptySheet(frame, counts), furtherNote }, byExponent: [], standing: null, failure }
+  return {
+    sheet: { ...emptySheet(frame, counts), furtherNote },
+    frame,
+    byExponent: [],
+    disagreement: null,
+    standing: null,
+    failure,
+  }
 }
 
 function tooLittle(

@@ -1,25 +1,13 @@
 import { wrap360 } from '../kernel/angle/index.ts'
 import { medianOf } from '../kernel/stats/index.ts'
-import {
-  airDensity,
-  kneeSpeed,
-  measuredPowerCurve,
-  normalisedSpeed,
-  powerAt,
-  pressureFromAltitude,
-  ratedPowerFrom,
-} from '../kernel/wind/index.ts'
+import { airDensity, normalisedSpeed, pressureFromAltitude, ratedPowerFrom } from '../kernel/wind/index.ts'
 import type { ScoringSettings, SiteFile, TurbineSetup } from '../sheet/index.ts'
 import { acrossNorth, type AcrossNorth, type LoggedAngle } from './across-north.ts'
 import { buildCalendar, type Calendar } from './calendar.ts'
+import { curveAndRange } from './curve-and-range.ts'
 import type { Frame, TurbineColumns, TurbineFrame } from './frame.ts'
-import { setAsideBeforeCurve, setAsideByRange } from './set-aside.ts'
+import { setAsideBeforeCurve } from './set-aside.ts'
 import { conventionalVane, type ConventionalVane } from './vane-convention.ts'
-
-/** Share of rated power up to which rows are used: the knee itself answers less and less to the wind. */
-const KNEE_SHARE = 0.8
-/** Upper end of the wind speeds used where the log shows no rated power, m/s. */
-const WIND_MAX_WITHOUT_KNEE_MS = 10
 
 export interface FrameRequest {
   readonly site: SiteFile
@@ -124,17 +112,10 @@ function buildTurbine(
       `${Math.round(100 * limitedShare)} % of the running rows count as limited: check ratedPowerKw against power_limit, and pitch`,
     )
   }
-  const curve = measuredPowerCurve(
-    normalised.filter((_, i) => reason[i] === 0),
-    power.filter((_, i) => reason[i] === 0),
-  )
-  const knee = kneeSpeed(curve, rated.powerKw, KNEE_SHARE)
-  const windMaxMs = Number.isNaN(knee) ? WIND_MAX_WITHOUT_KNEE_MS : knee
-  setAsideByRange(reason, normalised, vane, {
-    minMs: settings.windMinMs,
-    maxMs: windMaxMs,
+  const judged = curveAndRange(reason, normalised, vane, power, {
+    ratedPowerKw: rated.powerKw,
+    windMinMs: settings.windMinMs,
     vaneMaxDeg: settings.vaneMaxDeg,
-    isCovered: (speed) => !Number.isNaN(powerAt(curve, speed)),
   })
 
   const turbulence = (numbers['wind_speed_sd'] ?? missing).map((sd, i) =>
@@ -163,12 +144,12 @@ function buildTurbine(
     nacellePosition: nacelle ?? missing,
     indicatedDirection,
     densitySource: air.source,
-    reason,
+    reason: judged.reason,
     running,
     limited,
-    curve,
+    curve: judged.curve,
     windMinMs: settings.windMinMs,
-    windMaxMs,
+    windMaxMs: judged.windMaxMs,
     notes,
   }
 }

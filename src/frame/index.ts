@@ -10,3 +10,4 @@ export {
   type EarlySetAside,
   type SetAsideInput,
 } from './set-aside.ts'
+export { correctSpeed } from './correct-speed.ts'

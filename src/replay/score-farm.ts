@@ -1,4 +1,4 @@
-import { dayBlocks } from '../analysis/index.ts'
+import { clockLags, dayBlocks, signChecks, type Neighbours } from '../analysis/index.ts'
 import { buildFrame, type TurbineColumns } from '../frame/index.ts'
 import type { Receipt, ScoreSheet, ScoringSettings, SiteFile, TurbineSheet } from '../sheet/index.ts'
 import type { Scorers } from './scorers.ts'
@@ -36,10 +36,32 @@ export async function scoreFarm(
   const days = frame.calendar.days
   const dayWeights = dayBlocks(days, settings)
 
+  const signs = signChecks(frame)
+  const clocks = clockLags(frame)
+  const { intervalS: rowS, fromMs, toMs, turbines: rows } = frame
+  const neighbours =
+    settings.assumedResponsePctPerDeg === null
+      ? await scorers.compare({
+          farm: { intervalS: rowS, fromMs, toMs, turbines: rows },
+          days,
+          dayWeights,
+          settings,
+        })
+      : null
+
   let done = 0
   const turbines = await Promise.all(
-    frame.turbines.map(async (turbine): Promise<TurbineSheet> => {
-      const sheet = await scorers.score({ frame: turbine, settings, dayWeights, days })
+    frame.turbines.map(async (turbine, i): Promise<TurbineSheet> => {
+      const sheet = await scorers.score({
+        frame: turbine,
+        settings,
+        dayWeights,
+        days,
+        response: neighbours?.response.turbines[i] ?? null,
+        farmEstimates: neighbours?.estimates[i] ?? [],
+        sign: signs[i]!,
+        farmFindings: clocks[i] ?? [],
+      })
       onTurbine(++done, frame.turbines.length)
       return sheet
     }),
@@ -75,6 +97,7 @@ export async function scoreFarm(
       anemometerResponsePerDeg: responseByModel(
         frame.turbines.map(({ model }) => model),
         settings,
+        neighbours,
       ),
     },
     turbines,
@@ -87,24 +110,43 @@ export async function scoreFarm(
 function responseByModel(
   models: readonly string[],
   settings: ScoringSettings,
+  neighbours: Neighbours | null,
 ): ScoreSheet['fleet']['anemometerResponsePerDeg'] {
   const known = settings.assumedResponsePctPerDeg
-  const half = known === null ? (NORMAL_95 * settings.responseSpreadPctPerDeg) / 100 : 0
-  const centre = (known ?? 0) / 100
-  return Object.fromEntries(
-    [...new Set(models)].map((model) => [
+  const entries = [...new Set(models)].map((model) => {
+    const turbines = models.filter((other) => other === model).length
+    const measured = neighbours?.response.models.find((other) => other.model === model)
+    if (measured) {
+      const half = NORMAL_95 * measured.sdPerDeg
+      return [
+        model,
+        {
+          estimate: measured.perDeg,
+          interval95: [measured.perDeg - half, measured.perDeg + half],
+          spread: measured.spreadPerDeg,
+          turbines: measured.turbines,
+          source: 'wind speed against neighbours at the same time',
+        },
+      ] as const
+    }
+    const half = known === null ? (NORMAL_95 * settings.responseSpreadPctPerDeg) / 100 : 0
+    const centre = (known ?? 0) / 100
+    return [
       model,
       {
         estimate: known === null ? null : centre,
         interval95: [centre - half, centre + half],
         spread: known === null ? null : 0,
-        turbines: models.filter((other) => other === model).length,
+        turbines,
         source:
           known === null
             ? 'not measured: the setting responseSpreadPctPerDeg says how large it may be'
             : 'taken as known: the setting assumedResponsePctPerDeg',
       },
-    ]),
+    ] as const
+  })
+  return Object.fromEntries(
+    entries.map(([model, entry]) => [model, { ...entry, interval95: [...entry.interval95] }]),
   )
 }
 

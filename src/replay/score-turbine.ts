@@ -9,7 +9,10 @@ import {
   yawError,
   type Block,
   type DayWeights,
+  type FarmEstimate,
+  type SignCheck,
   type StaticOffsetAnswer,
+  type TurbineResponse,
   type Verdict,
 } from '../analysis/index.ts'
 import { countReasons, type TurbineFrame } from '../frame/index.ts'
@@ -23,15 +26,23 @@ export interface ScoreTask {
   readonly settings: ScoringSettings
   readonly dayWeights: readonly DayWeights[]
   readonly days: number
+  /** What neighbours tell of this anemometer; null = nothing. */
+  readonly response: TurbineResponse | null
+  readonly farmEstimates: readonly FarmEstimate[]
+  readonly sign: SignCheck
+  /** Findings that need the whole farm, such as a clock that is off. */
+  readonly farmFindings: TurbineSheet['sensors']
 }
 
 /** Runs the questions about one turbine, in order, and writes its part of the sheet. NaN stands for missing. */
 export function scoreTurbine(task: ScoreTask): TurbineSheet {
-  const { frame, settings } = task
+  const { settings, sign } = task
+  const notReady = readiness(task.frame)
+  const block = notReady ?? sign.block
+  const answer = staticOffset(task.frame, task, block)
+  const { frame, standing } = answer
+  const offset = { ...answer.sheet, signChecked: sign.checked }
   const counts = countReasons(frame.reason)
-  const block = readiness(frame)
-  const answer = staticOffset(frame, task, block)
-  const { sheet: offset, standing } = answer
   const verdict = judge(block, answer, settings)
   const settled = verdict.verdict === 'offset' || verdict.verdict === 'aligned'
   const scored = settled && standing ? score(frame, standing.offsetDeg) : null
@@ -62,7 +73,7 @@ export function scoreTurbine(task: ScoreTask): TurbineSheet {
       byExponent: answer.byExponent,
     }),
     powerCurve: powerCurveTable(frame),
-    sensors: block ? [block.finding] : [],
+    sensors: [...(notReady ? [notReady.finding] : []), ...sign.findings, ...task.farmFindings],
     yawActivity: {},
     advice: adviceFor(verdict, offset),
     cautions: [...CAUTIONS],
@@ -71,6 +82,9 @@ export function scoreTurbine(task: ScoreTask): TurbineSheet {
 
 function judge(block: Block | null, answer: StaticOffsetAnswer, settings: ScoringSettings): Verdict {
   if (block) return { verdict: 'blocked', code: block.code, text: block.text }
+  if (answer.disagreement !== null) {
+    return { verdict: 'undetermined', code: 'estimates-disagree', text: answer.disagreement }
+  }
   if (answer.standing) {
     return verdictOf(
       answer.standing.standingDeg,

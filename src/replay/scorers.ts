@@ -1,12 +1,27 @@
 import { existsSync } from 'node:fs'
 import { fileURLToPath } from 'node:url'
 import { Piscina } from 'piscina'
-import type { TurbineSheet } from '../sheet/index.ts'
+import { compareNeighbours, type DayWeights, type FarmRows, type Neighbours } from '../analysis/index.ts'
+import type { ScoringSettings, TurbineSheet } from '../sheet/index.ts'
 import { scoreTurbine, type ScoreTask } from './score-turbine.ts'
 
-/** Scores turbines, on this thread or on several. The sheet is the same either way. */
+export interface FarmTask {
+  readonly farm: FarmRows
+  readonly days: number
+  readonly dayWeights: readonly DayWeights[]
+  readonly settings: ScoringSettings
+}
+
+/** What travels to a worker thread, and back. */
+export type Work =
+  { readonly kind: 'turbine'; readonly task: ScoreTask } | ({ readonly kind: 'farm' } & FarmTask)
+export type WorkAnswer = TurbineSheet | Neighbours | null
+
+/** Runs the heavy questions, on this thread or on several. The sheet is the same either way. */
 export interface Scorers {
   score(task: ScoreTask): Promise<TurbineSheet>
+  /** Compares neighbours; null where there is nothing to compare. */
+  compare(task: FarmTask): Promise<Neighbours | null>
   close(): Promise<void>
 }
 
@@ -15,15 +30,24 @@ export interface Scorers {
  */
 export function openScorers(threads: number): Scorers {
   if (threads === 0) {
-    return { score: (task) => Promise.resolve(scoreTurbine(task)), close: () => Promise.resolve() }
+    return {
+      score: (task) => Promise.resolve(scoreTurbine(task)),
+      compare: (task) =>
+        Promise.resolve(compareNeighbours(task.farm, task.days, task.dayWeights, task.settings)),
+      close: () => Promise.resolve(),
+    }
   }
-  const pool = new Piscina<ScoreTask, TurbineSheet>({
+  const pool = new Piscina<Work, WorkAnswer>({
     filename: workerFile(),
     minThreads: 0,
     maxThreads: threads,
     idleTimeout: 10_000,
   })
-  return { score: (task) => pool.run(task), close: () => pool.close() }
+  return {
+    score: async (task) => (await pool.run({ kind: 'turbine', task })) as TurbineSheet,
+    compare: async (task) => (await pool.run({ kind: 'farm', ...task })) as Neighbours | null,
+    close: () => pool.close(),
+  }
 }
 
 /** Worker threads load compiled code: when this file runs as source, its compiled twin is taken. */
