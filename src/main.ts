@@ -6,7 +6,7 @@ import { mkdtemp, rm } from 'node:fs/promises'
 import { constants, tmpdir } from 'node:os'
 import { join, resolve } from 'node:path'
 import { MIN_THREAD_POOL, readConfig, scoringSettings, settingsHelp, type Config } from './config.ts'
-import type { CommandParts, Scoring, SettingFlags } from './cli/index.ts'
+import type { Archive, CommandParts, Scoring, SettingFlags } from './cli/index.ts'
 import { InputError } from './errors.ts'
 
 /** Thread pool of a process that this one starts for itself; MIN_THREAD_POOL and some for compression. */
@@ -19,7 +19,7 @@ const DAY_MS = 86_400_000
 const BYTES_PER_MB = 1_000_000
 
 /** Commands that run queries, and so need the larger thread pool. */
-const QUERYING = new Set(['serve', 'replay'])
+const QUERYING = new Set(['serve', 'replay', 'sweep'])
 
 const { version } = JSON.parse(readFileSync(new URL('../package.json', import.meta.url), 'utf8')) as {
   version: string
@@ -40,6 +40,7 @@ if (QUERYING.has(args[0] ?? '') && !(poolSize >= MIN_THREAD_POOL)) {
     stderr,
     settingsHelp: settingsHelp(),
     startScoring,
+    openArchive,
     serve,
   }
   process.exitCode = await runCommandLine(args, parts)
@@ -73,18 +74,21 @@ function dieWithParent(): void {
   process.channel.unref()
 }
 
-/** Store, worker threads and replays over one data folder. */
-async function openReplays(config: Config, folder: string, report?: (error: unknown) => void) {
+/** Store, worker threads and everything that works on them, over one data folder. */
+async function openParts(config: Config, folder: string, report?: (error: unknown) => void) {
   if (config.databaseUrl !== null) {
     throw new InputError(
       'BAD_CONFIG',
       'config databaseUrl: expected none, as this version has the embedded catalogue only',
     )
   }
-  const [{ openStore }, { createReplays, openScorers }] = await Promise.all([
-    import('./store/index.ts'),
-    import('./replay/index.ts'),
-  ])
+  const [{ openStore }, { createReplays, openScorers }, { createIntake }, { createSetup }] =
+    await Promise.all([
+      import('./store/index.ts'),
+      import('./replay/index.ts'),
+      import('./intake/index.ts'),
+      import('./setup/index.ts'),
+    ])
   const clock = () => Date.now()
   const newId = () => randomUUID()
   const store = await openStore({
@@ -103,11 +107,13 @@ async function openReplays(config: Config, folder: string, report?: (error: unkn
     maxRows: config.rowsLimit,
   }
   const replays = createReplays({ store, limits, scorers, version, clock, newId })
+  const intake = createIntake({ store, limits, newId })
   const close = async () => {
+    await replays.close()
     await scorers.close()
     await store.close()
   }
-  return { store, replays, close }
+  return { store, replays, intake, setup: createSetup(store), close }
 }
 
 /** What `replay` runs on: a store in a folder that goes away with the process. */
@@ -125,9 +131,10 @@ async function startScoring(flags: SettingFlags): Promise<Scoring> {
   }
   for (const signal of ['SIGINT', 'SIGTERM', 'SIGHUP'] as const) process.once(signal, stopped)
   try {
-    const { store, replays, close } = await openReplays(config, folder)
+    const { store, replays, intake, close } = await openParts(config, folder)
     return {
       replays,
+      intake,
       settings: scoringSettings(config),
       tempFolder: store.tempFolder,
       async close() {
@@ -141,6 +148,15 @@ async function startScoring(flags: SettingFlags): Promise<Scoring> {
   }
 }
 
+/** What `sweep` runs on: the data folder of a service that is not running. */
+async function openArchive(flags: SettingFlags): Promise<Archive> {
+  const { config, unknownNames } = readConfig(process.env, flags)
+  for (const name of unknownNames) process.stderr.write(`warning: ${name} is no setting of yawledger\n`)
+  const { replays, setup, close } = await openParts(config, resolve(config.dataFolder))
+  // What is cut off in the middle is named interrupted by whoever opens the folder next.
+  return { replays, setup, settings: scoringSettings(config), close }
+}
+
 /** Runs the service until a signal stops it. */
 async function serve(flags: SettingFlags): Promise<void> {
   const { config, unknownNames } = readConfig(process.env, flags)
@@ -148,7 +164,7 @@ async function serve(flags: SettingFlags): Promise<void> {
   const logger = pino({ name: 'yawledger', level: config.logLevel })
   for (const name of unknownNames) logger.warn({ name }, 'an environment variable that is no setting')
   const dataFolder = resolve(config.dataFolder)
-  const { store, replays, close } = await openReplays(config, dataFolder, (error) => {
+  const { store, replays, intake, setup, close } = await openParts(config, dataFolder, (error) => {
     logger.error({ err: error }, 'work in the background failed')
   })
   const prune = () => {
@@ -159,7 +175,11 @@ async function serve(flags: SettingFlags): Promise<void> {
   try {
     const app = await buildServer({
       replays,
+      intake,
+      setup,
       settings: scoringSettings(config),
+      gate: { atOnce: config.uploadsAtOnce, waiting: config.uploadsWaiting },
+      replayCounts: () => store.replays.counts(),
       dataFolder,
       upload: {
         folder: store.tempFolder,

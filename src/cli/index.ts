@@ -1,2 +1,2 @@
 export { runCommandLine } from './run-command-line.ts'
-export type { CommandParts, Scoring, SettingFlags } from './parts.ts'
+export type { Archive, CommandParts, Scoring, SettingFlags } from './parts.ts'

@@ -1,6 +1,7 @@
 import { Command, Option } from 'commander'
 import type { CommandParts, SettingFlags } from './parts.ts'
 import { replayCommand, type ReplayFlags } from './replay-command.ts'
+import { sweepCommand, type SweepFlags } from './sweep-command.ts'
 import { simulateCommand, type SimulateFlags } from './simulate-command.ts'
 
 const UNITS = `Degrees, m/s, kW, MWh; a time is the start of its interval, and stamps without a zone are UTC unless --timezone tells.
@@ -23,8 +24,12 @@ const SETTING_FLAGS = {
   logLevel: 'logLevel',
 } as const
 
-/** The commands, their flags and their help. Nothing runs before `parseAsync`. */
-export function buildProgram(parts: CommandParts): Command {
+/**
+ * The commands, their flags and their help. Nothing runs before `parseAsync`.
+ *
+ * @param setStatus  told the exit status of a command that ran to its end with another one than 0.
+ */
+export function buildProgram(parts: CommandParts, setStatus: (status: number) => void): Command {
   const program = new Command('yawledger')
     .description('Replays wind-turbine SCADA yaw logs and scores misalignment.')
     .version(parts.version)
@@ -45,12 +50,14 @@ Examples:
   yawledger replay march.csv --timezone Europe/Berlin | jq '.worklist'
   yawledger simulate --out made-up --turbines 8 --days 30
   yawledger serve --port 8080 --data ./data
+  yawledger sweep --all --month 2026-03 --data ./data
 
 ${UNITS}
 ${EXIT_CODES}`,
     )
   addServe(program, parts)
   addReplay(program, parts)
+  addSweep(program, parts, setStatus)
   addSimulate(program, parts)
   return program
 }
@@ -89,12 +96,15 @@ function addReplay(program: Command, parts: CommandParts): void {
       '--out <folder>',
       'write score-sheet.json there and print a summary; default: the sheet on standard output',
     )
+    .option('--rows <file>', 'write every row with the reason it was set aside: .csv, .parquet or .arrow')
+    .option('--dry-run', 'print how the logs would be read, and score nothing')
     .option('--format <list>', 'json, csv: what is written to --out', 'json')
     .option('--timezone <zone>', 'IANA zone of stamps without an offset, such as Europe/Berlin')
     .option('--stamp <edge>', 'begin or end: which edge of its interval a time stamp marks')
     .option('--columns <json>', 'JSON or a file with it: canonical channel -> column of the log')
     .option('--turbine <name>', 'name of the turbine when the log has no turbine column')
     .option('--start-date <date>', 'date of the lowest day number, for logs with a day number and a clock')
+    .option('--date-order <order>', 'ymd, dmy or mdy, where written dates leave it open')
     .option('--rated-power <kW>', 'rated power of turbines whose site file gives none')
     .option('--exponent <p>', 'power follows the power curve at u cos(g)^(p/3); 3 unless set')
     .option('--assume-response <pct>', 'response of the anemometer to the vane, % per degree, taken as known')
@@ -120,6 +130,36 @@ ${EXIT_CODES}`,
     )
   replay.action(async (logs: string[], flags: ReplayFlags & Record<string, string>) => {
     await replayCommand(logs, flags, settingFlags(flags, replay), parts)
+  })
+}
+
+function addSweep(program: Command, parts: CommandParts, setStatus: (status: number) => void): void {
+  const sweep = program
+    .command('sweep')
+    .description('Score the stored logs of whole sites and print who to climb first: the scheduled job.')
+    .option('--site <name...>', 'sites to score')
+    .option('--all', 'score every site of the data folder')
+    .option('--month <yyyy-mm>', 'the month to score, in the time zone of each site')
+    .option('--from <time>', 'first moment; without an offset in the time zone of each site')
+    .option('--to <time>', 'first moment after the window')
+    .option('--data <folder>', 'folder that a service has stored the logs in; no service may use it now')
+    .option('--exponent <p>', 'power follows the power curve at u cos(g)^(p/3); 3 unless set')
+    .option('--threshold <degrees>', 'misalignment from which someone should act')
+    .option('--threads <n>', 'worker threads that score turbines')
+    .option('--set <name=value>', 'any other setting, such as windMinMs=6; may be repeated', collect, [])
+    .addOption(logLevelOption())
+    .addHelpText(
+      'after',
+      `
+Examples:
+  yawledger sweep --all --month 2026-03 --data ./data
+  yawledger sweep --site quern-hill --from 2026-03-01 --to 2026-06-01 --data ./data
+
+The sheets are kept, and a service on the same folder answers them. A site that fails does not stop the others.
+Exit status: 0 nothing to do, 10 someone should climb, 1 a site failed, 2 wrong use.`,
+    )
+  sweep.action(async (flags: SweepFlags & Record<string, string>) => {
+    setStatus(await sweepCommand(flags, settingFlags(flags, sweep), parts))
   })
 }
 

@@ -1,13 +1,14 @@
 import { createWriteStream } from 'node:fs'
 import { mkdir, readFile, rename, stat, writeFile } from 'node:fs/promises'
-import { basename, join, resolve } from 'node:path'
+import { basename, dirname, extname, join, resolve } from 'node:path'
 import { pipeline } from 'node:stream/promises'
 import { Type } from 'typebox'
 import { InputError } from '../errors.ts'
-import type { LogFile, OneShotRequest } from '../replay/contract.ts'
+import type { LogFile, OneShotRequest, RowsFormat } from '../replay/contract.ts'
 import { checkShape, parseSite } from '../setup/index.ts'
 import { ReadingOptions, type ScoreSheet, type SiteFile } from '../sheet/index.ts'
 import { csvTables } from './csv-tables.ts'
+import { descriptionText } from './description-text.ts'
 import type { CommandParts, Scoring, SettingFlags } from './parts.ts'
 import { progressLine } from './progress-line.ts'
 import { sheetSummary } from './sheet-summary.ts'
@@ -15,12 +16,15 @@ import { sheetSummary } from './sheet-summary.ts'
 export interface ReplayFlags {
   site?: string
   out?: string
+  rows?: string
+  dryRun?: boolean
   format: string
   timezone?: string
   stamp?: string
   columns?: string
   turbine?: string
   startDate?: string
+  dateOrder?: string
   ratedPower?: string
 }
 
@@ -36,6 +40,7 @@ const Flags = Type.Object({
   '--columns': reading.columns,
   '--turbine': reading.turbine,
   '--start-date': reading.startDate,
+  '--date-order': reading.dateOrder,
   '--rated-power': Type.Optional(Type.Number({ exclusiveMinimum: 0, maximum: 50000 })),
 })
 
@@ -47,20 +52,27 @@ export async function replayCommand(
   parts: CommandParts,
 ): Promise<void> {
   const formats = parseFormats(flags)
+  const rowsFormat = parseRowsFormat(flags.rows)
   await Promise.all(logs.map(checkLog))
   if (logs.filter((log) => log === '-').length > 1) {
     throw new InputError('BAD_OPTION', 'log: expected standard input once, got - twice')
   }
   const site = flags.site === undefined ? {} : await readSite(flags.site)
   const options = await readingFlags(flags)
-  if (flags.out !== undefined) await mkdir(flags.out, { recursive: true })
+  if (flags.out !== undefined && flags.dryRun !== true) await mkdir(flags.out, { recursive: true })
   const scoring = await parts.startScoring(settings)
   const progress = progressLine(parts.stderr)
   let sheet: ScoreSheet
   try {
     const files = await logFiles(logs, scoring, parts)
+    if (flags.dryRun === true) {
+      const described = await scoring.intake.describe(files, options.reading, site)
+      parts.stdout.write(described.map(descriptionText).join('\n'))
+      return
+    }
     const request: OneShotRequest = { logs: files, site, settings: scoring.settings, ...options }
     sheet = await scoring.replays.oneShot(request, progress.show)
+    if (flags.rows !== undefined) await writeRows(scoring, sheet.replay, rowsFormat, flags.rows)
   } finally {
     progress.clear()
     await scoring.close()
@@ -74,9 +86,9 @@ export async function replayCommand(
   await replaceFile(sheetPath, json)
   const tables = formats.includes('csv') ? csvTables(sheet) : {}
   for (const [name, csv] of Object.entries(tables)) await replaceFile(join(flags.out, name), csv)
-  parts.stdout.write(
-    sheetSummary(sheet, [sheetPath, ...Object.keys(tables).map((name) => join(flags.out ?? '', name))]),
-  )
+  const written = [sheetPath, ...Object.keys(tables).map((name) => join(flags.out ?? '', name))]
+  if (flags.rows !== undefined) written.push(flags.rows)
+  parts.stdout.write(sheetSummary(sheet, written))
 }
 
 function parseFormats(flags: ReplayFlags): string[] {
@@ -90,6 +102,29 @@ function parseFormats(flags: ReplayFlags): string[] {
     throw new InputError('BAD_OPTION', '--format: expected --out with csv, got none')
   }
   return formats
+}
+
+const ROWS_FORMATS: Readonly<Record<string, RowsFormat>> = {
+  '.csv': 'csv',
+  '.parquet': 'parquet',
+  '.arrow': 'arrow',
+}
+
+function parseRowsFormat(path: string | undefined): RowsFormat {
+  if (path === undefined) return 'csv'
+  const format = ROWS_FORMATS[extname(path).toLowerCase()]
+  if (format !== undefined) return format
+  const expected = Object.keys(ROWS_FORMATS).join(', ')
+  throw new InputError('BAD_OPTION', `--rows: expected a name that ends with ${expected}, got "${path}"`)
+}
+
+/** A reader sees the whole file or none. */
+async function writeRows(scoring: Scoring, id: string, format: RowsFormat, path: string): Promise<void> {
+  await mkdir(dirname(path), { recursive: true })
+  const part = `${path}.part`
+  const { stream } = await scoring.replays.rows(id, format)
+  await pipeline(stream, createWriteStream(part))
+  await rename(part, path)
 }
 
 async function checkLog(log: string): Promise<void> {
@@ -124,6 +159,7 @@ async function readingFlags(flags: ReplayFlags): Promise<{ reading: ReadingOptio
     '--columns': flags.columns === undefined ? undefined : await readColumns(flags.columns),
     '--turbine': flags.turbine,
     '--start-date': flags.startDate,
+    '--date-order': flags.dateOrder,
     '--rated-power': flags.ratedPower,
   }
   const present = Object.fromEntries(Object.entries(given).filter(([, value]) => value !== undefined))
@@ -134,6 +170,7 @@ async function readingFlags(flags: ReplayFlags): Promise<{ reading: ReadingOptio
   if (checked['--columns'] !== undefined) options.columns = checked['--columns']
   if (checked['--turbine'] !== undefined) options.turbine = checked['--turbine']
   if (checked['--start-date'] !== undefined) options.startDate = checked['--start-date']
+  if (checked['--date-order'] !== undefined) options.dateOrder = checked['--date-order']
   const ratedPowerKw = checked['--rated-power']
   return ratedPowerKw === undefined ? { reading: options } : { reading: options, ratedPowerKw }
 }

@@ -63,18 +63,12 @@ function turbineTable(sheet: ScoreSheet): string {
     table.push([
       one.turbine,
       one.verdict,
-      // A number that is not settled must not be typed into a controller: only its interval is shown.
-      withInterval(
-        judged ? staticOffset.standingMisalignmentDeg : null,
-        staticOffset.standingInterval95Deg,
-        signed,
-      ),
+      withInterval(staticOffset.standingMisalignmentDeg, staticOffset.standingInterval95Deg, signed),
       judged ? plain(energyLoss.static.recoverablePctOfProduced, 2) : '?',
-      withInterval(
-        judged ? energyLoss.static.annualMwh : null,
-        energyLoss.static.annualInterval95Mwh,
-        (value) => plain(value, 0),
-      ),
+      // What is not settled is no loss to plan with: how large it may be is all that can be said.
+      judged
+        ? withInterval(energyLoss.static.annualMwh, energyLoss.static.annualInterval95Mwh, whole)
+        : intervalAlone(energyLoss.static.annualInterval95Mwh, whole),
       one.advice[0] ?? one.reason,
     ])
   }
@@ -93,6 +87,17 @@ function withInterval(
   const [lower = null, upper = null] = interval
   if (lower === null || upper === null) return format(value)
   return `${format(value)} [${format(lower)}, ${format(upper)}]`
+}
+
+function intervalAlone(
+  [lower = null, upper = null]: readonly (number | null)[],
+  format: (value: number | null) => string,
+): string {
+  return lower === null || upper === null ? '?' : `[${format(lower)}, ${format(upper)}]`
+}
+
+function whole(value: number | null): string {
+  return plain(value, 0)
 }
 
 function signed(value: number | null): string {

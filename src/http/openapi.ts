@@ -17,6 +17,7 @@ export function documentInfo(version: string): NonNullable<FastifyDynamicSwagger
         'Signs: a positive misalignment means that the nacelle must stand that many degrees further clockwise, seen from above; it is added to the vane reading.',
         'Units stand at the end of names (`Deg`, `Ms`, `Kw`, `Mwh`, `S`). `null` means not known, and never zero. Times are ISO 8601; the time of a row is the start of its interval.',
         '',
+        'Reads carry `ETag`, and answer `If-None-Match` with 304. Lists come in pages: `next` of one is `after` of the following.',
         'Errors are problem details (RFC 9457) with a stable `code`. An unknown address answers 404 `NOT_FOUND`, a wrong method 405 `METHOD_NOT_ALLOWED` with `Allow`.',
         'Every answer carries `X-Request-Id`; one that is sent along is used.',
       ].join('\n'),
@@ -24,6 +25,9 @@ export function documentInfo(version: string): NonNullable<FastifyDynamicSwagger
     servers: [{ url: 'http://127.0.0.1:8080' }],
     tags: [
       { name: 'replays', description: 'Score logs' },
+      { name: 'sites', description: 'What is known about a site and its turbines' },
+      { name: 'logs', description: 'Store logs, and account for them' },
+      { name: 'answers', description: 'Latest answers, for dashboards' },
       { name: 'operations', description: 'For those who run the service' },
     ],
     components: {

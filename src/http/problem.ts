@@ -1,14 +1,14 @@
 import type { FastifyReply, FastifyRequest } from 'fastify'
 import { ERRORS, InputError, type ErrorCode } from '../errors.ts'
 import type { Problem } from '../sheet/index.ts'
-import { LOG_MEDIA_TYPES } from './media-types.ts'
+import { FORM_MEDIA_TYPE, JSON_MEDIA_TYPE, LOG_MEDIA_TYPES } from './media-types.ts'
 
 /**
  * Codes of the framework that are the caller's mistake in this program's words. Every other one below 500 is a BAD_REQUEST.
  */
 const FRAMEWORK_CODES: Readonly<Record<string, ErrorCode>> = {
   FST_ERR_CTP_INVALID_MEDIA_TYPE: 'UNSUPPORTED_MEDIA_TYPE',
-  FST_ERR_CTP_BODY_TOO_LARGE: 'LOG_TOO_LARGE',
+  FST_ERR_CTP_BODY_TOO_LARGE: 'BODY_TOO_LARGE',
   FST_REQ_FILE_TOO_LARGE: 'LOG_TOO_LARGE',
   FST_INVALID_JSON_FIELD_ERROR: 'BAD_SITE',
   FST_INVALID_MULTIPART_CONTENT_TYPE: 'UNSUPPORTED_MEDIA_TYPE',
@@ -29,7 +29,7 @@ export function asInputError(error: unknown, contentType?: string): InputError |
     const got = contentType === undefined ? 'none' : `"${contentType.slice(0, 100)}"`
     return new InputError(
       known,
-      `Content-Type: expected ${[...LOG_MEDIA_TYPES, 'multipart/form-data'].join(' | ')}, got ${got}`,
+      `Content-Type: expected ${JSON_MEDIA_TYPE} for a document, ${[...LOG_MEDIA_TYPES, FORM_MEDIA_TYPE].join(' | ')} for a log, got ${got}`,
       { cause: error },
     )
   }
@@ -76,7 +76,7 @@ export function sendProblem(
   if (mistake !== undefined && Object.keys(mistake.detail).length > 0) {
     problem.context = JSON.parse(hide(JSON.stringify(mistake.detail))) as Record<string, unknown>
   }
-  if (status === 503) reply.header('retry-after', '5')
+  if (status === 503) reply.header('retry-after', code === 'BUSY' ? '30' : '5')
   return reply
     .code(status)
     .header('content-type', 'application/problem+json')

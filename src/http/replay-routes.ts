@@ -1,81 +1,59 @@
 import type { FastifyReply, FastifyRequest } from 'fastify'
 import { Type } from 'typebox'
-import type { ErrorCode } from '../errors.ts'
-import type { ReplayRecord, Replays } from '../replay/contract.ts'
-import { ReplayState, type ScoringSettings } from '../sheet/index.ts'
-import { entityTag, matchesTag } from './etag.ts'
-import { LOG_MEDIA_TYPES } from './media-types.ts'
+import type { Intake } from '../intake/index.ts'
+import type { Replays } from '../replay/contract.ts'
+import { ReplayState, type ScoreSheet, type ScoringSettings } from '../sheet/index.ts'
+import {
+  ETAG,
+  IfNoneMatch,
+  jsonResponse,
+  LOG_CODES,
+  Name,
+  Next,
+  NOT_MODIFIED,
+  pageOf,
+  PageQuery,
+  sendJson,
+  sendTagged,
+  SERVICE_CODES,
+} from './answers.ts'
+import { entityTag } from './etag.ts'
+import { receiveJson } from './json-body.ts'
+import { DryRun } from './log-description.ts'
+import { jsonBody, logBodies } from './log-bodies.ts'
+import { bareMediaType, JSON_MEDIA_TYPE } from './media-types.ts'
+import type { Metrics } from './metrics.ts'
 import { problemResponses } from './problem.ts'
 import { ReplayQuery, replayOptions } from './replay-query.ts'
+import { replayAddress, ReplaySummary, replaySummary } from './replay-summary.ts'
+import type { ScoringGate } from './scoring-gate.ts'
+import { StoredReplay, storedRequest } from './stored-replay.ts'
 import type { TypedServer } from './typed-server.ts'
 import { receiveUpload, type UploadLimits } from './upload.ts'
 
 export interface ReplayRouteParts {
   readonly replays: Replays
-  /** The settings of the service, which a query may override. */
+  readonly intake: Intake
+  /** The settings of the service, which a request may override. */
   readonly settings: ScoringSettings
   readonly upload: UploadLimits
+  readonly gate: ScoringGate
+  readonly metrics: Metrics
 }
 
-const Time = (description: string) => Type.String({ format: 'date-time', description })
-
-export const ReplaySummary = Type.Object(
-  {
-    replay: Type.String({ description: 'id' }),
-    state: ReplayState,
-    site: Type.Union([Type.String(), Type.Null()]),
-    createdAt: Time('when it was posted'),
-    finishedAt: Type.Union([Time('when it ended'), Type.Null()], { description: 'null while it runs' }),
-    problem: Type.Union([Type.Object({ code: Type.String(), detail: Type.String() }), Type.Null()], {
-      description: 'why it failed; null otherwise',
-    }),
-    href: Type.String({ description: 'where its score sheet or state is read' }),
-  },
-  { description: 'State of a replay' },
-)
+/** Seconds after which a replay in the background is worth another look. */
+const LOOK_AGAIN_S = '2'
 
 const ReplayPage = Type.Object(
-  {
-    replays: Type.Array(ReplaySummary, { description: 'newest first' }),
-    next: Type.Union([Type.String(), Type.Null()], {
-      description: 'cursor: give it as `after` to get the next page; null on the last',
-    }),
-  },
+  { replays: Type.Array(ReplaySummary, { description: 'newest first' }), next: Next },
   { description: 'A page of replays' },
 )
 
-const SERVICE_CODES = ['NOT_READY', 'INTERNAL'] as const satisfies readonly ErrorCode[]
+const IdParams = Type.Object({ id: Name('id of the replay') })
 
-const POST_CODES = [
-  'LENGTH_MISMATCH',
-  'NEGATIVE_WEIGHT',
-  'OUT_OF_RANGE',
-  'LOG_EMPTY',
-  'LOG_NO_HEADER',
-  'LOG_NO_ROWS',
-  'LOG_COLUMNS_MISSING',
-  'LOG_COLUMN_UNREADABLE',
-  'LOG_COLUMN_MAP',
-  'LOG_TIME',
-  'LOG_UNIT',
-  'LOG_LINE_TOO_LONG',
-  'LOG_TOO_LARGE',
-  'LOG_TOO_MANY_COLUMNS',
-  'LOG_TOO_MANY_ROWS',
-  'LOG_CORRUPT',
-  'BAD_REQUEST',
-  'BAD_OPTION',
-  'BAD_SITE',
-  'UNSUPPORTED_MEDIA_TYPE',
-  'STORAGE_FULL',
-  'INTERRUPTED',
-  ...SERVICE_CODES,
-] as const satisfies readonly ErrorCode[]
-
-const ETAG = { ETag: { schema: { type: 'string' }, description: 'of the score sheet' } }
-const IdParams = Type.Object({
-  id: Type.String({ minLength: 1, maxLength: 100, description: 'id of the replay' }),
-})
+const LOCATION = {
+  Location: { schema: { type: 'string' }, description: 'where the score sheet is read again' },
+}
 
 /** POST, GET and DELETE of /v1/replays. */
 export function replayRoutes(app: TypedServer, parts: ReplayRouteParts): void {
@@ -83,49 +61,63 @@ export function replayRoutes(app: TypedServer, parts: ReplayRouteParts): void {
     '/v1/replays',
     {
       schema: {
-        operationId: 'scoreLog',
+        operationId: 'score',
         tags: ['replays'],
-        summary: 'Score a posted log',
+        summary: 'Score a posted log, or stored ones',
         description: [
-          'Reads the log in the body, scores every turbine in it and answers the score sheet; no set-up is needed.',
+          'A log as body: it is read, every turbine in it is scored and the score sheet is the answer; no set-up is needed.',
           'Delimiter, encoding, header names and units are recognised, and the receipt in the sheet says how each column was taken and where every row went.',
           'The sheet is kept and read again under the address in `Location`, byte for byte.',
+          '`dryRun=true` says how the log would be read (200), and does nothing else.',
           '',
           '    curl --data-binary @log.csv -H "Content-Type: text/csv" "http://127.0.0.1:8080/v1/replays?timezone=Europe/Berlin"',
           '    curl -F site=@farm.site.json -F log=@log.csv.gz http://127.0.0.1:8080/v1/replays',
+          '',
+          'JSON as body: the logs that are stored for a site are scored over a window. With `Prefer: respond-async` the answer is 202 and the address to look at.',
+          '',
+          '    curl -H "Content-Type: application/json" -d \'{"site":"quern-hill","from":"2026-03-01T00:00:00Z","to":"2026-04-01T00:00:00Z"}\' http://127.0.0.1:8080/v1/replays',
         ].join('\n'),
         querystring: ReplayQuery,
-        body: requestBodies(),
+        headers: Type.Object({
+          prefer: Type.Optional(
+            Type.String({
+              description: '`respond-async`: stored logs are scored in the background (RFC 7240)',
+            }),
+          ),
+        }),
+        body: {
+          content: { ...jsonBody(StoredReplay).content, ...logBodies({ takesSite: true }).content },
+        },
         response: {
-          201: {
-            description: 'Scored',
-            headers: {
-              ...ETAG,
-              Location: { schema: { type: 'string' }, description: 'where the score sheet is read again' },
+          200: jsonResponse('How the logs would be read (`dryRun=true`)', DryRun),
+          201: jsonResponse('Scored', { $ref: 'ScoreSheet#' }, { ...ETAG, ...LOCATION }),
+          202: jsonResponse(
+            'Taken into the queue',
+            { $ref: 'ReplaySummary#' },
+            {
+              ...LOCATION,
+              'Preference-Applied': { schema: { type: 'string' }, description: '`respond-async`' },
+              'Retry-After': { schema: { type: 'string' }, description: 'seconds' },
             },
-            content: { 'application/json': { schema: { $ref: 'ScoreSheet#' } } },
-          },
-          ...problemResponses(POST_CODES),
+          ),
+          ...problemResponses([
+            'LENGTH_MISMATCH',
+            'NEGATIVE_WEIGHT',
+            'OUT_OF_RANGE',
+            'BAD_SITE',
+            'SITE_NOT_FOUND',
+            'TURBINE_NOT_FOUND',
+            'BODY_TOO_LARGE',
+            ...LOG_CODES,
+          ]),
         },
       },
     },
     async (request, reply) => {
-      const options = replayOptions(request.query, parts.settings)
-      const upload = await receiveUpload(request, parts.upload)
-      try {
-        const sheet = await parts.replays.oneShot({ logs: upload.logs, site: upload.site, ...options })
-        const record = await parts.replays.get(sheet.replay)
-        if (record.sheet === null) throw new Error(`replay ${sheet.replay} is scored and has no sheet`)
-        const bytes = Buffer.from(record.sheet)
-        return await reply
-          .code(201)
-          .header('location', href(sheet.replay))
-          .header('etag', entityTag(bytes))
-          .header('content-type', 'application/json; charset=utf-8')
-          .send(bytes)
-      } finally {
-        await upload.remove()
-      }
+      const type = bareMediaType(request.headers['content-type'])
+      return type === JSON_MEDIA_TYPE
+        ? await scoreStored(request, reply, parts)
+        : await scoreLog(request, request.query, reply, parts)
     },
   )
 
@@ -137,32 +129,25 @@ export function replayRoutes(app: TypedServer, parts: ReplayRouteParts): void {
         tags: ['replays'],
         summary: 'Read a score sheet',
         description:
-          'The score sheet, byte for byte as it was first answered. A replay that is not done answers its state instead: an object with `state` and no `turbines`.',
+          'The score sheet, byte for byte as it was first answered. A replay that is not done answers its state instead: an object with `state` and no `turbines`; while it waits or runs, `Retry-After` says when to look again.',
         params: IdParams,
-        headers: Type.Object({
-          'if-none-match': Type.Optional(Type.String({ description: 'ETag of the sheet that is at hand' })),
-        }),
+        headers: IfNoneMatch,
         response: {
-          200: {
-            description: 'The score sheet, or the state of a replay that is not done',
-            headers: ETAG,
-            content: {
-              'application/json': {
-                schema: { anyOf: [{ $ref: 'ScoreSheet#' }, { $ref: 'ReplaySummary#' }] },
-              },
-            },
-          },
-          304: { description: 'The sheet at hand is the same' },
+          200: jsonResponse(
+            'The score sheet, or the state of a replay that is not done',
+            { anyOf: [{ $ref: 'ScoreSheet#' }, { $ref: 'ReplaySummary#' }] },
+            ETAG,
+          ),
+          ...NOT_MODIFIED,
           ...problemResponses(['BAD_OPTION', 'REPLAY_NOT_FOUND', ...SERVICE_CODES]),
         },
       },
     },
     async (request, reply) => {
       const record = await parts.replays.get(request.params.id)
-      if (record.sheet === null) {
-        return await sendJson(reply.header('cache-control', 'no-store'), summary(record))
-      }
-      return await sendTagged(request, reply, Buffer.from(record.sheet))
+      if (record.sheet !== null) return await sendTagged(request, reply, record.sheet)
+      if (record.state === 'queued' || record.state === 'running') reply.header('retry-after', LOOK_AGAIN_S)
+      return await sendJson(reply.header('cache-control', 'no-store'), replaySummary(record))
     },
   )
 
@@ -176,31 +161,29 @@ export function replayRoutes(app: TypedServer, parts: ReplayRouteParts): void {
         description: 'Newest first, one page at a time.',
         querystring: Type.Object(
           {
-            after: Type.Optional(
-              Type.String({ minLength: 1, maxLength: 200, description: '`next` of the page before' }),
-            ),
-            limit: Type.Optional(
-              Type.Integer({ minimum: 1, maximum: 200, default: 50, description: 'most replays of a page' }),
-            ),
+            ...PageQuery,
+            site: Type.Optional(Name('only replays of this site')),
+            state: Type.Optional(ReplayState),
           },
           { additionalProperties: false },
         ),
+        headers: IfNoneMatch,
         response: {
-          200: {
-            description: 'A page of replays',
-            headers: ETAG,
-            content: { 'application/json': { schema: ReplayPage } },
-          },
-          304: { description: 'The page at hand is the same' },
+          200: jsonResponse('A page of replays', ReplayPage, ETAG),
+          ...NOT_MODIFIED,
           ...problemResponses(['BAD_OPTION', 'BAD_REQUEST', ...SERVICE_CODES]),
         },
       },
     },
     async (request, reply) => {
-      const { after, limit = 50 } = request.query
-      const page = await parts.replays.list(after === undefined ? { limit } : { after, limit })
-      const json = JSON.stringify({ replays: page.replays.map(summary), next: page.next })
-      return await sendTagged(request, reply, Buffer.from(json))
+      const { site, state } = request.query
+      const page = await parts.replays.list({
+        ...pageOf(request.query),
+        ...(site === undefined ? {} : { site }),
+        ...(state === undefined ? {} : { state }),
+      })
+      const json = JSON.stringify({ replays: page.replays.map(replaySummary), next: page.next })
+      return await sendTagged(request, reply, json)
     },
   )
 
@@ -210,11 +193,12 @@ export function replayRoutes(app: TypedServer, parts: ReplayRouteParts): void {
       schema: {
         operationId: 'removeReplay',
         tags: ['replays'],
-        summary: 'Remove a replay',
-        description: 'Removes its score sheet and its rows.',
+        summary: 'Cancel or remove a replay',
+        description:
+          'One that waits or runs is cancelled, and its state stays to be read. Any other one is removed with its score sheet and its rows.',
         params: IdParams,
         response: {
-          204: { description: 'Removed' },
+          204: { description: 'Cancelled or removed' },
           ...problemResponses(['BAD_OPTION', 'REPLAY_NOT_FOUND', ...SERVICE_CODES]),
         },
       },
@@ -226,59 +210,75 @@ export function replayRoutes(app: TypedServer, parts: ReplayRouteParts): void {
   )
 }
 
-/** The body is a stream that no validator may read: the schema describes it, and upload.ts checks it. */
-function requestBodies(): { content: Record<string, { schema: object }> } {
-  const log = {
-    type: 'string',
-    format: 'binary',
-    description: 'the log; may be gzip, by itself or by Content-Encoding',
-  }
-  const form = {
-    type: 'object',
-    required: ['log'],
-    properties: {
-      site: { $ref: 'SiteFile#' },
-      log: {
-        type: 'array',
-        minItems: 1,
-        items: { type: 'string', format: 'binary' },
-        description: 'one part each',
-      },
-    },
-  }
-  const plain = LOG_MEDIA_TYPES.map((type) => [type, { schema: log }] as const)
-  return { content: { ...Object.fromEntries(plain), 'multipart/form-data': { schema: form } } }
-}
-
-function href(id: string): string {
-  return `/v1/replays/${encodeURIComponent(id)}`
-}
-
-function summary(record: ReplayRecord) {
-  return {
-    replay: record.id,
-    state: record.state,
-    site: record.site,
-    createdAt: isoTime(record.createdMs),
-    finishedAt: record.finishedMs === null ? null : isoTime(record.finishedMs),
-    problem: record.problem,
-    href: href(record.id),
+async function scoreLog(
+  request: FastifyRequest,
+  query: ReplayQuery,
+  reply: FastifyReply,
+  parts: ReplayRouteParts,
+): Promise<FastifyReply> {
+  const options = replayOptions(query, parts.settings)
+  const place = parts.gate.admit(request)
+  try {
+    const upload = await receiveUpload(request, parts.upload, { takesSite: true, name: query.name })
+    try {
+      const { logs, site } = upload
+      if (query.dryRun === true) {
+        const described = await place.run(() => parts.intake.describe(logs, options.reading, site))
+        return await sendJson(reply, { logs: described })
+      }
+      const sheet = await place.run(() => parts.replays.oneShot({ logs, site, ...options }))
+      parts.metrics.countRows(sheet.rows)
+      return await sendSheet(reply, parts, sheet)
+    } finally {
+      await upload.remove()
+    }
+  } finally {
+    place.leave()
   }
 }
 
-function isoTime(utcMs: number): string {
-  return new Date(utcMs).toISOString()
+async function scoreStored(
+  request: FastifyRequest,
+  reply: FastifyReply,
+  parts: ReplayRouteParts,
+): Promise<FastifyReply> {
+  const stored = storedRequest(await receiveJson(request, parts.upload.idleMs), parts.settings)
+  if (prefersAsync(request.headers['prefer'])) {
+    const { id } = await parts.replays.start(stored)
+    const record = await parts.replays.get(id)
+    reply
+      .code(202)
+      .header('location', replayAddress(id))
+      .header('preference-applied', 'respond-async')
+      .header('retry-after', LOOK_AGAIN_S)
+    return sendJson(reply, replaySummary(record))
+  }
+  const place = parts.gate.admit(request)
+  try {
+    return await sendSheet(reply, parts, await place.run(() => parts.replays.stored(stored)))
+  } finally {
+    place.leave()
+  }
 }
 
-function sendTagged(request: FastifyRequest, reply: FastifyReply, bytes: Buffer): FastifyReply {
-  const tag = entityTag(bytes)
-  reply.header('etag', tag).header('cache-control', 'no-cache')
-  if (matchesTag(request.headers['if-none-match'], tag)) return reply.code(304).send()
-  return reply.header('content-type', 'application/json; charset=utf-8').send(bytes)
-}
-
-function sendJson(reply: FastifyReply, value: unknown): FastifyReply {
+/** The sheet as it is kept, so that reading it again gives the same bytes. */
+async function sendSheet(
+  reply: FastifyReply,
+  parts: ReplayRouteParts,
+  { replay }: ScoreSheet,
+): Promise<FastifyReply> {
+  const { sheet } = await parts.replays.get(replay)
+  if (sheet === null) throw new Error(`replay ${replay} is scored and has no sheet`)
+  const bytes = Buffer.from(sheet)
   return reply
+    .code(201)
+    .header('location', replayAddress(replay))
+    .header('etag', entityTag(bytes))
     .header('content-type', 'application/json; charset=utf-8')
-    .send(Buffer.from(JSON.stringify(value)))
+    .send(bytes)
+}
+
+function prefersAsync(header: string | string[] | undefined): boolean {
+  const preferences = [header ?? []].flat().join(',').split(',')
+  return preferences.some((one) => /^\s*respond-async\s*(;|$)/i.test(one))
 }

@@ -5,18 +5,39 @@ import multipart from '@fastify/multipart'
 import swagger, { type FastifyDynamicSwaggerOptions } from '@fastify/swagger'
 import fastify, { type FastifyBaseLogger, type FastifyReply } from 'fastify'
 import { InputError } from '../errors.ts'
-import { checkShape } from '../setup/index.ts'
-import { Problem, ScoreSheet, SiteFile } from '../sheet/index.ts'
+import type { Intake } from '../intake/index.ts'
+import type { Replays } from '../replay/contract.ts'
+import { checkShape, type Setup } from '../setup/index.ts'
+import { Problem, ScoreSheet, SiteFile, type ScoringSettings } from '../sheet/index.ts'
 import { healthRoutes, type ReadyCheck } from './health-routes.ts'
 import { KnownAddresses } from './known-addresses.ts'
-import { LOG_MEDIA_TYPES } from './media-types.ts'
+import { answerRoutes } from './answer-routes.ts'
+import { entryRoutes } from './entry-routes.ts'
+import { latestSheets } from './latest-sheet.ts'
+import { DryRun } from './log-description.ts'
+import { logRoutes, StoredLog } from './log-routes.ts'
+import { JSON_MEDIA_TYPE, LOG_MEDIA_TYPES } from './media-types.ts'
+import { createMetrics, metricsRoute, type MetricSources } from './metrics.ts'
 import { documentInfo } from './openapi.ts'
 import { sendProblem } from './problem.ts'
-import { ReplaySummary, replayRoutes, type ReplayRouteParts } from './replay-routes.ts'
+import { replayRoutes } from './replay-routes.ts'
+import { ReplaySummary } from './replay-summary.ts'
+import { rowsRoute } from './rows-route.ts'
+import { ScoringGate, SenderGone, type GateLimits } from './scoring-gate.ts'
+import { siteRoutes } from './site-routes.ts'
 import type { TypedServer } from './typed-server.ts'
-import { FORM_LIMITS } from './upload.ts'
+import { FORM_LIMITS, type UploadLimits } from './upload.ts'
 
-export interface ServerParts extends ReplayRouteParts {
+export interface ServerParts {
+  readonly replays: Replays
+  readonly intake: Intake
+  readonly setup: Setup
+  /** The settings of the service, which a request may override. */
+  readonly settings: ScoringSettings
+  readonly upload: UploadLimits
+  /** How many logs are scored at once, and how many may wait. */
+  readonly gate: GateLimits
+  readonly replayCounts: MetricSources['replayCounts']
   readonly ready: ReadyCheck
   /** A folder whose path never stands in an answer. */
   readonly dataFolder: string
@@ -39,6 +60,8 @@ export async function buildServer(parts: ServerParts): Promise<TypedServer> {
     genReqId: requestId,
     requestIdHeader: false,
     return503OnClosing: false,
+    // A name of 100 characters, each of which may be written as %XX of up to four bytes.
+    routerOptions: { maxParamLength: 1200 },
     // Slow senders are watched by silence, not by total time: a log of many GB may take an hour.
     requestTimeout: 0,
     frameworkErrors: (error, request, reply) => {
@@ -47,6 +70,11 @@ export async function buildServer(parts: ServerParts): Promise<TypedServer> {
     clientErrorHandler: answerBrokenRequest,
   })
   const addresses = new KnownAddresses(app)
+  const gate = new ScoringGate(parts.gate)
+  const metrics = createMetrics({
+    replayCounts: parts.replayCounts,
+    uploadsWaiting: () => gate.waiting,
+  })
   let closing = false
   app.addHook('preClose', () => {
     closing = true
@@ -68,7 +96,7 @@ export async function buildServer(parts: ServerParts): Promise<TypedServer> {
   })
 
   app.removeAllContentTypeParsers()
-  app.addContentTypeParser([...LOG_MEDIA_TYPES], (_request, payload, done) => {
+  app.addContentTypeParser([...LOG_MEDIA_TYPES, JSON_MEDIA_TYPE], (_request, payload, done) => {
     done(null, payload)
   })
   await app.register(multipart, {
@@ -85,12 +113,16 @@ export async function buildServer(parts: ServerParts): Promise<TypedServer> {
       throw new InputError('NOT_READY', 'service: expected to be running, got one that is stopping')
     return Promise.resolve()
   })
+  app.addHook('onResponse', (request, reply) => {
+    metrics.observe(request, reply)
+    return Promise.resolve()
+  })
   app.addHook('onSend', (request, _reply, payload) => {
     lingerOver(request.raw)
     return Promise.resolve(payload)
   })
   app.setErrorHandler((error, request, reply) => {
-    if (request.raw.destroyed && !request.raw.complete) {
+    if (error instanceof SenderGone || (request.raw.destroyed && !request.raw.complete)) {
       request.log.info({ detail: (error as Error).message }, 'the sender broke off')
       return reply.code(499).send()
     }
@@ -105,14 +137,21 @@ export async function buildServer(parts: ServerParts): Promise<TypedServer> {
     return sendProblem(request, reply, refusal, hiddenFolder)
   })
 
-  const shared = { Problem, ScoreSheet, SiteFile, ReplaySummary }
+  const shared = { Problem, ScoreSheet, SiteFile, ReplaySummary, StoredLog, DryRun }
   for (const [name, schema] of Object.entries<object>(shared)) app.addSchema({ ...schema, $id: name })
   const refResolver: FastifyDynamicSwaggerOptions['refResolver'] = {
     buildLocalReference: (json, _base, _fragment, index) => nameOf(json['$id'], index),
   }
   await app.register(swagger, { openapi: documentInfo(parts.version), refResolver })
-  replayRoutes(app, parts)
+  const { replays, intake, setup, upload, settings } = parts
+  replayRoutes(app, { replays, intake, settings, upload, gate, metrics })
+  rowsRoute(app, { replays })
+  siteRoutes(app, { setup, idleMs: upload.idleMs })
+  entryRoutes(app, { setup, idleMs: upload.idleMs })
+  logRoutes(app, { intake, setup, upload, gate, metrics })
+  answerRoutes(app, { latest: latestSheets(replays, setup), setup })
   healthRoutes(app, parts.ready)
+  metricsRoute(app, metrics)
   app.get('/openapi.json', { schema: { hide: true } }, (_request, reply) =>
     (reply as FastifyReply).header('cache-control', 'no-cache').send(app.swagger()),
   )

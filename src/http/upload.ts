@@ -11,10 +11,9 @@ import { InputError } from '../errors.ts'
 import type { LogFile } from '../replay/contract.ts'
 import { parseSite } from '../setup/index.ts'
 import type { SiteFile } from '../sheet/index.ts'
+import { DOCUMENT_LIMIT_BYTES as SITE_LIMIT_BYTES } from './json-body.ts'
+import { bareMediaType, FORM_MEDIA_TYPE, LOG_MEDIA_TYPES } from './media-types.ts'
 import { storeStream, tooLarge, type ByteBudget } from './store-stream.ts'
-
-/** A site file of 5000 turbines with power curves is below 4 MB. */
-const SITE_LIMIT_BYTES = 8_000_000
 
 export interface UploadLimits {
   /** An existing folder; every upload gets one of its own below. */
@@ -31,13 +30,25 @@ export interface Upload {
   remove(): Promise<void>
 }
 
+export interface UploadOptions {
+  /** Whether a form may hold a site file beside the logs. */
+  readonly takesSite: boolean
+  /** Name of a log that is the whole body; default: what Content-Disposition says. */
+  readonly name: string | undefined
+}
+
 /**
  * Stores the logs of a request on disk while they come in; nothing is held in memory but a site file.
  *
  * @throws InputError LOG_EMPTY, LOG_TOO_LARGE, LOG_CORRUPT, BAD_SITE, BAD_REQUEST, UNSUPPORTED_MEDIA_TYPE; then, as after
  *   a broken connection, nothing stays on disk.
  */
-export async function receiveUpload(request: FastifyRequest, limits: UploadLimits): Promise<Upload> {
+export async function receiveUpload(
+  request: FastifyRequest,
+  limits: UploadLimits,
+  options: UploadOptions,
+): Promise<Upload> {
+  checkMediaType(request)
   const declaredBytes = Number(request.headers['content-length'] ?? 0)
   if (declaredBytes > limits.bodyLimitBytes) throw tooLarge(limits.bodyLimitBytes)
   const encoding = contentEncoding(request)
@@ -53,8 +64,8 @@ export async function receiveUpload(request: FastifyRequest, limits: UploadLimit
     socket.setTimeout(limits.idleMs, giveUp)
     const budget: ByteBudget = { limitBytes: limits.bodyLimitBytes, usedBytes: 0 }
     const received = request.isMultipart()
-      ? await receiveForm(request, folder, budget)
-      : { logs: [await receiveBody(request, folder, budget, encoding)], site: {} }
+      ? await receiveForm(request, folder, budget, options.takesSite)
+      : { logs: [await receiveBody(request, folder, budget, { encoding, name: options.name })], site: {} }
     return { ...received, remove }
   } catch (error) {
     await remove()
@@ -63,6 +74,15 @@ export async function receiveUpload(request: FastifyRequest, limits: UploadLimit
     socket.setTimeout(0)
     socket.off('timeout', giveUp)
   }
+}
+
+function checkMediaType(request: FastifyRequest): void {
+  const type = bareMediaType(request.headers['content-type'])
+  if (request.isMultipart() || type === '' || (LOG_MEDIA_TYPES as readonly string[]).includes(type)) return
+  throw new InputError(
+    'UNSUPPORTED_MEDIA_TYPE',
+    `Content-Type: expected ${[...LOG_MEDIA_TYPES, FORM_MEDIA_TYPE].join(' | ')}, got "${type.slice(0, 100)}"`,
+  )
 }
 
 function contentEncoding(request: FastifyRequest): 'gzip' | 'identity' {
@@ -81,11 +101,11 @@ async function receiveBody(
   request: FastifyRequest,
   folder: string,
   budget: ByteBudget,
-  encoding: 'gzip' | 'identity',
+  { encoding, name: givenName }: { encoding: 'gzip' | 'identity'; name: string | undefined },
 ): Promise<LogFile> {
   const path = join(folder, 'log-1')
   const name = fileName(
-    /filename="?([^";]+)"?/i.exec(request.headers['content-disposition'] ?? '')?.[1],
+    givenName ?? /filename="?([^";]+)"?/i.exec(request.headers['content-disposition'] ?? '')?.[1],
     'log',
   )
   const bytes = request.body instanceof Readable ? await storeStream(request.body, path, budget) : 0
@@ -141,6 +161,7 @@ async function receiveForm(
   request: FastifyRequest,
   folder: string,
   budget: ByteBudget,
+  takesSite: boolean,
 ): Promise<{ logs: LogFile[]; site: SiteFile }> {
   const logs: LogFile[] = []
   let site: SiteFile | undefined
@@ -153,13 +174,13 @@ async function receiveForm(
       })
       if (bytes === 0) throw new InputError('LOG_EMPTY', `${name}: expected a log, got no bytes`)
       logs.push({ name, path })
-    } else if (part.fieldname === 'site') {
+    } else if (part.fieldname === 'site' && takesSite) {
       if (site !== undefined) throw new InputError('BAD_REQUEST', 'form: expected one part "site", got two')
       site = parseSite(await partText(part), 'site')
     } else {
       throw new InputError(
         'BAD_REQUEST',
-        `form: expected parts "site" and "log", got "${part.fieldname.slice(0, 80)}"`,
+        `form: expected parts ${takesSite ? '"site" and "log"' : '"log" alone'}, got "${part.fieldname.slice(0, 80)}"`,
       )
     }
   }

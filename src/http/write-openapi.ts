@@ -1,4 +1,7 @@
 import { readFileSync, writeFileSync } from 'node:fs'
+import type { Intake } from '../intake/index.ts'
+import type { Replays } from '../replay/contract.ts'
+import type { Setup } from '../setup/index.ts'
 import { openapiYaml } from './openapi.ts'
 import { buildServer } from './server.ts'
 
@@ -8,10 +11,16 @@ const packagePath = new URL('../../package.json', import.meta.url)
 const { version } = JSON.parse(readFileSync(packagePath, 'utf8')) as { version: string }
 
 const unused = () => Promise.reject(new Error('no request is answered here'))
+// Nothing is called while routes are added.
+const none = {} as unknown
 const app = await buildServer({
   version,
   ready: unused,
-  replays: { oneShot: unused, get: unused, list: unused, remove: unused },
+  replays: none as Replays,
+  intake: none as Intake,
+  setup: none as Setup,
+  replayCounts: unused,
+  gate: { atOnce: 1, waiting: 0 },
   // Defaults of the service do not stand in the description, so that it is the same for every installation.
   settings: {} as never,
   dataFolder: '/',

@@ -19,6 +19,23 @@ export function toCsv(rows: readonly TableRow[], columns: readonly string[]): st
   return table(cells, names).toCSV()
 }
 
+/** One row of a table of the sheet: an interval becomes two columns, anything else with an inside its JSON. */
+export function flatRow(row: object): TableRow {
+  const cells: [string, Cell][] = []
+  for (const [name, value] of Object.entries(row) as [string, unknown][]) {
+    if (name.startsWith('interval95') && Array.isArray(value)) {
+      const [lower, upper] = value as (number | null)[]
+      const unit = name.slice('interval95'.length)
+      cells.push([`lower${unit}`, lower ?? null], [`upper${unit}`, upper ?? null])
+    } else if (typeof value === 'object' && value !== null) {
+      cells.push([name, JSON.stringify(value)])
+    } else {
+      cells.push([name, (value ?? null) as Cell])
+    }
+  }
+  return Object.fromEntries(cells)
+}
+
 /** The worklist, first rank first. */
 export function worklistRows(worklist: readonly WorklistEntry[]): TableRow[] {
   return worklist.map((one, index) => ({

@@ -1,4 +1,5 @@
 import type { ScoreSheet, WorklistEntry } from './score-sheet.ts'
+import type { SiteFile } from './site-file.ts'
 
 const LINE_WIDTH = 100
 
@@ -10,6 +11,22 @@ export interface WorkOrderSource {
   readonly worklist: readonly WorklistEntry[]
   /** Turbines of the site that were not scored or came to no verdict, with the reason: not on the list is not the same as aligned. */
   readonly unsettled: readonly { readonly turbine: string; readonly reason: string }[]
+}
+
+/** Turbines of a sheet without a verdict, and turbines of the site file that the sheet does not hold. */
+export function unsettledTurbines(sheet: ScoreSheet, site: SiteFile): WorkOrderSource['unsettled'] {
+  const held = new Set(sheet.turbines.map(({ turbine }) => turbine))
+  return [
+    ...sheet.turbines
+      .filter(({ verdict }) => verdict === 'undetermined' || verdict === 'blocked')
+      .map(({ turbine, verdict, reason }) => ({ turbine, reason: `${verdict}: ${reason}` })),
+    ...(site.turbines ?? [])
+      .filter(({ turbine }) => !held.has(turbine))
+      .map(({ turbine }) => ({
+        turbine,
+        reason: 'not in this replay: no rows in its window, or not asked for',
+      })),
+  ]
 }
 
 /**

@@ -3,6 +3,8 @@ import { tmpdir } from 'node:os'
 import { join } from 'node:path'
 import { Readable, Writable } from 'node:stream'
 import { runCommandLine, type CommandParts, type SettingFlags } from '../../src/cli/index.ts'
+import type { Intake } from '../../src/intake/index.ts'
+import type { Setup } from '../../src/setup/index.ts'
 import { ReplaysInMemory } from '../http/replays-in-memory.ts'
 import { settingsExample } from '../http/sheet-example.ts'
 
@@ -15,10 +17,18 @@ class Captured extends Writable {
   }
 }
 
+interface Options {
+  stdin?: string
+  watched?: boolean
+  intake?: Intake
+  setup?: Setup
+  replays?: ReplaysInMemory
+}
+
 /** Runs a command in this process over replays in memory, and keeps what it printed. */
-export async function runCli(args: string[], options: { stdin?: string; watched?: boolean } = {}) {
+export async function runCli(args: string[], options: Options = {}) {
   const tempFolder = await mkdtemp(join(tmpdir(), 'yawledger-cli-'))
-  const replays = new ReplaysInMemory()
+  const replays = options.replays ?? new ReplaysInMemory()
   const stdout = new Captured()
   const stderr = new Captured()
   stderr.isTTY = options.watched ?? false
@@ -37,7 +47,22 @@ export async function runCli(args: string[], options: { stdin?: string; watched?
         closed++
         await rm(tempFolder, { recursive: true, force: true })
       }
-      return Promise.resolve({ replays, settings: settingsExample(), tempFolder, close })
+      return Promise.resolve({
+        replays,
+        intake: options.intake ?? ({} as Intake),
+        settings: settingsExample(),
+        tempFolder,
+        close,
+      })
+    },
+    openArchive(flags) {
+      settings.push(flags)
+      const close = () => {
+        closed++
+        return Promise.resolve()
+      }
+      const setup = options.setup ?? ({} as Setup)
+      return Promise.resolve({ replays, setup, settings: settingsExample(), close })
     },
     serve(flags) {
       served.push(flags)

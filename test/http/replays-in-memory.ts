@@ -1,12 +1,21 @@
 import { readFile } from 'node:fs/promises'
+import { Readable } from 'node:stream'
 import { InputError } from '../../src/errors.ts'
-import type { OneShotRequest, ReplayRecord, Replays } from '../../src/replay/contract.ts'
+import type {
+  OneShotRequest,
+  ReplayRecord,
+  Replays,
+  ReplayStateName,
+  RowsFormat,
+  StoredRequest,
+} from '../../src/replay/contract.ts'
 import { sheetExample } from './sheet-example.ts'
 
 /** Keeps what it is asked, reads the logs, and answers a made-up sheet: what is tested is the way there and back. */
 export class ReplaysInMemory implements Replays {
   readonly requests: OneShotRequest[] = []
   readonly bodies: Buffer[][] = []
+  readonly stores: StoredRequest[] = []
   readonly records = new Map<string, ReplayRecord>()
   /** What the next one-shot throws. */
   failure: Error | undefined
@@ -23,6 +32,42 @@ export class ReplaysInMemory implements Replays {
     return sheet
   }
 
+  /** Sheets of stored logs, in the order they are answered; the last one again and again. */
+  readonly sheets = [sheetExample('stored-1')]
+
+  stored(request: StoredRequest) {
+    this.stores.push(request)
+    if (this.failure !== undefined) return Promise.reject(this.failure)
+    const sheet = this.sheets[Math.min(this.stores.length, this.sheets.length) - 1] ?? sheetExample('none')
+    this.add({
+      id: sheet.replay,
+      site: request.site,
+      state: 'done',
+      finishedMs: 2_000,
+      sheet: JSON.stringify(sheet),
+    })
+    return Promise.resolve(sheet)
+  }
+
+  start(request: StoredRequest) {
+    this.stores.push(request)
+    const id = `started-${this.#next++}`
+    this.add({ id, site: request.site, state: 'queued' })
+    return Promise.resolve({ id })
+  }
+
+  async rows(id: string, format: RowsFormat) {
+    const { sheet } = await this.get(id)
+    if (sheet === null)
+      throw new InputError('REPLAY_NOT_FOUND', `replay: expected a finished one, got "${id}"`)
+    const mediaType = { csv: 'text/csv', parquet: 'application/vnd.apache.parquet', arrow: 'x' }[format]
+    return { stream: Readable.from([Buffer.from(`rows of ${id} as ${format}\n`)]), mediaType }
+  }
+
+  close() {
+    return Promise.resolve()
+  }
+
   add(record: Partial<ReplayRecord> & { id: string }): void {
     const blank = {
       state: 'queued',
@@ -31,6 +76,7 @@ export class ReplaysInMemory implements Replays {
       finishedMs: null,
       sheet: null,
       problem: null,
+      progress: null,
     } as const
     this.records.set(record.id, { ...blank, ...record })
   }
@@ -43,8 +89,11 @@ export class ReplaysInMemory implements Replays {
     return Promise.resolve(record)
   }
 
-  list({ after, limit }: { after?: string; limit: number }) {
+  list(page: { after?: string; limit: number; site?: string; state?: ReplayStateName }) {
+    const { after, limit, site, state } = page
     const all = [...this.records.values()]
+      .filter((record) => site === undefined || record.site === site)
+      .filter((record) => state === undefined || record.state === state)
     const start = after === undefined ? 0 : all.findIndex((record) => record.id === after) + 1
     const replays = all.slice(start, start + limit)
     const next = start + limit < all.length ? (replays.at(-1)?.id ?? null) : null
