@@ -1,3 +1,4 @@
+export * from './change-points.ts'
 export * from './day-cell-sums.ts'
 export * from './day-weights.ts'
 export * from './random.ts'
