@@ -9,6 +9,8 @@ export interface KeptRequest {
   readonly ratedPowerKw: number | null
   /** Interval of the kept rows where they are reduced before they are scored, s; null: scored as they are. */
   readonly reducedFromS: number | null
+  /** Response of each anemometer that its wind speeds were corrected for, relative change per degree of vane. */
+  readonly responsesPerDeg: Readonly<Record<string, number>>
 }
 
 /**

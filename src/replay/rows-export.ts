@@ -2,7 +2,7 @@ import { createReadStream } from 'node:fs'
 import { mkdir, rm } from 'node:fs/promises'
 import { join } from 'node:path'
 import { Readable } from 'node:stream'
-import { buildFrame, type Frame, type TurbineColumns, type TurbineFrame } from '../frame/index.ts'
+import { buildFrame, correctSpeed, type TurbineColumns, type TurbineFrame } from '../frame/index.ts'
 import { NUMBER_CHANNELS, SET_ASIDE_REASONS, STATISTICS, TEXT_CHANNELS } from '../sheet/index.ts'
 import type { Store } from '../store/index.ts'
 import type { RowsExport, RowsFormat } from './contract.ts'
@@ -48,20 +48,23 @@ export async function exportRows(
   farm: readonly TurbineColumns[],
   about: { kept: KeptRequest; intervalS: number; format: RowsFormat; folder: string },
 ): Promise<RowsExport> {
-  const { site, settings, ratedPowerKw } = about.kept
+  const { site, settings, ratedPowerKw, responsesPerDeg } = about.kept
   const frame = buildFrame(farm, {
     site,
     settings,
     intervalS: about.intervalS,
     ratedPowerKw: ratedPowerKw ?? undefined,
   })
+  const turbines = frame.turbines.map((turbine) =>
+    correctSpeed(turbine, responsesPerDeg[turbine.turbine] ?? 0, settings.vaneMaxDeg),
+  )
   const schema = schemaOf(farm)
   const mediaType = MEDIA_TYPES[about.format]
   switch (about.format) {
     case 'csv':
-      return { mediaType, stream: Readable.from(csvPieces(schema, partsOf(frame, farm))) }
+      return { mediaType, stream: Readable.from(csvPieces(schema, partsOf(turbines, farm))) }
     case 'arrow': {
-      const bytes = arrowBytes(schema, [...partsOf(frame, farm)])
+      const bytes = arrowBytes(schema, [...partsOf(turbines, farm)])
       return {
         mediaType,
         stream: Readable.from([Buffer.from(bytes.buffer, bytes.byteOffset, bytes.byteLength)]),
@@ -72,7 +75,7 @@ export async function exportRows(
       await mkdir(about.folder)
       const remove = () => rm(about.folder, { recursive: true, force: true })
       try {
-        await writeParquetTable(store.scans, path, schema, partsOf(frame, farm))
+        await writeParquetTable(store.scans, path, schema, partsOf(turbines, farm))
       } catch (error) {
         await remove()
         throw error
@@ -84,8 +87,8 @@ export async function exportRows(
   }
 }
 
-function* partsOf(frame: Frame, farm: readonly TurbineColumns[]): Generator<TablePart> {
-  for (const [i, turbine] of frame.turbines.entries()) {
+function* partsOf(turbines: readonly TurbineFrame[], farm: readonly TurbineColumns[]): Generator<TablePart> {
+  for (const [i, turbine] of turbines.entries()) {
     const columns = farm[i]!
     const own = Object.entries(FRAME_COLUMNS).map(([name, value]) => [name, value(turbine, columns)] as const)
     yield {

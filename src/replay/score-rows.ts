@@ -4,6 +4,7 @@ import { isHighRate, type CsvColumn, type Store } from '../store/index.ts'
 import type { Progress } from './contract.ts'
 import { frameRows, scoredIntervalS, type KeptRequest } from './frame-rows.ts'
 import { scoreFarm } from './score-farm.ts'
+import type { ScoreTask } from './score-turbine.ts'
 import type { Scorers } from './scorers.ts'
 import { writeParquetTable } from './table-files.ts'
 
@@ -38,6 +39,14 @@ export async function scoreRows(
   signal.throwIfAborted()
   onProgress({ stage: 'scoring', share: 0 })
   const intervalS = scoredIntervalS(reducedFromS, receipt.intervalS)
+  const responsesPerDeg: Record<string, number> = {}
+  const scorers: Scorers = {
+    ...parts.scorers,
+    score: (task) => {
+      responsesPerDeg[task.frame.turbine] = responseOf(task)
+      return parts.scorers.score(task)
+    },
+  }
   const scored = await scoreFarm(
     farm,
     {
@@ -49,7 +58,7 @@ export async function scoreRows(
       receipt: { ...receipt, intervalS },
       reading: work.reading,
     },
-    parts.scorers,
+    scorers,
     (done, of) => {
       onProgress({ stage: 'scoring', share: done / of })
     },
@@ -66,9 +75,16 @@ export async function scoreRows(
     settings,
     ratedPowerKw: ratedPowerKw ?? null,
     reducedFromS: scoredOnly ? null : reducedFromS,
+    responsesPerDeg,
   }
   await store.replays.finish(work.id, JSON.stringify(sheet), parts.clock(), JSON.stringify(kept))
   return sheet
+}
+
+/** As the static offset takes it: a stated one, else what neighbours tell, else none. */
+function responseOf({ settings, response }: ScoreTask): number {
+  const stated = settings.assumedResponsePctPerDeg
+  return stated === null ? (response?.perDeg ?? 0) : stated / 100
 }
 
 function finest(intervalsS: readonly (number | null)[]): number {
