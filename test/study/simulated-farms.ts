@@ -1,5 +1,5 @@
 import { createHash } from 'node:crypto'
-import { existsSync, mkdirSync, readFileSync, renameSync, writeFileSync } from 'node:fs'
+import { existsSync, mkdirSync, readdirSync, readFileSync, renameSync, writeFileSync } from 'node:fs'
 import { join } from 'node:path'
 import v8 from 'node:v8'
 import { buildFrame, type Frame } from '../../src/frame/index.ts'
@@ -28,7 +28,7 @@ export const STUDY_SETTINGS: ScoringSettings = {
 /** A simulated farm, from the cache on disk when the same scenario was made before by the same simulator. */
 export function cachedFarm(scenario: FarmScenario): SimulatedFarm {
   const key = createHash('sha256')
-    .update(simulateFarm.toString())
+    .update(simulator())
     .update(JSON.stringify(scenario))
     .digest('hex')
     .slice(0, 24)
@@ -39,6 +39,15 @@ export function cachedFarm(scenario: FarmScenario): SimulatedFarm {
   writeFileSync(`${file}.part`, v8.serialize(farm))
   renameSync(`${file}.part`, file)
   return farm
+}
+
+/** The simulator's sources: a farm made by another simulator is another farm. */
+function simulator(): string {
+  const folder = join(import.meta.dirname, '..', '..', 'src', 'simulate')
+  return readdirSync(folder)
+    .sort()
+    .map((name) => readFileSync(join(folder, name), 'utf8'))
+    .join('\n')
 }
 
 /** The frame as the program would build it from the farm's log and site file. */
