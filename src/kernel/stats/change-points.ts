@@ -167,7 +167,7 @@ export function changePoints(cost: SegmentCost, options: ChangePointOptions): Ch
   /** From this end on, a start can no longer be best. */
   const lapsesAt = new Float64Array(n + 1).fill(Infinity)
   least[0] = -penalty
-  let starts = [0]
+  const starts = [0]
   for (let end = minLength; end <= n; end++) {
     const newest = end - minLength
     if (newest >= minLength) starts.push(newest)
@@ -321,7 +321,7 @@ function prefixSums(name: string, values: ArrayLike<number>): Float64Array {
   const sum = new Float64Array(values.length + 1)
   for (let i = 0; i < values.length; i++) {
     if (!Number.isFinite(values[i]!))
-      throw new InputError('OUT_OF_RANGE', `${name}[${i}]: expected a finite number, got ${values[i]}`)
+      throw new InputError('OUT_OF_RANGE', `${name}[${i}]: expected a finite number, got ${values[i]!}`)
     sum[i + 1] = sum[i]! + values[i]!
   }
   return sum

@@ -148,7 +148,9 @@ test.skipIf(withoutChecks)(`the path over all penalties is that of the reference
     [50],
     [],
   ])
-  path.forEach((step, i) => expect(Math.abs(step.fromPenalty - penalties[i]!)).toBeLessThan(1e-6))
+  path.forEach((step, i) => {
+    expect(Math.abs(step.fromPenalty - penalties[i]!)).toBeLessThan(1e-6)
+  })
   expect(path[3]!.cost).toBeCloseTo(169.38293418218808, 8)
 })
 
@@ -201,7 +203,9 @@ test('no partition of a series costs less than the one found', () => {
         expect(found.cost + penalty * found.changes.length, name).toBeCloseTo(best.total, 9)
         const ends = [0, ...found.changes, values.length]
         if (found.changes.length > 0)
-          ends.slice(1).forEach((end, i) => expect(end - ends[i]!).toBeGreaterThanOrEqual(minLength))
+          ends.slice(1).forEach((end, i) => {
+            expect(end - ends[i]!).toBeGreaterThanOrEqual(minLength)
+          })
       }
     }),
     { numRuns: 150 },
@@ -242,7 +246,9 @@ test('a long series with many changes is searched whole', () => {
   // A step of 8 standard deviations is misplaced with a probability of 1 - Phi(4) = 3e-5 to either side.
   const wanted = Array.from({ length: n / 200 - 1 }, (_, k) => 200 * (k + 1))
   expect(changes).toHaveLength(wanted.length)
-  changes.forEach((change, k) => expect(Math.abs(change - wanted[k]!)).toBeLessThanOrEqual(1))
+  changes.forEach((change, k) => {
+    expect(Math.abs(change - wanted[k]!)).toBeLessThanOrEqual(1)
+  })
 })
 
 test('slopes of days change as those of their rows do', () => {
@@ -281,7 +287,7 @@ test('series too short for a change have none', () => {
 })
 
 test('wrong arguments are named', () => {
-  const code = (name: string) => expect.objectContaining({ code: name })
+  const code = (name: string): unknown => expect.objectContaining({ code: name })
   expect(() => meanCost([1, NaN])).toThrow(code('OUT_OF_RANGE'))
   expect(() => meanVarianceCost([1], 0)).toThrow(code('OUT_OF_RANGE'))
   expect(() => slopeCost([1, 2], [1], [1, 2])).toThrow(code('LENGTH_MISMATCH'))
