@@ -111,7 +111,7 @@ function readExplicit(
     if (!canonical) {
       throw new InputError(
         'LOG_COLUMN_MAP',
-        `columns.${key}: expected one of ${[...ROW_KEYS, ...Object.keys(NUMBER_CHANNELS), ...TEXT_CHANNELS].join(', ')} (numbers also with _sd, _min, _max)`,
+        `columns.${key}: expected one of ${[...ROW_KEYS, ...Object.keys(NUMBER_CHANNELS), ...TEXT_CHANNELS].join(', ')} (numbers also with _sd, _min, _max), got ${JSON.stringify(key)}`,
       )
     }
     const column = typeof source === 'string' ? source : source.column
@@ -120,7 +120,7 @@ function readExplicit(
     if (index < 0) {
       throw new InputError(
         'LOG_COLUMN_MAP',
-        `columns.${key}: expected a column of ${name}, got ${column}; there are: ${listed(header)}`,
+        `columns.${key}: expected a column of ${name}, got ${JSON.stringify(column)}; there are: ${listed(header)}`,
         { detail: { columns: header } },
       )
     }

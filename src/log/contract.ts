@@ -6,6 +6,8 @@ export interface LogSource {
   /** Name as the sender gave it: for receipts, messages, and the turbine's name where nothing else gives it. */
   readonly name: string
   readonly path: string
+  /** SHA-256 (hex) of the bytes as sent, where the caller has it already; else it is made while reading. */
+  readonly sha256?: string
 }
 
 /** Bounds that keep a hostile or broken file from filling memory and disk. */

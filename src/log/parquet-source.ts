@@ -8,9 +8,7 @@ import type { LogLimits, LogParts, LogSource } from './contract.ts'
 import { sourceBytes } from './source-bytes.ts'
 
 /** A source as it is read: a Parquet file is read as the text made of it, and keeps the checksum of what was sent. */
-export interface ReadableSource extends LogSource {
-  readonly sha256?: string
-}
+export type ReadableSource = LogSource
 
 /**
  * Turns a Parquet file into delimited text, so that one reader does for all; other sources pass unchanged.

@@ -144,7 +144,10 @@ async function rowTime(
   }
   const startMs = Date.parse(`${reading.startDate}T00:00:00Z`)
   if (Number.isNaN(startMs)) {
-    throw new InputError('BAD_OPTION', `startDate: expected YYYY-MM-DD, got ${reading.startDate}`)
+    throw new InputError(
+      'BAD_OPTION',
+      `startDate: expected YYYY-MM-DD, got ${JSON.stringify(reading.startDate)}`,
+    )
   }
   const lowest = await lowestDay(source, map.time.day)
   return {

@@ -52,7 +52,7 @@ export async function scanAlike(
     await scanner.read(bytes.chunks)
     const copied = copying && (await copying)
     if (copied !== null && typeof copied !== 'number') throw new NotAlike('', { cause: copied.error })
-    return { counts: scanner, sha256: source.sha256 ?? bytes.sha256(), copied }
+    return { counts: scanner, sha256: bytes.sha256(), copied }
   } catch (error) {
     connection.interrupt()
     await copying

@@ -20,10 +20,10 @@ export interface SourceBytes {
  */
 export async function sourceBytes(source: LogSource, limits: LogLimits): Promise<SourceBytes> {
   const gzip = await startsAsGzip(source)
-  const hash = createHash('sha256')
-  let digest = ''
+  const hash = source.sha256 === undefined ? createHash('sha256') : null
+  let digest = source.sha256 ?? ''
   return {
-    sha256: () => (digest ||= hash.digest('hex')),
+    sha256: () => (digest ||= hash!.digest('hex')),
     chunks: chunksOf(source, limits, gzip, hash),
   }
 }
@@ -32,10 +32,10 @@ async function* chunksOf(
   source: LogSource,
   limits: LogLimits,
   gzip: boolean,
-  hash: { update(bytes: Buffer): unknown },
+  hash: { update(bytes: Buffer): unknown } | null,
 ): AsyncGenerator<Buffer> {
   const file = createReadStream(source.path, { highWaterMark: CHUNK_BYTES })
-  file.on('data', (bytes) => hash.update(bytes as Buffer))
+  if (hash) file.on('data', (bytes) => hash.update(bytes as Buffer))
   const stream = gzip ? file.pipe(createGunzip({ chunkSize: CHUNK_BYTES })) : file
   // A read error of the file does not travel through the pipe by itself.
   if (stream !== file) file.on('error', (error) => stream.destroy(error))

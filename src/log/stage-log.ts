@@ -168,7 +168,7 @@ async function scanSource(
   } finally {
     await file.close()
   }
-  return plan.source.sha256 ?? bytes.sha256()
+  return bytes.sha256()
 }
 
 async function stage(

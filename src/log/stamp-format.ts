@@ -39,7 +39,7 @@ export function sniffStamps(
   if (!(most > 0.5)) {
     throw new InputError(
       'LOG_TIME',
-      `${name} column ${column}: expected times such as 2026-03-01T00:10:00Z, 01.03.2026 00:10 or epoch milliseconds, got ${first}`,
+      `${name} column ${column}: expected times such as 2026-03-01T00:10:00Z, 01.03.2026 00:10 or epoch milliseconds, got ${JSON.stringify(first)}`,
     )
   }
   const best = readable.filter(({ share }) => share >= most * 0.98).map((one) => one.order)

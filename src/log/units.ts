@@ -90,7 +90,7 @@ export function requireUnit(spelling: string, channel: string, canonical: string
   const known = Object.keys(UNITS).filter((key) => UNITS[key]!.some((one) => one.canonical === canonical))
   throw new InputError(
     'LOG_COLUMN_MAP',
-    `columns.${channel}.unit: expected one of ${known.join(', ')}, got ${spelling}`,
+    `columns.${channel}.unit: expected one of ${known.join(', ')}, got ${JSON.stringify(spelling)}`,
   )
 }
 

@@ -33,7 +33,10 @@ export function zoneTable(name: string): ZoneTable {
     return { name: 'UTC', first: (wallMs) => wallMs, second: () => NaN }
   }
   if (!IANAZone.isValidZone(name)) {
-    throw new InputError('BAD_OPTION', `timezone: expected an IANA name such as Europe/Berlin, got ${name}`)
+    throw new InputError(
+      'BAD_OPTION',
+      `timezone: expected an IANA name such as Europe/Berlin, got ${JSON.stringify(name)}`,
+    )
   }
   const zone = IANAZone.create(name)
   const years = new Map<number, Stretch[]>()

@@ -21,6 +21,7 @@ export async function staged(
   files: Record<string, string | Uint8Array>,
   reading: LogReading = {},
   limits: Partial<LogLimits> = {},
+  checksums: Readonly<Record<string, string>> = {},
 ): Promise<Staged> {
   const home = await mkdtemp(join(tmpdir(), 'log-'))
   const folder = join(home, 'staged')
@@ -31,7 +32,8 @@ export async function staged(
     for (const [name, bytes] of Object.entries(files)) {
       const path = join(home, `sent-${sources.length}`)
       await writeFile(path, bytes)
-      sources.push({ name, path })
+      const sha256 = checksums[name]
+      sources.push(sha256 === undefined ? { name, path } : { name, path, sha256 })
     }
     const log = await stageLog(sources, reading, { scans, folder, limits: { ...DEFAULT_LIMITS, ...limits } })
     const quoted = quoteText(log.path)
