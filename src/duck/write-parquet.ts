@@ -2,8 +2,8 @@ import type { Connection, SqlValue } from './connection.ts'
 import { quoteText } from './quote.ts'
 
 /**
- * Writes the rows of a query to a Parquet file, in the order of the query. Version 2 writes times that rise evenly as differences,
- * which takes a tenth of their place.
+ * Writes the rows of a query to a Parquet file, in the order of the query. With snappy, Parquet version 2 writes
+ * times that rise evenly as differences, which takes a tenth of their place.
  *
  * @param query  SELECT without a final semicolon.
  * @param compression  zstd for what is kept; snappy, larger and quicker to write, for what is read once.
@@ -16,8 +16,9 @@ export async function writeParquet(
   values?: readonly SqlValue[],
   compression: 'zstd' | 'snappy' = 'zstd',
 ): Promise<number> {
+  const version = compression === 'snappy' ? 'V2' : 'V1'
   return connection.run(
-    `COPY (${query}) TO ${quoteText(path)} (FORMAT parquet, COMPRESSION ${compression}, PARQUET_VERSION V2)`,
+    `COPY (${query}) TO ${quoteText(path)} (FORMAT parquet, COMPRESSION ${compression}, PARQUET_VERSION ${version})`,
     values,
   )
 }

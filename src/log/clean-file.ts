@@ -112,7 +112,8 @@ export function cellCountsSql(file: CleanFile): string {
     const cell = `c${column.index}`
     const { max } = limitsOf(column.takenFor!)
     const value = valueSql(file, column)
-    const filled = `lower(trim(${cell})) NOT IN (${EMPTY_WORDS.map(quoteText).join(', ')})`
+    // Most cells are numbers: only the others are compared with words.
+    const filled = `CASE WHEN ${value} IS NOT NULL AND NOT isnan(${value}) THEN true ELSE lower(trim(${cell})) NOT IN (${EMPTY_WORDS.map(quoteText).join(', ')}) END`
     const unreadable = `${filled} AND ${value} IS NULL`
     return [
       `count(*) FILTER (${filled}) AS filled${i}`,

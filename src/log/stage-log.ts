@@ -213,11 +213,9 @@ async function stage(
     })
     const cells = []
     for (const [i, file] of staged.files.entries()) {
-      const doubt =
-        files.length > 1 ||
-        accounts[i]!.scanner.rows !== staged.accepted ||
-        lostCells(accounts[i]!, staged.present)
-      cells.push(doubt ? await countCells(connection, file) : new Map<string, never>())
+      const isPlain = files.length === 1 && accounts[i]!.scanner.rows === staged.accepted
+      const doubtful = isPlain ? lossyColumns(accounts[i]!, staged.present) : file.channels
+      cells.push(await countCells(connection, { ...file, channels: doubtful }))
     }
     const receipt: Receipt = buildReceipt({
       accounts,
@@ -284,9 +282,12 @@ async function countMadeRows(
   account.rows = Number(made!['n'])
 }
 
-/** Whether some cell with text has not become a value. */
-function lostCells({ plan, scanner }: SourceAccount, present: ReadonlyMap<string, number>): boolean {
-  return plan.map.channels.some(
+/** Columns in which some cell with text has not become a value. */
+function lossyColumns(
+  { plan, scanner }: SourceAccount,
+  present: ReadonlyMap<string, number>,
+): readonly MappedColumn[] {
+  return plan.map.channels.filter(
     (column: MappedColumn) =>
       scanner.rows - scanner.emptyCells[column.index]! !== present.get(column.takenFor!),
   )
