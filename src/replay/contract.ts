@@ -86,7 +86,7 @@ export interface Replays {
   start(request: StoredRequest): Promise<{ id: string }>
   /**
    * Every row of the frame with the reason it was set aside, or `used`: turbine by turbine (byte order), by time. Rows of
-   * a high-rate log are the 10-minute ones that were scored.
+   * a high-rate log are the 10-minute ones that were scored; wind speeds are corrected as they were for the static offset.
    * @throws InputError REPLAY_NOT_FOUND (also when it has no sheet), FRAME_GONE when its rows have been removed by age
    */
   rows(id: string, format: RowsFormat): Promise<RowsExport>

@@ -95,6 +95,15 @@ test('the state that held longest stands for the interval; of two equally long o
   expect(turbine!.texts['status']).toEqual(['run', 'a'])
 })
 
+test('raw words have no mean and are left out; a spread without its mean is averaged', async () => {
+  const [turbine] = await reduce(
+    csvOf({ power: repeated([5], 600), vane_code: repeated([513], 600), pitch_sd: repeated([1, 3], 300) }, 1),
+  )
+  const names = ['coverage', 'pitch_sd', 'power', 'power_max', 'power_min', 'power_sd']
+  expect(Object.keys(turbine!.numbers).sort()).toEqual(names)
+  expect(turbine!.numbers['pitch_sd']![0]).toBe(2)
+})
+
 test('coverage is rows there over rows due, by the step of the turbine’s own rows', async () => {
   const seconds = csvOf({ power: repeated([5], 900) }, 1)
   const tenths = csvOf({ power: repeated([5], 90) }, 10)

@@ -1,4 +1,5 @@
 import { quoteIdentifier } from '../../duck/index.ts'
+import { NUMBER_CHANNELS } from '../../sheet/index.ts'
 import { BIN_SQL } from './high-rate.ts'
 
 /** Numbers are summed as whole millionths of their unit, sines and cosines as whole 1e-12: whole sums know no order. */
@@ -29,11 +30,14 @@ export interface HighRateChannel {
   readonly hasMax: boolean
 }
 
-/** Channels among number columns: `wind_speed_sd` belongs to `wind_speed` where that is there too. */
+/**
+ * Channels among number columns: `wind_speed_sd` belongs to `wind_speed` where that is there too. Columns that are no
+ * measurements, such as raw words of an encoder, have no mean and are left out.
+ */
 export function highRateChannels(columns: readonly string[]): HighRateChannel[] {
   const all = new Set(columns)
   return columns
-    .filter((name) => !/_(sd|min|max)$/.test(name) || !all.has(name.replace(/_(sd|min|max)$/, '')))
+    .filter((name) => name in NUMBER_CHANNELS || (baseOf(name) in NUMBER_CHANNELS && !all.has(baseOf(name))))
     .map((name) => ({
       name,
       kind: kindOf(name),
@@ -101,6 +105,10 @@ function sumsOf(channel: HighRateChannel): [name: string, sql: string][] {
     sums.push([name('sdCount'), `count(${sd})`], [name('sdSquares'), `sum(${whole}::HUGEINT * ${whole})`])
   }
   return sums
+}
+
+function baseOf(name: string): string {
+  return name.replace(/_(sd|min|max)$/, '')
 }
 
 function kindOf(name: string): ChannelKind {
