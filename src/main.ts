@@ -1,8 +1,8 @@
 #!/usr/bin/env node
 import { spawn } from 'node:child_process'
 import { randomUUID } from 'node:crypto'
-import { readFileSync, rmSync } from 'node:fs'
-import { mkdtemp, rm } from 'node:fs/promises'
+import { mkdtempSync, readFileSync, rmSync } from 'node:fs'
+import { rm } from 'node:fs/promises'
 import { constants, tmpdir } from 'node:os'
 import { join, resolve } from 'node:path'
 import { MIN_THREAD_POOL, readConfig, scoringSettings, settingsHelp, type Config } from './config.ts'
@@ -106,7 +106,15 @@ async function openParts(config: Config, folder: string, report?: (error: unknow
     maxColumns: config.columnsLimit,
     maxRows: config.rowsLimit,
   }
-  const replays = createReplays({ store, limits, scorers, version, clock, newId })
+  const replays = createReplays({
+    store,
+    limits,
+    scorers,
+    version,
+    clock,
+    newId,
+    ...(report === undefined ? {} : { report }),
+  })
   const intake = createIntake({ store, limits, newId })
   const close = async () => {
     await replays.close()
@@ -120,7 +128,8 @@ async function openParts(config: Config, folder: string, report?: (error: unknow
 async function startScoring(flags: SettingFlags): Promise<Scoring> {
   const { config, unknownNames } = readConfig(process.env, flags)
   for (const name of unknownNames) process.stderr.write(`warning: ${name} is no setting of yawledger\n`)
-  const folder = await mkdtemp(join(tmpdir(), 'yawledger-'))
+  // Made without a wait, so that no signal can come between the folder and those who empty it.
+  const folder = mkdtempSync(join(tmpdir(), 'yawledger-'))
   const stopped = (signal: 'SIGINT' | 'SIGTERM' | 'SIGHUP') => {
     try {
       // A query that still runs may write a file while the folder is being emptied: it is emptied again.

@@ -1,6 +1,7 @@
 import { createReadStream } from 'node:fs'
 import type { FastifyReply, FastifyRequest } from 'fastify'
 import { Type, type Static } from 'typebox'
+import { InputError } from '../errors.ts'
 import type { Intake, StoredBatch } from '../intake/index.ts'
 import type { Setup } from '../setup/index.ts'
 import { Receipt } from '../sheet/index.ts'
@@ -260,7 +261,7 @@ async function postLog(
 ): Promise<FastifyReply> {
   const reading = readingOptions(query)
   // Asked before the body is taken: a gigabyte for a site with a typing error in its name helps nobody.
-  const file = await setup.getSite(site)
+  const file = await setup.getSite(site).catch(sayHowToPut)
   const place = gate.admit(request)
   try {
     const upload = await receiveUpload(request, limits, { takesSite: false, name: query.name })
@@ -282,6 +283,12 @@ async function postLog(
   } finally {
     place.leave()
   }
+}
+
+function sayHowToPut(error: unknown): never {
+  if (!(error instanceof InputError && error.code === 'SITE_NOT_FOUND')) throw error
+  const how = 'put it first: PUT /v1/sites/{site} with its site file, or with {}'
+  throw new InputError(error.code, `${error.message}; ${how}`, { cause: error })
 }
 
 function storedLog(batch: StoredBatch): Static<typeof StoredLog> {

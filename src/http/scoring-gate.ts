@@ -12,13 +12,14 @@ export interface GateLimits {
 /** The client went away before its turn came: there is nobody to answer. */
 export class SenderGone extends Error {}
 
-/** A place of one request, held from before its body is taken until its answer is ready. */
+/** A place of one request, held from before its body is taken until its work is done. */
 export interface GatePlace {
   /**
    * Runs the work when its turn has come.
    * @throws SenderGone when the client has gone by then; the work has not begun.
    */
   run<T>(work: () => Promise<T>): Promise<T>
+  /** For a request that never comes to its turn; afterwards it does nothing. */
   leave(): void
 }
 
@@ -50,16 +51,20 @@ export class ScoringGate {
     }
     this.#admitted++
     let left = false
+    const leave = () => {
+      if (!left) this.#admitted--
+      left = true
+    }
     return {
+      // The place is free before the answer is sent: who has the answer may post the next log.
       run: (work) =>
-        this.#queue.add(() => {
-          if (request.raw.socket.destroyed) throw new SenderGone('the sender went away while it waited')
-          return work()
-        }),
-      leave: () => {
-        if (!left) this.#admitted--
-        left = true
-      },
+        this.#queue
+          .add(() => {
+            if (request.raw.socket.destroyed) throw new SenderGone('the sender went away while it waited')
+            return work()
+          })
+          .finally(leave),
+      leave,
     }
   }
 }

@@ -110,7 +110,7 @@ const CALLS: [string, string, string, number, RequestInit?][] = [
   ['post', '/v1/replays', '', 400, { body: '', headers: CSV }],
   ['post', '/v1/replays', '?exponent=x', 400, { body: 'time\n1\n', headers: CSV }],
   ['post', '/v1/replays', '', 400, { body: '{}', headers: JSON_TYPE }],
-  ['post', '/v1/replays', '', 413, { body: 'x'.repeat(50_000_001), headers: CSV }],
+  ['post', '/v1/replays', '', 413, { body: new Uint8Array(50_000_001), headers: CSV }],
   ['post', '/v1/replays', '', 415, { body: 'x', headers: { 'content-type': 'image/png' } }],
   ['get', '/v1/replays', '', 200],
   ['get', '/v1/replays', '?limit=0', 400],
