@@ -7,11 +7,13 @@ import {
   DEMO_SITE,
   DEMO_TRUTH,
   demoRequest,
+  demoText,
   makeFolder,
   openService,
   removeFolder,
   sha256,
   turbineOf,
+  writeLog,
   type Service,
 } from './farm.ts'
 
@@ -140,17 +142,42 @@ test('scores fall with the misalignment', () => {
     expect(scores['Q08'], aligned).toBeLessThan(scores[aligned]!)
 })
 
-test('with a response that is not known only a large misalignment is settled', () => {
-  for (const { turbine, verdict, score, advice, staticOffset } of unsure.turbines) {
-    const [low, high] = staticOffset.standingInterval95Deg as [number, number]
-    expect(high - low, turbine).toBeGreaterThan(2 * 9) // 9 to 13 degrees either way
-    expect(high - low, turbine).toBeLessThan(2 * 13)
-    expect(verdict, turbine).toBe('undetermined')
-    expect(score, turbine).toBeNull()
-    expect(advice.join(' ').length, turbine).toBeGreaterThan(0)
-  }
-  expect(unsure.worklist).toEqual([])
+test('where the response is not known neighbours tell it, and every interval is wider and holds the truth', () => {
   const response = unsure.fleet.anemometerResponsePerDeg['M1']!
+  expect(response.turbines).toBe(8)
+  expect(response.interval95[0]).toBeLessThan(0) // the made-up anemometers are honest
+  expect(response.interval95[1]).toBeGreaterThan(0)
+  expect(response.interval95[1]! - response.interval95[0]!).toBeLessThan(2 * 1.96 * 0.0015) // less than the setting leaves open
+  for (const { turbine, verdict, staticOffset } of unsure.turbines) {
+    const [low, high] = staticOffset.interval95Deg as [number, number]
+    const known = turbineOf(sheet, turbine).staticOffset.interval95Deg as [number, number]
+    const truth = DEMO_TRUTH.turbines.find((one) => one.turbine === turbine)!
+    expect(high - low, turbine).toBeGreaterThan(known[1] - known[0])
+    expect(low, turbine).toBeLessThan(truth.offsetDeg)
+    expect(high, turbine).toBeGreaterThan(truth.offsetDeg)
+    expect(staticOffset.estimates.length, turbine).toBe(3)
+    if (Math.abs(truth.offsetDeg) <= 2) expect(verdict, turbine).not.toBe('offset')
+  }
+  expect(turbineOf(unsure, 'Q06').verdict).toBe('offset')
+})
+
+test('a lone turbine whose response is not known is undetermined, and the sheet says what would settle it', async () => {
+  const q04 = demoText()
+    .split('\n')
+    .filter((line, i) => i === 0 || line.includes(',Q04,'))
+    .join('\n')
+  const lone = await service.replays.oneShot(
+    demoRequest({}, { logs: [await writeLog(folder, 'q04.csv', q04)] }),
+  )
+  const { verdict, score, staticOffset } = turbineOf(lone, 'Q04')
+  const [low, high] = staticOffset.standingInterval95Deg as [number, number]
+  expect(high - low).toBeGreaterThan(2 * 9) // 9 to 13 degrees either way
+  expect(high - low).toBeLessThan(2 * 13)
+  expect(verdict).toBe('undetermined')
+  expect(score).toBeNull()
+  expect(staticOffset.furtherNote).toMatch(/reference.*neighbours.*1 Hz/)
+  expect(lone.worklist).toEqual([])
+  const response = lone.fleet.anemometerResponsePerDeg['M1']!
   expect(response.estimate).toBeNull()
   // 1.96 x 0.15 % per degree, the setting.
   expect(response.interval95[1]).toBeCloseTo(1.96 * 0.0015, 5)
