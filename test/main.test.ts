@@ -121,6 +121,51 @@ test.skipIf(!BUILT)(
   },
 )
 
+test.skipIf(!BUILT)(
+  'a sweep scores what a service has stored, and the service answers it afterwards',
+  async () => {
+    const { log } = await smallLog()
+    const first = await startService()
+    const put = await fetch(`${first.url}/v1/sites/mill-farm`, {
+      method: 'PUT',
+      body: '{}',
+      headers: { 'content-type': 'application/json' },
+    })
+    expect(put.status).toBe(201)
+    const posted = await fetch(`${first.url}/v1/sites/mill-farm/logs`, {
+      method: 'POST',
+      body: await readFile(log),
+      headers: { 'content-type': 'application/gzip' },
+    })
+    expect(posted.status).toBe(201)
+    const window = ['--from', '2020-01-01', '--to', '2030-01-01', '--data', join(folder, 'data')]
+    // The folder belongs to the service as long as it runs.
+    const early = await start(['sweep', '--all', ...window]).ended
+    expect(early.status).toBe(1)
+    expect(early.err).toMatch(/^error NOT_READY: /)
+    first.child.kill('SIGTERM')
+    expect((await first.ended).status).toBe(0)
+    const { status, out, err } = await start(['sweep', '--all', ...window]).ended
+    expect(err).toBe('')
+    expect(status).toBe(0) // three days settle nothing
+    expect(out).toContain('Worklist of mill-farm, ')
+    expect(out).toContain('Without a verdict, and so neither on the list nor aligned:')
+    const second = await startService()
+    const worklist: unknown = await (await fetch(`${second.url}/v1/sites/mill-farm/worklist`)).json()
+    expect(worklist).toMatchObject({ site: 'mill-farm', worklist: [] })
+  },
+)
+
+test.skipIf(!BUILT)('rows are written beside the sheet of a log', async () => {
+  const { log } = await smallLog()
+  const rows = join(folder, 'rows.csv')
+  const { status, out } = await start(['replay', log, '--rows', rows]).ended
+  expect(status).toBe(0)
+  const sheet = JSON.parse(out) as ScoreSheet
+  const lines = (await readFile(rows, 'utf8')).trimEnd().split('\n')
+  expect(lines.length - 1).toBe(sheet.rows.accepted)
+})
+
 test.skipIf(!BUILT || !ON_LINUX)(
   'queries get a thread pool that leaves threads for files (seen in /proc)',
   async () => {

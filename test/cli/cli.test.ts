@@ -55,6 +55,43 @@ test('csv tables are written beside the sheet when asked for', async () => {
   )
 })
 
+test('rows are written whole, in the form that the name of the file tells', async () => {
+  for (const format of ['csv', 'parquet', 'arrow']) {
+    const path = join(folder, 'deep', `rows.${format}`)
+    const { status, err } = await runCli(['replay', log, '--rows', path])
+    expect(err).toBe('')
+    expect(status).toBe(0)
+    expect(await readFile(path, 'utf8')).toBe(`rows of replay-1 as ${format}\n`)
+  }
+  expect(await readdir(join(folder, 'deep'))).toEqual(['rows.arrow', 'rows.csv', 'rows.parquet'])
+})
+
+test('a dry run prints how each log would be read, and scores nothing', async () => {
+  const { openStore } = await import('../../src/store/index.ts')
+  const { createIntake } = await import('../../src/intake/index.ts')
+  const { DEFAULT_LIMITS } = await import('../../src/log/index.ts')
+  let ids = 0
+  const newId = () => `id-${++ids}`
+  const store = await openStore({ folder: join(folder, 'store'), clock: () => 0, newId })
+  try {
+    await writeFile(log, 'time;turbine;wind_speed;note\n2026-03-01T00:00:00Z;Q01;8,1;x\n')
+    const intake = createIntake({ store, limits: DEFAULT_LIMITS, newId })
+    const args = ['replay', log, '--dry-run', '--timezone', 'Europe/Berlin', '--out', join(folder, 'none')]
+    const { status, out, replays } = await runCli(args, { intake })
+    expect(status).toBe(0)
+    expect(out).toContain('march.csv\n')
+    expect(out).toContain('delimiter ";", decimal comma true, header in line 1')
+    expect(out).toContain('zone Europe/Berlin')
+    expect(out).toMatch(/ {4}wind_speed: wind_speed in m\/s \(/)
+    expect(out).toMatch(/ {4}note: not used/)
+    expect(out).toMatch(/missing, and wanted by the scoring:\n {4}vane\n {4}power\n/)
+    expect(replays.requests).toHaveLength(0)
+    expect(await readdir(folder)).toEqual(['march.csv', 'store'])
+  } finally {
+    await store.close()
+  }
+})
+
 test('- reads standard input', async () => {
   const { status, replays } = await runCli(['replay', '-'], { stdin: LOG })
   expect(status).toBe(0)
@@ -117,6 +154,8 @@ test.each([
   [['replay', 'nowhere.csv'], 'error LOG_NOT_FOUND: nowhere.csv: expected a log file, got no such file'],
   [['replay', tmpdir()], 'expected a log file, got a folder'],
   [['replay', 'LOG', '--format', 'html', '--out', 'x'], '--format: expected json or csv, got "html"'],
+  [['replay', 'LOG', '--rows', 'rows.xlsx'], '--rows: expected a name that ends with .csv, .parquet, .arrow'],
+  [['replay', 'LOG', '--date-order', 'ydm'], '--date-order: expected "ymd" or "dmy" or "mdy", got "ydm"'],
   [['replay', 'LOG', '--format', 'csv'], '--format: expected --out with csv'],
   [['replay', 'LOG', '--stamp', 'middle'], '--stamp: expected "begin" or "end", got "middle"'],
   [
