@@ -1,4 +1,5 @@
 import { honestAnemometers } from './honest-anemometers.study.ts'
+import { yawMoveStudy } from './yaw-moves.study.ts'
 import { neighboursStudy } from './neighbours.study.ts'
 
 /** Prints the tables of the studies: `npm run study`, or `npm run study -- honest 40`. */
@@ -9,3 +10,4 @@ const print = (text: string): void => {
 if (!/^\d+$/.test(count)) throw new Error(`farms: expected a whole number, got "${count}"`)
 if (name === 'all' || name === 'honest') honestAnemometers(Number(count), print)
 if (name === 'all' || name === 'neighbours') neighboursStudy(Number(count), print)
+if (name === 'all' || name === 'moves') yawMoveStudy(Number(count), print)
