@@ -1,15 +1,16 @@
 import { createHash, type Hash } from 'node:crypto'
 import { createReadStream } from 'node:fs'
 import { InputError } from '../errors.ts'
+import type { LogSource } from '../log/index.ts'
 
 /**
- * SHA-256 of the bytes of each file as it was sent.
+ * The logs, each with the SHA-256 of its bytes as they were sent, so that nobody makes it again.
  * @throws InputError LOG_NOT_FOUND
  */
-export async function fileHashes(paths: readonly string[]): Promise<string[]> {
-  const hashes: string[] = []
-  for (const path of paths) hashes.push(await fileHash(path))
-  return hashes
+export async function withHashes(logs: readonly LogSource[]): Promise<(LogSource & { sha256: string })[]> {
+  const hashed: (LogSource & { sha256: string })[] = []
+  for (const log of logs) hashed.push({ ...log, sha256: log.sha256 ?? (await fileHash(log.path)) })
+  return hashed
 }
 
 /** Equal for the same rows, so that a post that is sent again is known without reading it. */

@@ -10,14 +10,15 @@ import {
   type LogSource,
 } from '../log/index.ts'
 import type { ReadingOptions, Receipt, SiteFile } from '../sheet/index.ts'
-import type { Store, StoredBatch } from '../store/index.ts'
-import { contentKey, fileHashes } from './content-key.ts'
+import { asStorageFull, type Store, type StoredBatch } from '../store/index.ts'
+import { contentKey, withHashes } from './content-key.ts'
 import { coverage, type Coverage, type CoverageWindow } from './coverage.ts'
 
 /** Takes logs in and accounts for them. */
 export interface Intake {
   /**
-   * Reads logs that lie on disk and keeps their rows under the site, all or nothing; the files stay where they are.
+   * Reads logs that lie on disk and keeps their rows under the site, all or nothing; the files stay where they are. In
+   * the store's temporary folder, or elsewhere on its disk, they need not be copied to be read.
    * The same bytes read the same way are answered with the first receipt, `isNew` false.
    * @throws InputError SITE_NOT_FOUND, LOG_*, BAD_OPTION, STORAGE_FULL
    */
@@ -61,7 +62,8 @@ export function createIntake({ store, limits, newId }: IntakeParts): Intake {
         throw new InputError('SITE_NOT_FOUND', `site: expected one that was put, got "${site.slice(0, 100)}"`)
       }
       const reading = withDefaults(given, file)
-      const hashes = await fileHashes(logs.map(({ path }) => path))
+      const hashed = await withHashes(logs)
+      const hashes = hashed.map(({ sha256 }) => sha256)
       const names = logs.map(({ name }) => name)
       const key = contentKey(hashes, { reading })
       const namedKey = contentKey(hashes, { reading, names })
@@ -71,7 +73,7 @@ export function createIntake({ store, limits, newId }: IntakeParts): Intake {
       const folder = join(store.tempFolder, `post-${newId()}`)
       await mkdir(folder)
       try {
-        const staged = await stageLog(logs, reading, { scans: store.scans, folder, limits })
+        const staged = await stageLog(hashed, reading, { scans: store.scans, folder, limits })
         return await store.logs.add({
           site,
           path: staged.path,
@@ -80,6 +82,8 @@ export function createIntake({ store, limits, newId }: IntakeParts): Intake {
           reading: { ...reading },
           contentKey: mayNameTurbine(staged.receipt, names, reading) ? namedKey : key,
         })
+      } catch (error) {
+        throw asStorageFull(error)
       } finally {
         await rm(folder, { recursive: true, force: true })
       }

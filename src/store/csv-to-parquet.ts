@@ -1,4 +1,5 @@
 import { quoteText, type Scans } from '../duck/index.ts'
+import { asStorageFull } from './space.ts'
 
 /** `time`: ISO 8601 with offset. */
 export type CsvColumn = 'number' | 'integer' | 'text' | 'time'
@@ -15,6 +16,7 @@ const TYPES: Readonly<Record<CsvColumn, string>> = {
  *
  * @param scans  may read and write both files' folders
  * @param columns  name -> kind, in the order of the header
+ * @throws InputError STORAGE_FULL; what was written of the file is the caller's to remove
  */
 export async function csvToParquet(
   scans: Scans,
@@ -23,11 +25,15 @@ export async function csvToParquet(
   columns: Readonly<Record<string, CsvColumn>>,
 ): Promise<void> {
   const types = Object.entries(columns).map(([name, kind]) => `${quoteText(name)}: ${quoteText(TYPES[kind])}`)
-  await scans.withConnection((connection) =>
-    connection.run(
-      `COPY (SELECT * FROM read_csv(${quoteText(csvPath)}, auto_detect = false, header = true, delim = ',', quote = '"',
-         escape = '"', nullstr = '', columns = {${types.join(', ')}}))
-       TO ${quoteText(path)} (FORMAT parquet, COMPRESSION zstd)`,
-    ),
-  )
+  try {
+    await scans.withConnection((connection) =>
+      connection.run(
+        `COPY (SELECT * FROM read_csv(${quoteText(csvPath)}, auto_detect = false, header = true, delim = ',', quote = '"',
+           escape = '"', nullstr = '', columns = {${types.join(', ')}}))
+         TO ${quoteText(path)} (FORMAT parquet, COMPRESSION zstd)`,
+      ),
+    )
+  } catch (error) {
+    throw asStorageFull(error)
+  }
 }

@@ -1,11 +1,13 @@
-import { readFile, readdir, writeFile } from 'node:fs/promises'
+import { createHash } from 'node:crypto'
+import { readFile, readdir, rm, statfs, writeFile } from 'node:fs/promises'
 import { join } from 'node:path'
 import { gzipSync } from 'node:zlib'
 import { expect, test } from 'vitest'
 import { createIntake } from '../../src/intake/index.ts'
+import { createRandom } from '../../src/kernel/stats/index.ts'
 import { DEFAULT_LIMITS } from '../../src/log/index.ts'
 import type { SiteFile } from '../../src/sheet/index.ts'
-import { counter, makeFolder, openTestStore } from '../store/folder.ts'
+import { counter, makeFolder, makeSmallDisk, openTestStore } from '../store/folder.ts'
 import { readRows } from '../store/logs.ts'
 
 const MARCH = Date.UTC(2026, 2, 1)
@@ -120,6 +122,46 @@ test('compressed logs are read as they are', async () => {
   expect((await readRows(store, 'quern-hill')).map(([, , power]) => power)).toEqual([5, 6])
 })
 
+test('the receipt names the bytes by their checksum, and one that the caller has made is taken', async () => {
+  const { intake, file } = await farm()
+  const log = await file('march.csv', ['time,turbine,power', '2026-03-01T00:00:00Z,Q01,5'])
+  const sha256 = createHash('sha256')
+    .update(await readFile(log.path))
+    .digest('hex')
+  const { batch } = await intake.post('quern-hill', [log], {})
+  expect(batch.receipt.inputs).toEqual([{ name: 'march.csv', sha256, rows: 1 }])
+  expect(await intake.post('quern-hill', [{ ...log, sha256 }], {})).toEqual({ batch, isNew: false })
+  // The caller's word is taken: bytes under another checksum are another log.
+  const other = await intake.post('quern-hill', [{ ...log, sha256: 'f'.repeat(64) }], {})
+  expect(other.isNew).toBe(true)
+  expect(other.batch.receipt.inputs).toEqual([{ name: 'march.csv', sha256: 'f'.repeat(64), rows: 1 }])
+})
+
+test('a disk that is full while a log is being read is named as such, and nothing of the log stays', async (context) => {
+  const disk = await makeSmallDisk(16)
+  if (!disk) {
+    context.skip('this user may not mount a small disk')
+    return
+  }
+  const { intake, store, file } = await farm(undefined, disk)
+  const random = createRandom(1)
+  const lines = Array.from({ length: 20_000 }, (_, i) => {
+    const time = new Date(MARCH + i * 60_000).toISOString()
+    return `${time},Q01,${random.uint32() / 2 ** 22}`
+  })
+  const ballast = join(disk, 'ballast')
+  const log = await file('march.csv', ['time,turbine,power', ...lines])
+  const { bavail, bsize } = await statfs(disk)
+  await writeFile(ballast, Buffer.alloc(bavail * bsize - 8192))
+  await expect(intake.post('quern-hill', [log], {})).rejects.toThrow(
+    expect.objectContaining({ code: 'STORAGE_FULL' }) as Error,
+  )
+  await rm(ballast)
+  expect(await readdir(store.tempFolder)).toEqual([])
+  expect((await intake.list('quern-hill', { limit: 10 })).batches).toEqual([])
+  expect((await intake.post('quern-hill', [log], {})).batch.receipt.accepted).toBe(20_000)
+})
+
 test('coverage lists every day with the rows that were expected, also days without any', async () => {
   const { intake, file } = await farm({ intervalS: 3600, turbines: [{ turbine: 'Q09' }] })
   const log = await file('march.csv', [
@@ -191,8 +233,8 @@ test('coverage of what is not there, or of a window that makes no sense, is refu
   }
 })
 
-async function farm(site: SiteFile = { turbines: [{ turbine: 'Q01' }] }) {
-  const folder = await makeFolder()
+async function farm(site: SiteFile = { turbines: [{ turbine: 'Q01' }] }, disk?: string) {
+  const folder = disk ?? (await makeFolder())
   const store = await openTestStore(join(folder, 'data'), {
     report: (error) => {
       throw error instanceof Error ? error : new Error(String(error))

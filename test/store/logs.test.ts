@@ -4,6 +4,7 @@ import { join } from 'node:path'
 import fc from 'fast-check'
 import { expect, test } from 'vitest'
 import { writeParquet } from '../../src/duck/index.ts'
+import { createRandom } from '../../src/kernel/stats/index.ts'
 import { openStore, type Store } from '../../src/store/index.ts'
 import { counter, makeFolder, makeSmallDisk, openTestStore } from './folder.ts'
 import { addRows, readRows, receiptOf, stageRows, type LogRow } from './logs.ts'
@@ -359,12 +360,13 @@ test('on a full disk a log is refused whole, what was stored is read, and posts 
   const ballast = join(folder, 'ballast')
   try {
     await store.sites.put('quern-hill', { turbines: [{ turbine: 'Q01' }] })
-    // Numbers without a pattern, so that they do not compress.
-    const log = (n: number): LogRow[] =>
-      Array.from(
-        { length: 2_000 },
-        (_, i) => ['Q01', MARCH + n * 1e8 + i * 1000, (i * 2654435761) % 4294967291] as const,
-      )
+    // 52 bits without a pattern: at least 6 bytes a number in any encoding, so 30 kB a log, far more than is left free.
+    const random = createRandom(1)
+    const noise = () => random.uint32() * 2 ** 20 + (random.uint32() >>> 12)
+    const logs = [0, 1].map((n) =>
+      Array.from({ length: 5_000 }, (_, i) => ['Q01', MARCH + n * 1e8 + i * 1000, noise()] as const),
+    )
+    const log = (n: number): LogRow[] => logs[n]!
     await addRows(store, 'quern-hill', log(0))
     const before = await readdir(join(folder, 'segments'))
     const staged = await stageRows(store, log(1))
@@ -374,7 +376,7 @@ test('on a full disk a log is refused whole, what was stored is read, and posts 
       site: 'quern-hill',
       path: staged,
       rejectedPath: null,
-      receipt: receiptOf(2_000),
+      receipt: receiptOf(5_000),
       reading: {},
     }
     await expect(store.logs.add({ ...post, contentKey: 'b' })).rejects.toThrow(
