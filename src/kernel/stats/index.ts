@@ -1,3 +1,4 @@
+export * from './chi-square.ts'
 export * from './change-points.ts'
 export * from './day-cell-sums.ts'
 export * from './day-weights.ts'

@@ -1,4 +1,9 @@
 declare module 'jstat' {
-  const jstat: { jStat: { studentt: { inv(probability: number, degreesOfFreedom: number): number } } }
+  const jstat: {
+    jStat: {
+      studentt: { inv(probability: number, degreesOfFreedom: number): number }
+      lowRegGamma(a: number, x: number): number
+    }
+  }
   export default jstat
 }
