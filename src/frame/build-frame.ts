@@ -142,6 +142,8 @@ function buildTurbine(
     averagedAcrossNorth: angles.counts,
     power,
     nacellePosition: nacelle ?? missing,
+    referenceYawError: numbers['reference_yaw_error'] ?? missing,
+    referenceDirection: numbers['reference_direction'] ?? missing,
     indicatedDirection,
     densitySource: air.source,
     reason: judged.reason,

@@ -46,6 +46,10 @@ export interface TurbineFrame {
   readonly power: Float64Array
   /** As read, degrees; wrapped, signed or wound. NaN where it was averaged across the end of its scale. */
   readonly nacellePosition: Float64Array
+  /** Of a reference instrument, sign as the vane's, as read; degrees. */
+  readonly referenceYawError: Float64Array
+  /** Of a reference instrument, as read; degrees: relative to the nacelle, or from north. */
+  readonly referenceDirection: Float64Array
   /** N + v, [0, 360); off the true direction by north offset and vane offset. */
   readonly indicatedDirection: Float64Array
   /** Readings that were averaged across the end of their scale, by channel: NaN in the frame, their rows set aside. */

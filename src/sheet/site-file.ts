@@ -62,6 +62,27 @@ export const TurbineSetup = Type.Object(
         { additionalProperties: false },
       ),
     ),
+    reference: Type.Optional(
+      Type.Object(
+        {
+          kind: Type.Union(
+            [Type.Literal('yawError'), Type.Literal('relativeDirection'), Type.Literal('absoluteDirection')],
+            {
+              description:
+                'what the reference gives: the yaw error itself (reference_yaw_error), or reference_direction relative to the nacelle, or from north',
+            },
+          ),
+          mountingDeg: Type.Optional(
+            Type.Number({
+              minimum: 0,
+              maximum: 20,
+              description: 'standard deviation of how well its own zero is known, degrees; default 0.5',
+            }),
+          ),
+        },
+        { additionalProperties: false },
+      ),
+    ),
     powerCurve: Type.Optional(
       Type.Array(
         Type.Object(
