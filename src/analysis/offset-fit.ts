@@ -57,6 +57,8 @@ export interface OffsetFit {
   /** Change of d per unit of anemometer response (relative change of wind speed per degree of vane), radians. */
   readonly perResponse: number
   readonly noise: OffsetNoise
+  /** Robust weights of the rows; length n. */
+  readonly weight: Float64Array
 }
 
 /**
@@ -67,67 +69,119 @@ export interface OffsetFit {
  * lasts for tens of minutes, the vane does not: what the rows before foretell of the noise is taken out first. Outliers
  * lose weight only by what is left after the yaw term.
  *
- * @param known  start value and noise of an earlier fit to the same rows; without it both are worked out.
  * @source Gauss-Newton on the model above; weights by Huber (1964) and Beaton & Tukey (1974).
  */
-export function fitOffset(
-  rows: OffsetRows,
-  model: OffsetModel,
-  known?: { offset: number; noise: OffsetNoise },
-): OffsetFit {
+export function fitOffset(rows: OffsetRows, model: OffsetModel): OffsetFit {
   const n = rows.vane.length
-  const layout = dayCells(rows.day, rows.cell, rows)
-  const x = new Float64Array(n)
-  const y = new Float64Array(n)
-  const bySpeed = new Float64Array(n)
-  for (let i = 0; i < n; i++) bySpeed[i] = rows.steepness[i]! * (rows.vane[i]! / RAD_PER_DEG)
-  let noise = known?.noise ?? {
+  const terms = yawTerms(rows)
+  let noise: OffsetNoise = {
     scale: new Float64Array(n).fill(1),
     scatter: NaN,
     serial: { share: 0, persistence: 0 },
   }
-  let offset = known?.offset ?? 0
+  let offset = 0
   let weight = new Float64Array(n).fill(1)
-  let sums = dayCellSums(layout, x, y, weight)
   let converged = false
   let stretch = 1
+  let sums: DayCellSums | undefined
+  const biweightFrom = SETTLING_ITERATIONS + HUBER_ITERATIONS
 
-  const first = known ? SETTLING_ITERATIONS : 0
-  for (let iteration = first; iteration < MAX_ITERATIONS && !converged; iteration++) {
-    fillYawTerm(rows, model, offset, bySpeed, x, y)
-    const levelX = withoutLevels(rows, x, noise.scale, weight)
-    const levelY = withoutLevels(rows, y, noise.scale, weight)
-    const [whiteX, whiteY] = whiten([levelX, levelY], rows, noise.serial) as [Float64Array, Float64Array]
-    sums = dayCellSums(layout, whiteX, whiteY, weight)
-    const step = slopeWithinCells(sums)
-    if (Number.isNaN(step))
-      return { offset: NaN, converged: false, sums, stretch: NaN, perResponse: NaN, noise }
-    offset = clamp(offset + step, MAX_YAW_ERROR_RAD)
+  for (let iteration = 0; iteration < MAX_ITERATIONS && !converged; iteration++) {
+    const step = newtonStep(rows, model, terms, { offset, noise, weight })
+    sums = step.sums
+    if (Number.isNaN(step.slope)) break
+    offset = clamp(offset + step.slope, MAX_YAW_ERROR_RAD)
     if (iteration < SETTLING_ITERATIONS) {
-      noise = measureNoise(rows, levelX, levelY, step, noise.scale)
-    } else {
-      const biweightFrom = SETTLING_ITERATIONS + HUBER_ITERATIONS
-      const robust = robustWeights(
-        rows,
-        whiteX,
-        whiteY,
-        step,
-        sums,
-        iteration < biweightFrom ? huberWeight : biweight,
-      )
-      weight = robust.weight
-      stretch = robust.stretch
-      converged = iteration > biweightFrom && Math.abs(step) < CONVERGED_RAD
+      noise = measureNoise(rows, step.levelX, step.levelY, step.slope, noise.scale)
+      continue
     }
+    const weightOf = iteration < biweightFrom ? huberWeight : biweight
+    const standardised = standardisedResiduals(rows, step)
+    for (let i = 0; i < n; i++) weight[i] = standardised ? weightOf(standardised[i]!) : 1
+    converged = iteration > biweightFrom && Math.abs(step.slope) < CONVERGED_RAD
+    if (converged && standardised) stretch = robustStretch(standardised, step.whiteX, weightOf)
   }
   return {
-    offset,
+    offset: converged ? offset : NaN,
     converged,
-    sums,
+    sums: sums ?? dayCellSums(terms.layout, terms.x, terms.y, weight),
     stretch,
-    perResponse: perResponseOf(rows, layout, x, bySpeed, noise, weight),
+    perResponse: perResponseOf(rows, terms, noise, weight),
     noise,
+    weight,
   }
+}
+
+/**
+ * The offset at another exponent, with the noise and the weights of an earlier fit to the same rows.
+ *
+ * @returns d, radians, as `OffsetFit.offset`; NaN when it does not settle.
+ */
+export function offsetAtExponent(
+  rows: OffsetRows,
+  exponent: number,
+  fit: OffsetFit,
+  fittedExponent: number,
+): number {
+  const terms = yawTerms(rows)
+  let offset = clamp((fit.offset * fittedExponent) / exponent, MAX_YAW_ERROR_RAD)
+  for (let iteration = 0; iteration < MAX_ITERATIONS; iteration++) {
+    const { slope } = newtonStep(rows, { exponent, responsePerDeg: 0 }, terms, {
+      offset,
+      noise: fit.noise,
+      weight: fit.weight,
+    })
+    if (Number.isNaN(slope)) return NaN
+    offset = clamp(offset + slope, MAX_YAW_ERROR_RAD)
+    if (Math.abs(slope) < CONVERGED_RAD) return offset
+  }
+  return NaN
+}
+
+/** Arrays that every iteration fills anew, and what does not change. */
+interface YawTerms {
+  readonly layout: DayCells
+  readonly x: Float64Array
+  readonly y: Float64Array
+  /** Effect on ln P of a response of 1 per degree. */
+  readonly bySpeed: Float64Array
+}
+
+function yawTerms(rows: OffsetRows): YawTerms {
+  const n = rows.vane.length
+  const bySpeed = new Float64Array(n)
+  for (let i = 0; i < n; i++) bySpeed[i] = rows.steepness[i]! * (rows.vane[i]! / RAD_PER_DEG)
+  return {
+    layout: dayCells(rows.day, rows.cell, rows),
+    x: new Float64Array(n),
+    y: new Float64Array(n),
+    bySpeed,
+  }
+}
+
+interface NewtonStep {
+  /** Change of d, radians; NaN where the vane does not vary inside any group. */
+  readonly slope: number
+  readonly sums: DayCellSums
+  readonly levelX: Float64Array
+  readonly levelY: Float64Array
+  readonly whiteX: Float64Array
+  readonly whiteY: Float64Array
+}
+
+function newtonStep(
+  rows: OffsetRows,
+  model: OffsetModel,
+  terms: YawTerms,
+  state: { offset: number; noise: OffsetNoise; weight: Float64Array },
+): NewtonStep {
+  const { noise, weight } = state
+  fillYawTerm(rows, model, state.offset, terms.bySpeed, terms.x, terms.y)
+  const levelX = withoutLevels(rows, terms.x, noise.scale, weight)
+  const levelY = withoutLevels(rows, terms.y, noise.scale, weight)
+  const [whiteX, whiteY] = whiten([levelX, levelY], rows, noise.serial) as [Float64Array, Float64Array]
+  const sums = dayCellSums(terms.layout, whiteX, whiteY, weight)
+  return { slope: slopeWithinCells(sums), sums, levelX, levelY, whiteX, whiteY }
 }
 
 /** x = derivative of the yaw term by d; y = what is left of ln P with d as it stands. */
@@ -149,17 +203,10 @@ function fillYawTerm(
 }
 
 /** How d moves with the response: the same regression with the effect of a response in place of ln P. */
-function perResponseOf(
-  rows: OffsetRows,
-  layout: DayCells,
-  x: Float64Array,
-  bySpeed: Float64Array,
-  noise: OffsetNoise,
-  weight: Float64Array,
-): number {
-  const levelled = [x, bySpeed].map((values) => withoutLevels(rows, values, noise.scale, weight))
+function perResponseOf(rows: OffsetRows, terms: YawTerms, noise: OffsetNoise, weight: Float64Array): number {
+  const levelled = [terms.x, terms.bySpeed].map((values) => withoutLevels(rows, values, noise.scale, weight))
   const [whiteX, whiteBySpeed] = whiten(levelled, rows, noise.serial) as [Float64Array, Float64Array]
-  return slopeWithinCells(dayCellSums(layout, whiteX, whiteBySpeed, weight))
+  return slopeWithinCells(dayCellSums(terms.layout, whiteX, whiteBySpeed, weight))
 }
 
 /** Values minus the weighted mean of their cell, over the scatter of their band. */
@@ -213,25 +260,17 @@ function measureNoise(
   return { scale, scatter, serial: serialNoise(residual, rows) }
 }
 
-function robustWeights(
-  rows: OffsetRows,
-  x: Float64Array,
-  y: Float64Array,
-  slope: number,
-  sums: DayCellSums,
-  robust: (standardised: number) => number,
-): { weight: Float64Array<ArrayBuffer>; stretch: number } {
-  const level = cellLevels(sums, slope)
-  const weight = new Float64Array(x.length).fill(1)
-  const residual = new Float64Array(x.length)
-  for (let i = 0; i < x.length; i++) residual[i] = y[i]! - slope * x[i]! - level[rows.cell[i]!]!
-  const sd = robustSd(residual)
-  if (!(sd > 0)) return { weight, stretch: 1 }
-  for (let i = 0; i < x.length; i++) {
-    residual[i]! /= sd
-    weight[i] = robust(residual[i]!)
+/** Residuals after the step over their robust SD; null where they have none. */
+function standardisedResiduals(rows: OffsetRows, step: NewtonStep): Float64Array | null {
+  const level = cellLevels(step.sums, step.slope)
+  const residual = new Float64Array(step.whiteX.length)
+  for (let i = 0; i < residual.length; i++) {
+    residual[i] = step.whiteY[i]! - step.slope * step.whiteX[i]! - level[rows.cell[i]!]!
   }
-  return { weight, stretch: robustStretch(residual, x, robust) }
+  const sd = robustSd(residual)
+  if (!(sd > 0)) return null
+  for (let i = 0; i < residual.length; i++) residual[i]! /= sd
+  return residual
 }
 
 function clamp(value: number, most: number): number {

@@ -5,7 +5,7 @@ import type { ScoringSettings, TurbineSheet } from '../sheet/index.ts'
 import type { TurbineResponse } from './anemometer-response.ts'
 import { furtherDays } from './further-days.ts'
 import { disagree, type FarmEstimate } from './farm-estimates.ts'
-import { fitOffset } from './offset-fit.ts'
+import { fitOffset, offsetAtExponent } from './offset-fit.ts'
 import { offsetSpread, vaneByDay } from './offset-interval.ts'
 import { offsetRows, type OffsetRows } from './offset-rows.ts'
 import { powerByVane } from './power-by-vane.ts'
@@ -92,8 +92,9 @@ export function staticOffset(
 
   const byExponent = SHOWN_EXPONENTS.map((exponent) => {
     if (exponent === settings.exponent) return { exponent, offsetDeg, standingDeg }
-    const shown = fitOffset(rows, { ...model, exponent }, { offset: fit.offset, noise: fit.noise })
-    const shownDeg = shown.converged ? wrap180(shown.offset * DEG_PER_RAD - rows.centreDeg) : NaN
+    const shownDeg = wrap180(
+      offsetAtExponent(rows, exponent, fit, settings.exponent) * DEG_PER_RAD - rows.centreDeg,
+    )
     return { exponent, offsetDeg: shownDeg, standingDeg: wrap180(shownDeg + vane.meanDeg) }
   })
   // Neighbours' comparison shrinks with days; a response that is only bounded by a setting does not.

@@ -60,6 +60,7 @@ export function scoreTurbine(task: ScoreTask): TurbineSheet {
         reason,
         rows: counts[reason],
       })),
+      averagedAcrossNorth: frame.averagedAcrossNorth,
     },
     score: scored?.score ?? null,
     scoreAt10min: `from means of ${frame.intervalS} s: what the yaw error does inside an interval is not in it`,

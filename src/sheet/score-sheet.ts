@@ -173,7 +173,18 @@ export const TurbineSheet = Type.Object(
     ]),
     reason: Type.String({ description: 'one sentence' }),
     reasonCode: Type.String({ description: 'stable code of the reason' }),
-    rows: Type.Object({ accepted: Count, used: Count, setAside: Type.Array(SetAside) }),
+    rows: Type.Object({
+      accepted: Count,
+      used: Count,
+      setAside: Type.Array(SetAside),
+      averagedAcrossNorth: Type.Object(
+        { vane: Count, nacelle_position: Count, wind_direction: Count },
+        {
+          description:
+            'rows in which the logger averaged this angle arithmetically over the seam of its scale',
+        },
+      ),
+    }),
     score: Nullable('100 x E[cos(g)^3], weighted by available energy; null when undetermined or blocked'),
     scoreAt10min: Type.String({ description: 'what the score does and does not hold' }),
     scoreWithinInterval: Nullable('upper bound of the loss inside the interval, % of energy; needs vane_sd'),

@@ -2,7 +2,7 @@
  * Scoring a warm month of 10-minute rows of one turbine (4,464 rows), frame, 1000 resamples of each block length and all
  * questions included, in milliseconds and as a ratio to plain work in the same run: sorting a Float64Array of 1,000,000.
  */
-import { dayBlocks } from '../../src/analysis/index.ts'
+import { dayBlocks, signChecks } from '../../src/analysis/index.ts'
 import { scoreTurbine } from '../../src/replay/score-turbine.ts'
 import { farmScenario } from '../../src/simulate/index.ts'
 import { cachedFarm, frameOf, STUDY_SETTINGS } from '../study/simulated-farms.ts'
@@ -22,6 +22,10 @@ export function benchScoring(print: (text: string) => void): void {
       settings,
       dayWeights: dayBlocks(days, settings),
       days,
+      response: null,
+      farmEstimates: [],
+      sign: signChecks(frame)[0]!,
+      farmFindings: [],
     })
     return sheet.rows.accepted
   }
