@@ -1,3 +1,4 @@
+import { setMaxListeners } from 'node:events'
 import { InputError } from '../errors.ts'
 import type { Progress } from './contract.ts'
 
@@ -21,6 +22,7 @@ export class RunningReplays {
     if (this.#isClosed)
       throw new InputError('NOT_READY', 'replays: expected a running service, got one that stops')
     const run = { controller: new AbortController(), progress: null as Progress | null }
+    setMaxListeners(0, run.controller.signal) // one for every turbine that waits, by design
     this.#runs.set(id, run)
     return {
       signal: run.controller.signal,

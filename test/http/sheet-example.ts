@@ -88,7 +88,12 @@ export function turbineExample(turbine: string, standingDeg: number | null = 6.1
     verdict: standingDeg === null ? 'undetermined' : 'offset',
     reason: standingDeg === null ? 'the interval is too wide' : 'stands off by 6.1 degrees',
     reasonCode: standingDeg === null ? 'INTERVAL_TOO_WIDE' : 'OFFSET',
-    rows: { accepted: 4460, used: 2110, setAside: [{ reason: 'not-running', rows: 2350 }] },
+    rows: {
+      accepted: 4460,
+      used: 2110,
+      setAside: [{ reason: 'not-running', rows: 2350 }],
+      averagedAcrossNorth: { vane: 0, nacelle_position: 0, wind_direction: 0 },
+    },
     score: standingDeg === null ? null : 97.9,
     scoreAt10min: 'spread inside the interval is not in it',
     scoreWithinInterval: null,

@@ -33,6 +33,7 @@ export async function openCompiledScorers(threads: number): Promise<Scorers> {
   const opened = scorers.openScorers(threads)
   return {
     score: (task) => opened.score(task),
+    compare: (task) => opened.compare(task),
     async close() {
       await opened.close()
       rmSync(folder, { recursive: true, force: true })
