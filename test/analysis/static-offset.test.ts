@@ -207,7 +207,7 @@ test('power by vane counts each used row once and peaks where the rotor faces th
 })
 
 test('further days are told where days would settle it, and a reference where they would not', () => {
-  const noisy = offsetOf(syntheticColumns({ days: 6, offsetDeg: 2.6, noise: 0.15, dayNoise: 0.05 }))
+  const noisy = offsetOf(syntheticColumns({ days: 6, offsetDeg: 1.5, noise: 0.3, dayNoise: 0.05 }))
   expect(noisy.sheet.furtherDays).toBeGreaterThan(0)
   expect(noisy.sheet.furtherNote).toContain(`${noisy.sheet.furtherDays!} more days`)
   const unknown = offsetOf(syntheticColumns({ days: 20, offsetDeg: 2 }), { assumedResponsePctPerDeg: null })
