@@ -45,7 +45,7 @@ export interface HeadingRecord {
 }
 
 /**
- * Steps of each turbine's N + v against the farm's direction, searched in 6-hour means and dated in rows. A turbine is
+ * Steps of each turbine's N + v against the farm's direction, searched in 6-hour medians and dated in rows. A turbine is
  * compared with the median of the others; the clearest steps are taken out first, so that they do not show in the
  * others. Angles are continued from bin to bin: a step may cross 180 degrees. What all turbines do at once is not seen.
  *
@@ -63,10 +63,13 @@ export function headingSteps(farm: FarmRows): (HeadingRecord | null)[] {
     return local.map((values, i) => search(values, reference[i]!, bins))
   }
 
-  const cleaned = local.map((values) => values.slice())
   const settled = new Set<number>()
-  let found = stepsOf(cleaned)
+  let found = stepsOf(local)
   for (;;) {
+    const levelled = found
+    found = stepsOf(
+      local.map((values, i) => withoutLevels(values, levelled[i]!, { steps: settled.has(i), bins })),
+    )
     let clearest = -1
     found.forEach((one, i) => {
       if (one.levels.length > 1 && !settled.has(i) && !(one.gain <= (found[clearest]?.gain ?? 0)))
@@ -74,8 +77,6 @@ export function headingSteps(farm: FarmRows): (HeadingRecord | null)[] {
     })
     if (clearest < 0) break
     settled.add(clearest)
-    for (const i of settled) cleaned[i] = withoutSteps(local[i]!, found[i]!, bins)
-    found = stepsOf(cleaned)
   }
   return found.map((one, i) => {
     if (one.values.length < 2 * MIN_BINS) return null
@@ -96,10 +97,10 @@ interface Bins {
 interface Found {
   /** Row by row: heading against the others, degrees, any turn. */
   readonly rows: Float64Array
-  /** Bins with rows enough, and their means, continued over 180 degrees. */
+  /** Bins with rows enough, and their medians, continued over 180 degrees. */
   readonly bin: readonly number[]
   readonly values: Float64Array
-  /** Variance of a bin's mean as it counts over days. */
+  /** Variance of a bin's median as it counts over days. */
   readonly noise: number
   /** Segment k: mean and ends [from, to) as indices into `values`. */
   readonly levels: readonly { from: number; to: number; meanDeg: number }[]
@@ -135,16 +136,16 @@ function medianOfOthers(local: GridChannel, cleaned: GridChannel): GridChannel {
 function search(own: Float64Array, others: Float64Array, bins: Bins): Found {
   const rows = own.map((value, t) => wrap180(value - others[t]!))
   const bin: number[] = []
-  const means: number[] = []
+  const medians: number[] = []
   for (let b = 0; b * bins.rowsPerBin < rows.length; b++) {
     const inBin = rows.subarray(b * bins.rowsPerBin, (b + 1) * bins.rowsPerBin)
     const { direction, count } = circularMean(inBin)
     if (!(count >= BIN_SHARE * bins.rowsPerBin) || Number.isNaN(direction)) continue
-    const before = means.at(-1) ?? 0
+    const before = medians.at(-1) ?? 0
     bin.push(b)
-    means.push(before + wrap180(direction - before))
+    medians.push(before + wrap180(medianAbout(inBin, direction) - before))
   }
-  const values = Float64Array.from(means)
+  const values = Float64Array.from(medians)
   const noise = blockNoise(new Float64Array(values.length).fill(1), values, NOISE_BINS)
   const whole = { from: 0, to: values.length, meanDeg: meanOf(values, 0, values.length) }
   if (!(noise > 0)) return { rows, bin, values, noise, levels: [whole], gain: 0 }
@@ -164,6 +165,15 @@ function search(own: Float64Array, others: Float64Array, bins: Bins): Found {
   return { rows, bin, values, noise, levels, gain: (cost.of(0, values.length) - left) / noise }
 }
 
+/** The lower of two middle values, so that a bin that holds both sides of a step shows one of them and no third. */
+function medianAbout(rows: Float64Array, centreDeg: number): number {
+  const sorted = rows
+    .map((value) => wrap180(value - centreDeg))
+    .filter((value) => !Number.isNaN(value))
+    .sort()
+  return centreDeg + sorted[(sorted.length - 1) >> 1]!
+}
+
 function levelsOf(values: Float64Array, changes: readonly number[]): Found['levels'] {
   const ends = [0, ...changes, values.length]
   return ends.slice(1).map((to, k) => ({ from: ends[k]!, to, meanDeg: meanOf(values, ends[k]!, to) }))
@@ -175,21 +185,27 @@ function meanOf(values: Float64Array, from: number, to: number): number {
   return sum / (to - from)
 }
 
-/** The series with every state moved to the first one, so that its steps do not show in the others. */
-function withoutSteps(values: Float64Array, found: Found, bins: Bins): Float64Array<ArrayBuffer> {
-  const out = values.slice()
+/**
+ * The series about 0, whatever the turbine's north: else the median of the others would jump when one of them stops.
+ * With `steps` every state is moved there, so that its steps do not show in the others; without, the mean of all.
+ */
+function withoutLevels(
+  values: Float64Array,
+  found: Found,
+  { steps, bins }: { steps: boolean; bins: Bins },
+): Float64Array {
+  if (found.values.length === 0) return values
+  if (!steps) {
+    const mean = meanOf(found.values, 0, found.values.length)
+    return values.map((value) => wrap180(value - mean))
+  }
+  const out = new Float64Array(values.length)
   found.levels.forEach((level, k) => {
-    if (k === 0) return
-    const moved = level.meanDeg - found.levels[0]!.meanDeg
-    const fromRow = dateOf(found, k).row
-    const toRow = found.levels[k + 1] ? dateOf(found, k + 1).row : values.length
-    for (let t = fromRow; t < toRow; t++) out[t] = wrap180(values[t]! - moved)
+    const fromRow = k === 0 ? 0 : dated(found, k, bins).at
+    const toRow = found.levels[k + 1] ? dated(found, k + 1, bins).at : values.length
+    for (let t = fromRow; t < toRow; t++) out[t] = wrap180(values[t]! - level.meanDeg)
   })
   return out
-
-  function dateOf(one: Found, k: number): { row: number } {
-    return { row: dated(one, k, bins).at }
-  }
 }
 
 function datedSteps(found: Found, grid: FarmGrid, bins: Bins): HeadingStep[] {

@@ -1,3 +1,4 @@
+import { changeStudy } from './change-points.study.ts'
 import { honestAnemometers } from './honest-anemometers.study.ts'
 import { yawMoveStudy } from './yaw-moves.study.ts'
 import { neighboursStudy } from './neighbours.study.ts'
@@ -11,3 +12,4 @@ if (!/^\d+$/.test(count)) throw new Error(`farms: expected a whole number, got "
 if (name === 'all' || name === 'honest') honestAnemometers(Number(count), print)
 if (name === 'all' || name === 'neighbours') neighboursStudy(Number(count), print)
 if (name === 'all' || name === 'moves') yawMoveStudy(Number(count), print)
+if (name === 'all' || name === 'changes') changeStudy(Number(count), print)
