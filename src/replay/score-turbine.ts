@@ -1,7 +1,9 @@
 import {
   energyLoss,
   powerCurveTable,
+  preferReference,
   readiness,
+  referenceOffset,
   score,
   staticOffset,
   vaneStatistics,
@@ -39,7 +41,8 @@ export function scoreTurbine(task: ScoreTask): TurbineSheet {
   const { settings, sign } = task
   const notReady = readiness(task.frame)
   const block = notReady ?? sign.block
-  const answer = staticOffset(task.frame, task, block)
+  const byPower = staticOffset(task.frame, task, block)
+  const answer = block ? byPower : preferReference(byPower, referenceOffset(byPower.frame, task.dayWeights))
   const { frame, standing } = answer
   const offset = { ...answer.sheet, signChecked: sign.checked }
   const counts = countReasons(frame.reason)
