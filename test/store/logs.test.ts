@@ -475,3 +475,24 @@ test('a window says which logs it draws on, and how many of its rows a later log
   expect(end).toMatchObject({ rows: 1, overruled: 0 })
   expect(end.batches.map(({ batch }) => batch)).toEqual([first.batch.batch])
 })
+
+test('a window names its logs also where their numbers are far apart and those between are of another site', async () => {
+  const store = await openTestStore(await makeFolder())
+  for (const site of ['quern-hill', 'mill-moor'])
+    await store.sites.put(site, { turbines: [{ turbine: 'A' }] })
+  const expected: string[] = []
+  for (let n = 0; n < 3; n++) {
+    expected.push((await addRows(store, 'quern-hill', [['A', n * STEP, n]])).batch.batch)
+    await addRows(store, 'mill-moor', [['A', n * STEP, n]])
+    // A log that fails has used up its number all the same.
+    const gone = { site: 'mill-moor', path: join(store.tempFolder, 'gone.parquet'), rejectedPath: null }
+    for (let i = 0; i < (n === 1 ? 70 : 0); i++) {
+      const add = store.logs.add({ ...gone, receipt: receiptOf(1), reading: {}, contentKey: `${n} ${i}` })
+      await expect(add).rejects.toThrow(/gone\.parquet/)
+    }
+  }
+  const { batches } = await store.logs.readWindow('quern-hill')
+  expect(batches.map(({ batch }) => batch)).toEqual(expected)
+  const seqs = batches.map(({ seq }) => seq)
+  expect(seqs[2]! - seqs[1]!).toBeGreaterThan(64)
+})

@@ -177,18 +177,36 @@ export async function requireBatch(
   throw new InputError('BATCH_NOT_FOUND', `log: expected one of site "${site}", got "${batch.slice(0, 100)}"`)
 }
 
-/** The batches of these numbers that are there, earliest first. */
+/** Numbers apart by no more than this are asked for together: most of those between are of the same site, or gone. */
+const MOST_GAP = 64
+
+/**
+ * The batches of these numbers that are there, earliest first.
+ * @param seqs  rising; numbers of batches of the site
+ */
 export async function batchesOf(
   source: Pick<Transaction, 'query'>,
+  site: string,
   seqs: readonly number[],
 ): Promise<StoredBatch[]> {
   if (seqs.length === 0) return []
-  const rows = await source.query(
-    `SELECT ${COLUMNS} FROM batches WHERE seq IN (${seqs.map((_, i) => `$${i + 1}`).join(', ')})
-     ORDER BY seq NULLS LAST`,
-    seqs,
+  // Ten thousand numbers, each bound by itself, took five times as long as their range.
+  const bounds: number[] = []
+  for (const [i, seq] of seqs.entries()) {
+    if (i === 0) bounds.push(seq)
+    else if (seq - seqs[i - 1]! > MOST_GAP) bounds.push(seqs[i - 1]!, seq)
+  }
+  bounds.push(seqs.at(-1)!)
+  const ranges = Array.from(
+    { length: bounds.length / 2 },
+    (_, i) => `seq BETWEEN $${2 * i + 2} AND $${2 * i + 3}`,
   )
-  return rows.map(toBatch)
+  const rows = await source.query(
+    `SELECT ${COLUMNS} FROM batches WHERE site = $1 AND (${ranges.join(' OR ')}) ORDER BY seq NULLS LAST`,
+    [site, ...bounds],
+  )
+  const wanted = new Set(seqs)
+  return rows.filter((row) => wanted.has(row['seq'] as number)).map(toBatch)
 }
 
 /** Newest first. @throws InputError SITE_NOT_FOUND, BAD_REQUEST */

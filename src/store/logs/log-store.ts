@@ -321,7 +321,7 @@ async function windowWithBatches(
 ): Promise<WinningRows & { batches: StoredBatch[] }> {
   for (;;) {
     const winning = await winningRows(driver, files, site, window)
-    const batches = await batchesOf(driver, winning.seqs)
+    const batches = await batchesOf(driver, site, winning.seqs)
     if (batches.length === winning.seqs.length) return { ...winning, batches }
   }
 }

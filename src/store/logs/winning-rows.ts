@@ -23,11 +23,15 @@ export interface WinningRows {
   readonly isSorted: boolean
 }
 
-interface Part {
-  readonly turbine: string
-  readonly seq: number
-  readonly firstMs: number
-  readonly lastMs: number
+interface Overlap {
+  readonly segments: readonly Segment[]
+  /** Rising. */
+  readonly seqs: readonly number[]
+  /** Turbines of which two batches reach into each other's time; byte order. */
+  readonly contested: readonly string[]
+}
+
+interface Segment {
   readonly segment: string
   readonly deadRows: number
   readonly onlySeq: number | null
@@ -43,11 +47,11 @@ export async function winningRows(
   site: string,
   window: LogWindow,
 ): Promise<WinningRows> {
-  const parts = await overlappingParts(driver, site, window)
-  if (parts.length === 0) return { source: undefined, withOverruled: undefined, seqs: [], isSorted: true }
-  const segments = [...new Map(parts.map((part) => [part.segment, part])).values()]
-  const seqs = [...new Set(parts.map(({ seq }) => seq))].sort((a, b) => a - b)
-  const hasDead = parts.some(({ deadRows }) => deadRows > 0)
+  const { segments, seqs, contested } = await overlap(driver, site, window)
+  if (segments.length === 0) {
+    return { source: undefined, withOverruled: undefined, seqs: [], isSorted: true }
+  }
+  const hasDead = segments.some(({ deadRows }) => deadRows > 0)
   const conditions = [
     window.fromMs === undefined ? '' : `time >= ${Math.ceil(window.fromMs)}`,
     window.toMs === undefined ? '' : `time < ${Math.ceil(window.toMs)}`,
@@ -56,7 +60,6 @@ export async function winningRows(
   ].filter((condition) => condition !== '')
   const rows = `SELECT * FROM ${segmentRows(files, segments)}
     ${conditions.length > 0 ? `WHERE ${conditions.join(' AND ')}` : ''}`
-  const contested = contestedTurbines(parts)
   if (contested.length === 0) {
     return { source: `(${rows})`, withOverruled: undefined, seqs, isSorted: segments.length === 1 }
   }
@@ -73,48 +76,51 @@ export async function winningRows(
   }
 }
 
-async function overlappingParts(driver: CatalogueDriver, site: string, window: LogWindow): Promise<Part[]> {
+/** The database sums up: ten thousand batches of five turbines are fifty thousand parts, and a few dozen segments. */
+async function overlap(driver: CatalogueDriver, site: string, window: LogWindow): Promise<Overlap> {
+  const turbines = window.turbines ?? []
+  if (window.turbines?.length === 0) return { segments: [], seqs: [], contested: [] }
+  const only =
+    turbines.length > 0 ? `AND p.turbine IN (${turbines.map((_, i) => `$${i + 4}`).join(', ')})` : ''
   const rows = await driver.query(
-    `SELECT p.turbine, p.seq, p.first_ms, p.last_ms, b.segment, s.dead_rows, s.only_seq
-     FROM batch_parts p
-     JOIN segment_batches b ON b.seq = p.seq AND b.month = p.month
-     JOIN segments s ON s.segment = b.segment
-     WHERE p.site = $1 AND p.last_ms >= $2 AND p.first_ms < $3
-     ORDER BY p.turbine NULLS LAST, p.first_ms NULLS LAST, p.seq NULLS LAST`,
-    [site, Math.ceil(window.fromMs ?? -MAX_MS), Math.ceil(window.toMs ?? MAX_MS + 1)],
+    `WITH parts AS (
+       SELECT p.turbine, p.seq, b.segment, s.dead_rows, s.only_seq,
+         p.first_ms <= max(p.last_ms) OVER (
+           PARTITION BY p.turbine ORDER BY p.first_ms NULLS LAST, p.seq NULLS LAST
+           ROWS BETWEEN UNBOUNDED PRECEDING AND 1 PRECEDING
+         ) AS is_contested
+       FROM batch_parts p
+       JOIN segment_batches b ON b.seq = p.seq AND b.month = p.month
+       JOIN segments s ON s.segment = b.segment
+       WHERE p.site = $1 AND p.last_ms >= $2 AND p.first_ms < $3 ${only}
+     )
+     SELECT seq, segment, dead_rows, only_seq, NULL AS turbine FROM parts
+     GROUP BY seq, segment, dead_rows, only_seq
+     UNION ALL SELECT NULL, NULL, NULL, NULL, turbine FROM parts WHERE is_contested GROUP BY turbine
+     ORDER BY seq NULLS LAST, segment NULLS LAST, turbine NULLS LAST`,
+    [site, Math.ceil(window.fromMs ?? -MAX_MS), Math.ceil(window.toMs ?? MAX_MS + 1), ...turbines],
   )
-  const wanted = window.turbines && new Set(window.turbines)
-  return rows
-    .filter((row) => !wanted || wanted.has(row['turbine'] as string))
-    .map((row) => ({
-      turbine: row['turbine'] as string,
-      seq: row['seq'] as number,
-      firstMs: row['first_ms'] as number,
-      lastMs: row['last_ms'] as number,
-      segment: row['segment'] as string,
+  const segments = new Map<string, Segment>()
+  const seqs = new Set<number>()
+  const contested: string[] = []
+  for (const row of rows) {
+    if (row['turbine'] !== null) {
+      contested.push(row['turbine'] as string)
+      continue
+    }
+    const segment = row['segment'] as string
+    seqs.add(row['seq'] as number)
+    segments.set(segment, {
+      segment,
       deadRows: row['dead_rows'] as number,
       onlySeq: (row['only_seq'] ?? null) as number | null,
-    }))
+    })
+  }
+  return { segments: [...segments.values()], seqs: [...seqs], contested }
 }
 
 /** The last moment of a Date. */
 const MAX_MS = 8.64e15
-
-/** Turbines of which two batches reach into each other's time. Parts come by turbine and start. */
-function contestedTurbines(parts: readonly Part[]): string[] {
-  const contested = new Set<string>()
-  let turbine: string | undefined
-  let reachedMs = -Infinity
-  for (const part of parts) {
-    if (part.turbine !== turbine) {
-      turbine = part.turbine
-      reachedMs = -Infinity
-    }
-    if (!(part.firstMs > reachedMs)) contested.add(part.turbine)
-    reachedMs = Math.max(reachedMs, part.lastMs)
-  }
-  return [...contested]
-}
 
 function inList(texts: readonly string[]): string {
   return texts.length === 0 ? `(NULL)` : `(${texts.map(quoteText).join(', ')})`
