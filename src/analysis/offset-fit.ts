@@ -80,7 +80,7 @@ export function fitOffset(rows: OffsetRows, model: OffsetModel): OffsetFit {
     serial: { share: 0, persistence: 0 },
   }
   let offset = 0
-  let weight = new Float64Array(n).fill(1)
+  const weight = new Float64Array(n).fill(1)
   let converged = false
   let stretch = 1
   let sums: DayCellSums | undefined

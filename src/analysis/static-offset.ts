@@ -38,6 +38,8 @@ export interface StaticOffsetAnswer {
   readonly byExponent: readonly { exponent: number; offsetDeg: number; standingDeg: number }[]
   /** The frame with wind speeds corrected for the response in force, for the questions that build on it. */
   readonly frame: TurbineFrame
+  /** That response, relative change of wind speed per degree of vane. */
+  readonly responsePerDeg: number
   /** Estimates that differ beyond chance; null = none. */
   readonly disagreement: string | null
   /** What the sheet's estimate means, for the questions that build on it; null = no estimate. */
@@ -72,12 +74,15 @@ export function staticOffset(
   const counts = { rows: rows.vane.length, days: usedDays }
 
   const failure = block ?? tooLittle(rows, usedDays, settings)
-  if (failure) return unanswered(frame, counts, failure)
+  if (failure) return unanswered(frame, anemometer.perDeg, counts, failure)
 
   const model = { exponent: settings.exponent, responsePerDeg: 0 }
   const fit = fitOffset(rows, model)
   if (!fit.converged) {
-    return unanswered(frame, counts, { code: 'no-fit', text: 'the fit of power against vane did not settle' })
+    return unanswered(frame, anemometer.perDeg, counts, {
+      code: 'no-fit',
+      text: 'the fit of power against vane did not settle',
+    })
   }
   const vane = vaneByDay(frame, days)
   const statistical = offsetSpread(fit, vane, dayWeights, usedDays)
@@ -110,6 +115,7 @@ export function staticOffset(
   return {
     failure: null,
     frame,
+    responsePerDeg: anemometer.perDeg,
     byExponent,
     disagreement:
       apart.length === 0
@@ -193,6 +199,7 @@ function responseInForce({ settings, response }: StaticOffsetRequest): {
 
 function unanswered(
   frame: TurbineFrame,
+  responsePerDeg: number,
   counts: { rows: number; days: number },
   failure: { code: string; text: string },
 ): StaticOffsetAnswer {
@@ -203,6 +210,7 @@ function unanswered(
   return {
     sheet: { ...emptySheet(frame, counts), furtherNote },
     frame,
+    responsePerDeg,
     byExponent: [],
     disagreement: null,
     standing: null,

@@ -11,3 +11,4 @@ export {
   type SetAsideInput,
 } from './set-aside.ts'
 export { correctSpeed } from './correct-speed.ts'
+export { reasonsSince, rowsSince } from './rows-since.ts'

@@ -1,5 +1,12 @@
-import { clockLags, dayBlocks, signChecks, type Neighbours } from '../analysis/index.ts'
-import { buildFrame, type TurbineColumns } from '../frame/index.ts'
+import {
+  clockLags,
+  dayBlocks,
+  headingSteps,
+  signChecks,
+  type Neighbours,
+  type TurbineEvent,
+} from '../analysis/index.ts'
+import { buildFrame, type TurbineColumns, type TurbineFrame } from '../frame/index.ts'
 import type { Receipt, ScoreSheet, ScoringSettings, SiteFile, TurbineSheet } from '../sheet/index.ts'
 import type { Scorers } from './scorers.ts'
 import { worklistOf } from './worklist.ts'
@@ -38,6 +45,7 @@ export async function scoreFarm(
 
   const signs = signChecks(frame)
   const clocks = clockLags(frame)
+  const headings = headingSteps(frame)
   const { intervalS: rowS, fromMs, toMs, turbines: rows } = frame
   const neighbours =
     settings.assumedResponsePctPerDeg === null
@@ -60,6 +68,8 @@ export async function scoreFarm(
         response: neighbours?.response.turbines[i] ?? null,
         farmEstimates: neighbours?.estimates[i] ?? [],
         sign: signs[i]!,
+        heading: headings[i] ?? null,
+        events: eventsOf(site, turbine),
         farmFindings: clocks[i] ?? [],
       })
       onTurbine(++done, frame.turbines.length)
@@ -105,6 +115,20 @@ export async function scoreFarm(
     corrections: [],
     warnings,
   }
+}
+
+/** What the site file says was done to a turbine. A correction changes the logged vane only where the log holds it after correction. */
+function eventsOf(site: SiteFile, turbine: TurbineFrame): TurbineEvent[] {
+  const corrections = (site.corrections ?? [])
+    .filter((correction) => correction.turbine === turbine.turbine)
+    .map(({ at }) => ({
+      atMs: Date.parse(at),
+      changesOffset: turbine.setup.vane?.logged !== 'beforeCorrection',
+    }))
+  const events = (site.events ?? [])
+    .filter((event) => event.turbine === undefined || event.turbine === turbine.turbine)
+    .map(({ at, kind }) => ({ atMs: Date.parse(at), changesOffset: /\bvane\b/i.test(kind) }))
+  return [...corrections, ...events]
 }
 
 function responseByModel(

@@ -1,5 +1,6 @@
 import {
   energyLoss,
+  lastSegment,
   powerCurveTable,
   preferReference,
   readiness,
@@ -12,12 +13,14 @@ import {
   type Block,
   type DayWeights,
   type FarmEstimate,
+  type HeadingRecord,
   type SignCheck,
   type StaticOffsetAnswer,
+  type TurbineEvent,
   type TurbineResponse,
   type Verdict,
 } from '../analysis/index.ts'
-import { countReasons, type TurbineFrame } from '../frame/index.ts'
+import { correctSpeed, countReasons, reasonsSince, rowsSince, type TurbineFrame } from '../frame/index.ts'
 import { SET_ASIDE_REASONS, type ScoringSettings, type TurbineSheet } from '../sheet/index.ts'
 import { adviceFor } from './advice.ts'
 import { CAUTIONS } from './cautions.ts'
@@ -32,6 +35,10 @@ export interface ScoreTask {
   readonly response: TurbineResponse | null
   readonly farmEstimates: readonly FarmEstimate[]
   readonly sign: SignCheck
+  /** Steps of this turbine's heading against the farm; null = none to be had. */
+  readonly heading: HeadingRecord | null
+  /** What was done to this turbine, from the site file. */
+  readonly events: readonly TurbineEvent[]
   /** Findings that need the whole farm, such as a clock that is off. */
   readonly farmFindings: TurbineSheet['sensors']
 }
@@ -41,11 +48,20 @@ export function scoreTurbine(task: ScoreTask): TurbineSheet {
   const { settings, sign } = task
   const notReady = readiness(task.frame)
   const block = notReady ?? sign.block
-  const byPower = staticOffset(task.frame, task, block)
+  const segment = lastSegment(task.frame, {
+    days: task.days,
+    usedDays: countDays(task.frame),
+    exponent: settings.exponent,
+    heading: task.heading,
+    events: task.events,
+  })
+  // From here on the sheet speaks of the rows since the last change.
+  const byPower = staticOffset(rowsSince(task.frame, segment.fromMs), task, block)
   const answer = block ? byPower : preferReference(byPower, referenceOffset(byPower.frame, task.dayWeights))
   const { frame, standing } = answer
-  const offset = { ...answer.sheet, signChecked: sign.checked }
-  const counts = countReasons(frame.reason)
+  const offset = { ...answer.sheet, changes: segment.changes, signChecked: sign.checked }
+  const whole = correctSpeed(task.frame, answer.responsePerDeg, settings.vaneMaxDeg)
+  const counts = countReasons(reasonsSince(whole, segment.fromMs))
   const verdict = judge(block, answer, settings)
   const settled = verdict.verdict === 'offset' || verdict.verdict === 'aligned'
   const scored = settled && standing ? score(frame, standing.offsetDeg) : null
@@ -57,7 +73,7 @@ export function scoreTurbine(task: ScoreTask): TurbineSheet {
     reason: verdict.text,
     reasonCode: verdict.code,
     rows: {
-      accepted: frame.time.length,
+      accepted: task.frame.time.length,
       used: counts.used,
       setAside: SET_ASIDE_REASONS.filter((reason) => counts[reason] > 0).map((reason) => ({
         reason,
@@ -77,11 +93,21 @@ export function scoreTurbine(task: ScoreTask): TurbineSheet {
       byExponent: answer.byExponent,
     }),
     powerCurve: powerCurveTable(frame),
-    sensors: [...(notReady ? [notReady.finding] : []), ...sign.findings, ...task.farmFindings],
+    sensors: [
+      ...(notReady ? [notReady.finding] : []),
+      ...sign.findings,
+      ...segment.findings,
+      ...task.farmFindings,
+    ],
     yawActivity: {},
     advice: adviceFor(verdict, offset),
     cautions: [...CAUTIONS],
   }
+}
+
+/** Days with rows that are used for the offset. */
+function countDays(frame: TurbineFrame): number {
+  return new Set(frame.day.filter((_, i) => frame.reason[i] === 0)).size
 }
 
 function judge(block: Block | null, answer: StaticOffsetAnswer, settings: ScoringSettings): Verdict {

@@ -106,7 +106,22 @@ const StaticOffset = Type.Object({
     }),
   ),
   changes: Type.Array(
-    Type.Object({ at: IsoTime('when'), fromDeg: Nullable('before'), toDeg: Nullable('after') }),
+    Type.Object({
+      at: IsoTime('start of the first row with the new offset'),
+      from: IsoTime('earliest moment at 95 %'),
+      to: IsoTime('latest moment at 95 %'),
+      fromDeg: Nullable('d before'),
+      toDeg: Nullable('d after'),
+      sizeDeg: Nullable('change of d'),
+      sizeInterval95Deg: Interval('of the size'),
+      seenIn: Type.Union(
+        [Type.Literal('both'), Type.Literal('power'), Type.Literal('heading'), Type.Literal('event')],
+        {
+          description: 'both: heading against the farm and power; event: given in the site file',
+        },
+      ),
+    }),
+    { description: 'the estimate is that of the rows after the last one' },
   ),
   signChecked: Type.Boolean(),
   vaneLogged: Type.Union([

@@ -26,6 +26,8 @@ export function benchScoring(print: (text: string) => void): void {
       farmEstimates: [],
       sign: signChecks(frame)[0]!,
       farmFindings: [],
+      heading: null,
+      events: [],
     })
     return sheet.rows.accepted
   }
