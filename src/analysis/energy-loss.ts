@@ -64,9 +64,10 @@ export function energyLoss(frame: TurbineFrame, request: EnergyLossRequest): Tur
     }
   }
   const meanVaneDeg = wrap180(circularMean(runningBelowRated(frame).map((i) => frame.vane[i]!)).direction)
+  const basePower = Float64Array.from(rows, (i) => powerAt(frame.curve, frame.normalisedSpeed[i]!))
   /** Static loss of the window if the rotor stands off by `standingDeg`, MWh. */
   const staticMwh = (standingDeg: number, exponent: number): number =>
-    gainMwh(frame, rows, hoursPerRow, exponent, (vane) => {
+    gainMwh(frame, { rows, basePower }, hoursPerRow, exponent, (vane) => {
       const error = vane - meanVaneDeg + standingDeg
       return [error, error - standingDeg]
     })
@@ -74,9 +75,9 @@ export function energyLoss(frame: TurbineFrame, request: EnergyLossRequest): Tur
   const [low, high] = offset.standingInterval95Deg
   const ends = [staticMwh(low, request.exponent), staticMwh(high, request.exponent)]
   const spansZero = low <= 0 && high >= 0
-  const interval = [spansZero ? 0 : Math.min(...ends), Math.max(...ends)] as const
+  const interval = [spansZero ? 0 : Math.max(0, Math.min(...ends)), Math.max(...ends)] as const
   const dynamicMwh =
-    gainMwh(frame, rows, hoursPerRow, request.exponent, (vane) => [
+    gainMwh(frame, { rows, basePower }, hoursPerRow, request.exponent, (vane) => [
       vane - meanVaneDeg + offset.standingDeg,
       0,
     ]) - windowMwh
@@ -102,25 +103,31 @@ export function energyLoss(frame: TurbineFrame, request: EnergyLossRequest): Tur
   }
 }
 
-/** Energy that rows gain when their yaw error changes from the first to the second angle of `errorsDeg`, MWh. */
+/**
+ * Energy that rows gain when their yaw error changes from the first to the second angle of `errorsDeg`, MWh.
+ *
+ * @param producing.basePower  the curve's answer at the rows' wind speeds, kW; length as `rows`.
+ */
 function gainMwh(
   frame: TurbineFrame,
-  rows: readonly number[],
+  producing: { rows: readonly number[]; basePower: Float64Array },
   hoursPerRow: number,
   exponent: number,
   errorsDeg: (vaneDeg: number) => readonly [number, number],
 ): number {
   const rated = Number.isNaN(frame.ratedPowerKw) ? Infinity : frame.ratedPowerKw
-  const gainKw = sumOver(rows, (i) => {
+  const { rows, basePower } = producing
+  let gainKw = 0
+  for (let k = 0; k < rows.length; k++) {
+    const i = rows[k]!
+    const power = basePower[k]!
+    if (Number.isNaN(power)) continue // no curve there: below cut-in or far above rated, where yaw changes nothing seen
     const [now, then] = errorsDeg(frame.vane[i]!)
-    const speed = frame.normalisedSpeed[i]!
-    const power = powerAt(frame.curve, speed)
-    if (Number.isNaN(power)) return 0 // no curve there: below cut-in or far above rated, where yaw changes nothing seen
     const ratio = cosine(then) / cosine(now)
-    const faced = powerAt(frame.curve, speed * ratio ** (exponent / 3))
+    const faced = powerAt(frame.curve, frame.normalisedSpeed[i]! * ratio ** (exponent / 3))
     // Beyond the last bin the curve has no answer: the turbine is at what it showed at most.
-    return Math.min(rated, Number.isNaN(faced) ? power : faced) - Math.min(rated, power)
-  })
+    gainKw += Math.min(rated, Number.isNaN(faced) ? power : faced) - Math.min(rated, power)
+  }
   return (gainKw * hoursPerRow) / KWH_PER_MWH
 }
 

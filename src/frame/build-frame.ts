@@ -118,6 +118,13 @@ function buildTurbine(
     vaneMaxDeg: settings.vaneMaxDeg,
   })
 
+  const day = new Int32Array(n)
+  const night = new Uint8Array(n)
+  for (let i = 0; i < n; i++) {
+    const hour = calendar.hourOf(time[i]!)
+    day[i] = calendar.dayOf(time[i]!)
+    night[i] = hour >= 19 || hour < 7 ? 1 : 0
+  }
   const turbulence = (numbers['wind_speed_sd'] ?? missing).map((sd, i) =>
     windSpeed[i]! > 0 ? sd / windSpeed[i]! : NaN,
   )
@@ -129,8 +136,8 @@ function buildTurbine(
     ratedPowerKw: rated.powerKw,
     ratedPowerSource: rated.source,
     time,
-    day: Int32Array.from(time, (at) => calendar.dayOf(at)),
-    night: Uint8Array.from(time, (at) => (calendar.hourOf(at) >= 19 || calendar.hourOf(at) < 7 ? 1 : 0)),
+    day,
+    night,
     windSpeed,
     density: air.density,
     normalisedSpeed: normalised,
