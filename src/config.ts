@@ -201,7 +201,7 @@ export const SETTINGS = {
     parse: (value: string) => (value === 'none' ? null : assumedResponse.parse(value)),
   },
   responseSpreadPctPerDeg: scoring('responseSpreadPctPerDeg', '% per degree', 0.15),
-  windMinMs: scoring('windMinMs', 'm/s', 5),
+  windMinMs: scoring('windMinMs', 'm/s', 4.5),
   vaneMaxDeg: scoring('vaneMaxDeg', 'degrees', 15),
   yawMoveMaxDeg: scoring('yawMoveMaxDeg', 'degrees', 5),
   fastDirectionDeg: scoring('fastDirectionDeg', 'degrees', 10),

@@ -17,8 +17,8 @@ import {
 import type { OffsetRows } from './offset-rows.ts'
 
 const MAX_ITERATIONS = 40
-/** Of the offset, radians: a ten-thousandth of a degree, far below what any log can tell. */
-const CONVERGED_RAD = 2e-6
+/** Of the offset, radians: less than a thousandth of a degree, far below what any log can tell. */
+const CONVERGED_RAD = 1e-5
 /** Iterations in which the scatter of the bands and the memory of the noise are measured. */
 const SETTLING_ITERATIONS = 3
 /** Iterations with Huber's weights before the biweight, which needs a good start, takes over. */

@@ -120,12 +120,12 @@ test('a window stated with an offset from UTC is the same window', () => {
 
 test('rows are used from the lowest wind speed to the knee of the measured curve', () => {
   const frame = frameOf(columnsOf(N), siteWith({ ratedPowerKw: 2000 }))
-  expect(frame.windMinMs).toBe(5)
+  expect(frame.windMinMs).toBe(SETTINGS.windMinMs)
   // curveKw reaches 80 % of 2000 kW where c / sqrt(1 + c^2) = 0.8, c = (u / 9)^3 = 4 / 3: u = 9.906.
   expect(Math.abs(frame.windMaxMs - 9 * (4 / 3) ** (1 / 3))).toBeLessThan(0.1)
   for (let i = 0; i < N; i++) {
     const speed = frame.windSpeed[i]!
-    const inside = speed >= 5 && speed <= frame.windMaxMs
+    const inside = speed >= SETTINGS.windMinMs && speed <= frame.windMaxMs
     expect(name(frame.reason[i]!), `${speed} m/s`).toBe(inside ? 'used' : 'outside-wind-range')
   }
 })

@@ -8,7 +8,7 @@ export const SETTINGS: ScoringSettings = {
   seed: 1,
   assumedResponsePctPerDeg: null,
   responseSpreadPctPerDeg: 0.15,
-  windMinMs: 5,
+  windMinMs: 4.5,
   vaneMaxDeg: 15,
   yawMoveMaxDeg: 5,
   fastDirectionDeg: 10,
