@@ -227,7 +227,7 @@ function tooLittle(
   if (n < settings.minimumRows) {
     return {
       code: 'too-few-rows',
-      text: `${n} rows can be used, at least ${settings.minimumRows} are needed`,
+      text: `${n} ${n === 1 ? 'row' : 'rows'} can be used, at least ${settings.minimumRows} are needed`,
     }
   }
   if (usedDays < settings.minimumDays) {
