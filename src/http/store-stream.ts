@@ -1,3 +1,4 @@
+import { createHash } from 'node:crypto'
 import { createWriteStream } from 'node:fs'
 import { Transform, type Readable } from 'node:stream'
 import { pipeline } from 'node:stream/promises'
@@ -9,22 +10,30 @@ export interface ByteBudget {
   usedBytes: number
 }
 
+export interface StoredStream {
+  readonly bytes: number
+  readonly sha256: string
+}
+
 /**
- * Writes a stream to a new file, chunk by chunk, as fast as the disk takes it.
+ * Writes a stream to a new file, chunk by chunk, as fast as the disk takes it, and hashes it on the way: while bytes are
+ * still coming the processor has time, and nobody needs to read the file again for its checksum.
  *
  * The source is left alive when the budget is spent: whoever owns the connection must still answer on it.
  *
- * @returns bytes written.
+ * @returns bytes written, and their SHA-256 in hex.
  * @throws InputError LOG_TOO_LARGE once the budget is spent; the file then holds what came before and is the caller's to remove.
  *   The error of the source when it breaks off.
  */
-export async function storeStream(source: Readable, path: string, budget: ByteBudget): Promise<number> {
-  let written = 0
+export async function storeStream(source: Readable, path: string, budget: ByteBudget): Promise<StoredStream> {
+  let bytes = 0
+  const hash = createHash('sha256')
   const counted = new Transform({
     transform(chunk: Buffer, _encoding, done) {
       budget.usedBytes += chunk.length
       if (budget.usedBytes <= budget.limitBytes) {
-        written += chunk.length
+        bytes += chunk.length
+        hash.update(chunk)
         done(null, chunk)
       } else {
         done(tooLarge(budget.limitBytes))
@@ -41,7 +50,7 @@ export async function storeStream(source: Readable, path: string, budget: ByteBu
   else source.pipe(counted)
   try {
     await pipeline(counted, createWriteStream(path, { flags: 'wx', mode: 0o600 }))
-    return written
+    return { bytes, sha256: hash.digest('hex') }
   } finally {
     source.unpipe(counted)
     source.off('close', onClose)

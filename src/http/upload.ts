@@ -108,9 +108,13 @@ async function receiveBody(
     givenName ?? /filename="?([^";]+)"?/i.exec(request.headers['content-disposition'] ?? '')?.[1],
     'log',
   )
-  const bytes = request.body instanceof Readable ? await storeStream(request.body, path, budget) : 0
-  if (bytes === 0) throw new InputError('LOG_EMPTY', 'body: expected a log, got no bytes')
-  return encoding === 'gzip' ? { name, path: await peelEncoding(path, budget.limitBytes) } : { name, path }
+  const stored = request.body instanceof Readable ? await storeStream(request.body, path, budget) : null
+  if (stored === null || stored.bytes === 0)
+    throw new InputError('LOG_EMPTY', 'body: expected a log, got no bytes')
+  const { sha256 } = stored
+  if (encoding !== 'gzip') return { name, path, sha256 }
+  const peeled = await peelEncoding(path, budget.limitBytes)
+  return peeled === path ? { name, path, sha256 } : { name, path: peeled }
 }
 
 /**
@@ -169,11 +173,11 @@ async function receiveForm(
     if (part.fieldname === 'log' && part.type === 'file') {
       const name = fileName(part.filename, `log ${logs.length + 1}`)
       const path = join(folder, `log-${logs.length + 1}`)
-      const bytes = await storeStream(part.file, path, budget).catch((cause: unknown) => {
+      const { bytes, sha256 } = await storeStream(part.file, path, budget).catch((cause: unknown) => {
         throw asFormMistake(cause)
       })
       if (bytes === 0) throw new InputError('LOG_EMPTY', `${name}: expected a log, got no bytes`)
-      logs.push({ name, path })
+      logs.push({ name, path, sha256 })
     } else if (part.fieldname === 'site' && takesSite) {
       if (site !== undefined) throw new InputError('BAD_REQUEST', 'form: expected one part "site", got two')
       site = parseSite(await partText(part), 'site')

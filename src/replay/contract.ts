@@ -6,6 +6,8 @@ export interface LogFile {
   /** Name as the sender gave it, for receipts and messages. */
   readonly name: string
   readonly path: string
+  /** SHA-256 of its bytes, hex, where somebody has made it already. */
+  readonly sha256?: string
 }
 
 export interface OneShotRequest {
