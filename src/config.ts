@@ -162,6 +162,20 @@ export const SETTINGS = {
     unit: '',
     text: 'worker threads that score turbines; default: cores less one',
   }),
+  diskLimitMb: integer({
+    min: 0,
+    max: 100_000_000,
+    default: 0,
+    unit: 'MB',
+    text: 'most that stored logs and frames may take; one more is refused (507 STORAGE_FULL); 0: as much as the disk has',
+  }),
+  replaysAtOnce: integer({
+    min: 1,
+    max: 64,
+    default: 1,
+    unit: '',
+    text: 'most replays of stored logs that run at once in the background; others wait',
+  }),
   uploadsAtOnce: integer({
     min: 1,
     max: 64,

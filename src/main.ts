@@ -95,6 +95,7 @@ async function openParts(config: Config, folder: string, report?: (error: unknow
     folder,
     scanMemoryMb: config.scanMemoryMb,
     scanThreads: config.scanThreads,
+    ...(config.diskLimitMb === 0 ? {} : { limitBytes: config.diskLimitMb * BYTES_PER_MB }),
     clock,
     newId,
     ...(report === undefined ? {} : { report }),
@@ -108,6 +109,7 @@ async function openParts(config: Config, folder: string, report?: (error: unknow
   }
   const replays = createReplays({
     store,
+    replaysAtOnce: config.replaysAtOnce,
     limits,
     scorers,
     version,
