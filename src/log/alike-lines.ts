@@ -33,7 +33,8 @@ export class NotAlike extends Error {}
  */
 export function alikeForm(plan: SourcePlan, zone: ZoneTable): AlikeForm | null {
   const { dialect, map, scan } = plan
-  if (plan.isGzip || map.series || scan.safe || scan.jsonKeys || map.time.kind !== 'stamp') return null
+  if (plan.isGzip || map.series || scan.safe || scan.jsonKeys || map.time.kind !== 'stamp' || map.dst >= 0)
+    return null
   if (scan.fields < 2 || sniffEncoding(plan.firstBytes).encoding !== 'utf-8') return null
   const stamp = dialect.rows[0]?.[map.time.stamp] ?? ''
   if (!/^\d{4}-\d\d-\d\d[T ]\d\d:\d\d:\d\d(\.\d{3})?Z?$/.test(stamp)) return null

@@ -16,6 +16,8 @@ export interface ColumnMap {
     | { readonly kind: 'date-clock'; readonly day: number; readonly clock: number }
   /** Position of the turbine's name; -1 = no such column. */
   readonly turbine: number
+  /** Position of the column that tells whether the clock shows summer time; -1 = no such column. */
+  readonly dst: number
   /** Channels to be staged, in canonical order. */
   readonly channels: readonly MappedColumn[]
   /** Set when a line is not one row; `tags` while the signals of a log of single values are still to be listed. */
@@ -84,16 +86,17 @@ export function mapColumns(
     }
     return describe(text, claim, why.get(index) ?? claim.why)
   })
+  const dst = takenBy.get('dst')?.index ?? -1
   if (wide) {
     const series = wideSeries(header, wide)
     const all = columns.map((column) => series.columns.find((one) => one.index === column.index) ?? column)
-    return { columns: all, time, turbine: -1, channels: series.channels, series }
+    return { columns: all, time, dst, turbine: -1, channels: series.channels, series }
   }
   const turbine = takenBy.get('turbine')?.index ?? -1
-  if (tags) return { columns, time, turbine, channels: [], tags }
+  if (tags) return { columns, time, dst, turbine, channels: [], tags }
   const channels = inCanonicalOrder(columns)
   if (channels.length === 0) throw nothingRecognised(name, header, 'no channel but time')
-  return { columns, time, turbine, channels }
+  return { columns, time, dst, turbine, channels }
 }
 
 const isRowKey = (target: string) => (ROW_KEYS as readonly string[]).includes(target)

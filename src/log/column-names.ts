@@ -15,8 +15,8 @@ export interface NamedColumn {
   readonly why: string
 }
 
-/** Keys of a row beside the channels. `day` with `clock`, and `date` with `clock`, stand for `time`. */
-export const ROW_KEYS = ['time', 'turbine', 'day', 'clock', 'date'] as const
+/** Keys of a row beside the channels. `day` with `clock`, and `date` with `clock`, stand for `time`; `dst` tells summer time. */
+export const ROW_KEYS = ['time', 'turbine', 'day', 'clock', 'date', 'dst'] as const
 
 const USUAL_INDEX = new Map<string, string>()
 for (const [target, names] of Object.entries(USUAL_NAMES))

@@ -83,6 +83,7 @@ export async function planSource(
       // The clock of a log of single values runs per signal: in the repeated hour each tells its own passes apart.
       turbine: map.series?.shape.kind === 'long' ? map.series.shape.tag : map.turbine,
       turbineName,
+      dst: map.dst,
       isTag: map.series?.shape.kind === 'long',
     },
   }

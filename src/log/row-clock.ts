@@ -33,16 +33,31 @@ export function newTrack(name: string): TurbineTrack {
 
 /**
  * The instant of a wall-clock stamp. In the repeated hour the order of the turbine's rows decides: the earlier instant as long as
- * it lies after the row before, else the later one; the other way round where rows run backwards.
+ * it lies after the row before, else the later one; the other way round where rows run backwards. A log that says itself
+ * whether its clock shows summer time is taken at its word: the first pass of the repeated hour is summer time.
+ * @param summer  what the row says; null = nothing.
  * @returns epoch ms; NaN in the spring gap.
  */
-export function instantOf(wallMs: number, zone: ZoneTable, track: TurbineTrack): number {
+export function instantOf(
+  wallMs: number,
+  zone: ZoneTable,
+  track: TurbineTrack,
+  summer: boolean | null = null,
+): number {
   const first = zone.first(wallMs)
   const second = zone.second(wallMs)
+  if (summer !== null && !Number.isNaN(second)) return summer ? first : second
   if (Number.isNaN(second) || Number.isNaN(track.lastMs)) return first
   if (track.backwards) return second < track.lastMs ? second : first
   // Neither lies after the row before: the rows are out of order, and the earlier instant is as good as the later.
   return first > track.lastMs || second <= track.lastMs ? first : second
+}
+
+/** What a cell of a summer-time column says; null when it is empty or says something else. */
+export function isSummer(text: string): boolean | null {
+  if (/^(1|true|t|yes|y|dst|summer|s)$/i.test(text)) return true
+  if (/^(0|false|f|no|n|std|st|standard|winter|w)$/i.test(text)) return false
+  return null
 }
 
 /** Notes a row. Answers whether its time lies after all earlier ones of the turbine. */

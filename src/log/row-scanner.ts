@@ -4,8 +4,8 @@ import { validUtf8 } from './clean-text.ts'
 import type { LogLimits } from './contract.ts'
 import { MOST_TURBINES, noteRow, trackOf, type PostState, type ScanCounts } from './post-state.ts'
 import type { RejectReason } from './rejects.ts'
-import { instantOf, type TurbineTrack } from './row-clock.ts'
-import type { RowTime } from './row-time.ts'
+import { instantOf, isSummer, type TurbineTrack } from './row-clock.ts'
+import { fieldText, type RowTime } from './row-time.ts'
 import { SAFE_DELIMITER, splitFields } from './split-fields.ts'
 import { jsonFields } from './json-line.ts'
 import { lineTooLong, type LinePosition } from './text-lines.ts'
@@ -32,6 +32,8 @@ export interface ScanPlan {
   /** Position of the turbine's name, -1 = `turbineName` for all rows. */
   readonly turbine: number
   readonly turbineName: string
+  /** Position of the column that tells whether the clock shows summer time; -1 = none. */
+  readonly dst: number
   /** The position above holds the name of a signal: marks that a turbine's name must not have are allowed. */
   readonly isTag: boolean
   readonly zone: ZoneTable
@@ -204,9 +206,10 @@ export class RowScanner implements LinePosition, ScanCounts {
     const wallMs = plan.time.read(bytes, start, ends)
     let timeMs = wallMs
     if (!plan.time.zoned && !Number.isNaN(wallMs)) {
-      timeMs = instantOf(wallMs, plan.zone, turbine!)
+      const summer = plan.dst < 0 ? null : isSummer(fieldText(bytes, start, ends, plan.dst))
+      timeMs = instantOf(wallMs, plan.zone, turbine!, summer)
       this.unzonedRows++
-      if (!Number.isNaN(plan.zone.second(wallMs))) this.repeatedHourRows++
+      if (summer === null && !Number.isNaN(plan.zone.second(wallMs))) this.repeatedHourRows++
     }
     if (Number.isNaN(timeMs)) {
       const reason = !Number.isNaN(wallMs)

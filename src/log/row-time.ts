@@ -68,7 +68,8 @@ function pairTime(
   }
 }
 
-function fieldText(bytes: Buffer, lineStart: number, ends: Int32Array, field: number): string {
+/** Text of a field, without blanks around it. `ends` holds the end of each field of the line. */
+export function fieldText(bytes: Buffer, lineStart: number, ends: Int32Array, field: number): string {
   return bytes.toString('utf8', field === 0 ? lineStart : ends[field - 1]! + 1, ends[field]).trim()
 }
 

@@ -39,6 +39,7 @@ export const USUAL_NAMES: Readonly<Record<string, readonly string[]>> = {
     'sampletime',
     'logtime',
   ],
+  dst: ['isdst', 'dstflag', 'daylightsaving', 'daylightsavingtime', 'summertime', 'sommerzeit'],
   turbine: [
     'turbineid',
     'turbid',
