@@ -1,7 +1,7 @@
 #!/usr/bin/env node
 import { spawn } from 'node:child_process'
 import { randomUUID } from 'node:crypto'
-import { mkdtempSync, readFileSync, rmSync } from 'node:fs'
+import { existsSync, mkdtempSync, readFileSync, rmSync } from 'node:fs'
 import { rm } from 'node:fs/promises'
 import { constants, tmpdir } from 'node:os'
 import { join, resolve } from 'node:path'
@@ -130,17 +130,23 @@ async function openParts(config: Config, folder: string, report?: (error: unknow
 async function startScoring(flags: SettingFlags): Promise<Scoring> {
   const { config, unknownNames } = readConfig(process.env, flags)
   for (const name of unknownNames) process.stderr.write(`warning: ${name} is no setting of yawledger\n`)
-  // Made without a wait, so that no signal can come between the folder and those who empty it.
-  const folder = mkdtempSync(join(tmpdir(), 'yawledger-'))
+  let folder = ''
   const stopped = (signal: 'SIGINT' | 'SIGTERM' | 'SIGHUP') => {
     try {
-      // A query that still runs may write a file while the folder is being emptied: it is emptied again.
-      rmSync(folder, { recursive: true, force: true, maxRetries: 10, retryDelay: 20 })
+      // What is under way in the thread pool may make folders or files again after the first sweep. Nothing new is begun
+      // while this thread waits, so that a folder that stays away for a moment stays away.
+      for (let round = 0; round < 20; round++) {
+        rmSync(folder, { recursive: true, force: true, maxRetries: 10, retryDelay: 20 })
+        Atomics.wait(new Int32Array(new SharedArrayBuffer(4)), 0, 0, 60)
+        if (!existsSync(folder)) break
+      }
     } finally {
       process.exit(128 + constants.signals[signal])
     }
   }
   for (const signal of ['SIGINT', 'SIGTERM', 'SIGHUP'] as const) process.once(signal, stopped)
+  // Made last and without a wait: a signal that nobody listens to ends the process at once, with the folder left behind.
+  folder = mkdtempSync(join(tmpdir(), 'yawledger-'))
   try {
     const { store, replays, intake, close } = await openParts(config, folder)
     return {

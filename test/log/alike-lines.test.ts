@@ -111,7 +111,8 @@ test('a table of alike lines gives the same rows and the same receipt as read li
       expect(quick).toHaveBeenCalledTimes(1)
       if (careful.mock.calls.length === 0) alike++
     }),
-    { numRuns: 30 },
+    // A fixed seed, since the check below counts how many of the tables were alike.
+    { numRuns: 30, seed: 20240331 },
   )
   expect(alike).toBeGreaterThan(10)
 })
