@@ -132,17 +132,18 @@ async function startScoring(flags: SettingFlags): Promise<Scoring> {
   for (const name of unknownNames) process.stderr.write(`warning: ${name} is no setting of yawledger\n`)
   let folder = ''
   const stopped = (signal: 'SIGINT' | 'SIGTERM' | 'SIGHUP') => {
-    try {
-      // What is under way in the thread pool may make folders or files again after the first sweep. Nothing new is begun
-      // while this thread waits, so that a folder that stays away for a moment stays away.
-      for (let round = 0; round < 20; round++) {
+    // What is under way in the thread pool may make folders or files again during a sweep or after it. Nothing new is begun
+    // while this thread waits, so that a folder that stays away for a moment stays away.
+    for (let round = 0; round < 20; round++) {
+      try {
         rmSync(folder, { recursive: true, force: true, maxRetries: 10, retryDelay: 20 })
-        Atomics.wait(new Int32Array(new SharedArrayBuffer(4)), 0, 0, 60)
-        if (!existsSync(folder)) break
+      } catch {
+        // A file that appeared between its folder's listing and the removal: the next round takes it.
       }
-    } finally {
-      process.exit(128 + constants.signals[signal])
+      Atomics.wait(new Int32Array(new SharedArrayBuffer(4)), 0, 0, 250)
+      if (!existsSync(folder)) break
     }
+    process.exit(128 + constants.signals[signal])
   }
   for (const signal of ['SIGINT', 'SIGTERM', 'SIGHUP'] as const) process.once(signal, stopped)
   // Made last and without a wait: a signal that nobody listens to ends the process at once, with the folder left behind.
