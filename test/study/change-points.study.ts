@@ -4,8 +4,8 @@
  *
  *   npm run study -- changes [farms]
  */
-import { headingSteps } from '../../src/analysis/offset-changes-heading.ts'
-import { offsetChanges, type OffsetHistory } from '../../src/analysis/offset-changes.ts'
+import { headingSteps } from '../../src/analysis/changes/offset-changes-heading.ts'
+import { offsetChanges, type OffsetHistory } from '../../src/analysis/changes/offset-changes.ts'
 import { farmScenario, type FarmScenario, type SimulatedFarm } from '../../src/simulate/index.ts'
 import { cachedFarm, frameOf, STUDY_SETTINGS } from './simulated-farms.ts'
 

@@ -5,8 +5,8 @@
  *
  *   npm run study -- moves [turbines]
  */
-import { steepnessByPower, yawMoveOffset } from '../../src/analysis/yaw-move-offset.ts'
-import { YawMoveWindows } from '../../src/analysis/yaw-move-windows.ts'
+import { steepnessByPower, yawMoveOffset } from '../../src/analysis/offset/yaw-move-offset.ts'
+import { YawMoveWindows } from '../../src/analysis/offset/yaw-move-windows.ts'
 import { dayBlocks } from '../../src/analysis/index.ts'
 import { measuredPowerCurve, type MeasuredCurve } from '../../src/kernel/wind/index.ts'
 import { simulateFarm, STATES, type SimulatedTurbine } from '../../src/simulate/index.ts'

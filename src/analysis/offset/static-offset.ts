@@ -1,0 +1,263 @@
+import { DEG_PER_RAD, wrap180 } from '../../kernel/angle/index.ts'
+import type { DayWeights } from '../../kernel/stats/index.ts'
+import { correctSpeed, type TurbineFrame } from '../../frame/index.ts'
+import type { ScoringSettings, TurbineSheet } from '../../sheet/index.ts'
+import type { TurbineResponse } from '../neighbours/anemometer-response.ts'
+import { furtherDays } from './further-days.ts'
+import { disagree, type FarmEstimate } from '../neighbours/farm-estimates.ts'
+import { fitOffset, offsetAtExponent } from './offset-fit.ts'
+import { offsetSpread, vaneByDay } from './offset-interval.ts'
+import { offsetRows, type OffsetRows } from './offset-rows.ts'
+import { powerByVane } from './power-by-vane.ts'
+import type { Block } from '../sensors/readiness.ts'
+import { NORMAL_95 } from './resampled-spread.ts'
+
+/** Exponents shown side by side: a low field value, the disk rule, and the cos-cubed rule. */
+export const SHOWN_EXPONENTS = [1.4, 2, 3] as const
+/**
+ * Slow vane noise that the rotor does not feel flattens power against vane, so that m comes out too small by 2 to 9 %
+ * (measured on simulated farms). Without a second vane its size is not known: half-width as a share of |m|.
+ */
+const DILUTION_SHARE = 0.05
+
+export interface StaticOffsetRequest {
+  readonly settings: ScoringSettings
+  /** Blocks of 1, 2 and 4 days over the calendar of the farm; the same for all its turbines. */
+  readonly dayWeights: readonly DayWeights[]
+  readonly days: number
+  /** What the neighbours tell of this anemometer's response; null or absent: nothing. */
+  readonly response?: TurbineResponse | null
+  /** Estimates that lean on neighbours, to stand beside this one. */
+  readonly farmEstimates?: readonly FarmEstimate[]
+}
+
+/** The offset, and why there is none. */
+export interface StaticOffsetAnswer {
+  readonly sheet: TurbineSheet['staticOffset']
+  /** d and m for each exponent shown, and for the one in force. */
+  readonly byExponent: readonly { exponent: number; offsetDeg: number; standingDeg: number }[]
+  /** The frame with wind speeds corrected for the response in force, for the questions that build on it. */
+  readonly frame: TurbineFrame
+  /** That response, relative change of wind speed per degree of vane. */
+  readonly responsePerDeg: number
+  /** Estimates that differ beyond chance; null = none. */
+  readonly disagreement: string | null
+  /** What the sheet's estimate means, for the questions that build on it; null = no estimate. */
+  readonly standing: {
+    readonly offsetDeg: number
+    readonly standingDeg: number
+    readonly standingInterval95Deg: readonly [number, number]
+  } | null
+  readonly failure: { code: string; text: string } | null
+}
+
+/**
+ * The static offset d from power against vane, and the standing misalignment m = d + mean vane, each with a 95 % interval.
+ *
+ * Days, not rows, are taken as independent: whole days are resampled in blocks of 1, 2 and 4, the levels refitted in each
+ * resample; the widest of the three half-widths counts, with a t quantile for the number of blocks. To it come, as the
+ * root of the sum of squares, what is not known of the anemometer's response, and what slow vane noise may hide.
+ *
+ * @param block  a sensor that forbids an estimate, if any.
+ * @returns null in the sheet, with `failure`, when there are too few rows or days, the vane does not vary, or a sensor blocks.
+ */
+export function staticOffset(
+  asRead: TurbineFrame,
+  request: StaticOffsetRequest,
+  block: Block | null = null,
+): StaticOffsetAnswer {
+  const { settings, dayWeights, days } = request
+  const anemometer = responseInForce(request)
+  const frame = correctSpeed(asRead, anemometer.perDeg, settings.vaneMaxDeg)
+  const rows = offsetRows(frame, days)
+  const usedDays = new Set(rows.day).size
+  const counts = { rows: rows.vane.length, days: usedDays }
+
+  const failure = block ?? tooLittle(rows, usedDays, settings)
+  if (failure) return unanswered(frame, anemometer.perDeg, counts, failure)
+
+  const model = { exponent: settings.exponent, responsePerDeg: 0 }
+  const fit = fitOffset(rows, model)
+  if (!fit.converged) {
+    return unanswered(frame, anemometer.perDeg, counts, {
+      code: 'no-fit',
+      text: 'the fit of power against vane did not settle',
+    })
+  }
+  const vane = vaneByDay(frame, days)
+  const statistical = offsetSpread(fit, vane, dayWeights, usedDays)
+  const response = NORMAL_95 * Math.abs(fit.perResponse) * DEG_PER_RAD * anemometer.sdPerDeg
+
+  const offsetDeg = wrap180(fit.offset * DEG_PER_RAD - rows.centreDeg)
+  const standingDeg = wrap180(offsetDeg + vane.meanDeg)
+  const dilution = DILUTION_SHARE * Math.abs(standingDeg)
+  const around = (centre: number, half: number): [number, number] => [centre - half, centre + half]
+  const interval = around(offsetDeg, Math.hypot(statistical.offset, response, dilution))
+  const standingInterval = around(standingDeg, Math.hypot(statistical.standing, response, dilution))
+
+  const byExponent = SHOWN_EXPONENTS.map((exponent) => {
+    if (exponent === settings.exponent) return { exponent, offsetDeg, standingDeg }
+    const shownDeg = wrap180(
+      offsetAtExponent(rows, exponent, fit, settings.exponent) * DEG_PER_RAD - rows.centreDeg,
+    )
+    return { exponent, offsetDeg: shownDeg, standingDeg: wrap180(shownDeg + vane.meanDeg) }
+  })
+  // Neighbours' comparison shrinks with days; a response that is only bounded by a setting does not.
+  const shrinking = anemometer.measured ? Math.hypot(statistical.standing, response) : statistical.standing
+  const fixed = anemometer.measured ? dilution : Math.hypot(response, dilution)
+  const further = furtherDays(standingDeg, { shrinking, fixed }, usedDays, settings.actionThresholdDeg)
+  const method = anemometer.measured
+    ? 'power against vane, own anemometer corrected for its response'
+    : 'power against vane, own anemometer'
+  const own = { offsetDeg, halfWidthDeg: Math.hypot(statistical.offset, response, dilution) }
+  const others = request.farmEstimates ?? []
+  const apart = others.filter((other) => disagree(own, other))
+  return {
+    failure: null,
+    frame,
+    responsePerDeg: anemometer.perDeg,
+    byExponent,
+    disagreement:
+      apart.length === 0
+        ? null
+        : `estimates differ beyond chance: ${method} ${offsetDeg.toFixed(1)}, ` +
+          apart.map((other) => `${other.method} ${other.offsetDeg.toFixed(1)}`).join(', '),
+    standing: { offsetDeg, standingDeg, standingInterval95Deg: standingInterval },
+    sheet: {
+      ...emptySheet(frame, counts),
+      estimateDeg: offsetDeg,
+      interval95Deg: interval,
+      standingMisalignmentDeg: standingDeg,
+      standingInterval95Deg: standingInterval,
+      intervalParts: { statistical: statistical.standing, response, exponent: 0, instrument: 0, dilution },
+      method,
+      estimates: [
+        {
+          method,
+          estimateDeg: offsetDeg,
+          interval95Deg: interval,
+          leansOn: anemometer.text,
+          kind: 'slope' as const,
+          ...counts,
+        },
+        ...others.map((other) => ({
+          method: other.method,
+          estimateDeg: other.offsetDeg,
+          interval95Deg: around(other.offsetDeg, other.halfWidthDeg),
+          leansOn: other.leansOn,
+          kind: 'slope' as const,
+          rows: other.rows,
+          days: other.days,
+        })),
+      ],
+      byExponent: byExponent.map((shown) => ({
+        exponent: shown.exponent,
+        estimateDeg: shown.offsetDeg,
+        standingMisalignmentDeg: shown.standingDeg,
+      })),
+      furtherDays: further.days,
+      furtherNote: further.note,
+      bins: powerByVane(frame),
+    },
+  }
+}
+
+/** The response that the fit takes: a stated one, else what neighbours tell, else none with the setting's spread. */
+function responseInForce({ settings, response }: StaticOffsetRequest): {
+  perDeg: number
+  sdPerDeg: number
+  measured: TurbineResponse | null
+  text: string
+} {
+  const known = settings.assumedResponsePctPerDeg
+  if (known !== null) {
+    return {
+      perDeg: known / 100,
+      sdPerDeg: 0,
+      measured: null,
+      text: `the anemometer's response to the vane is taken as known: ${known} % per degree`,
+    }
+  }
+  if (response) {
+    const pct = (value: number): string => (100 * value).toFixed(3)
+    return {
+      perDeg: response.perDeg,
+      sdPerDeg: response.sdPerDeg,
+      measured: response,
+      text:
+        `the anemometer's response to the vane, from ${response.rows} intervals against its neighbours: ` +
+        `${pct(response.perDeg)} +- ${pct(response.sdPerDeg)} % per degree`,
+    }
+  }
+  return {
+    perDeg: 0,
+    sdPerDeg: settings.responseSpreadPctPerDeg / 100,
+    measured: null,
+    text: `the anemometer's response to the vane is not known: taken as 0 +- ${settings.responseSpreadPctPerDeg} % per degree`,
+  }
+}
+
+function unanswered(
+  frame: TurbineFrame,
+  responsePerDeg: number,
+  counts: { rows: number; days: number },
+  failure: { code: string; text: string },
+): StaticOffsetAnswer {
+  const furtherNote =
+    failure.code === 'too-few-rows' || failure.code === 'too-few-days'
+      ? `${failure.text}; post a month of this turbine, or add a reference instrument`
+      : ''
+  return {
+    sheet: { ...emptySheet(frame, counts), furtherNote },
+    frame,
+    responsePerDeg,
+    byExponent: [],
+    disagreement: null,
+    standing: null,
+    failure,
+  }
+}
+
+function tooLittle(
+  rows: OffsetRows,
+  usedDays: number,
+  settings: ScoringSettings,
+): StaticOffsetAnswer['failure'] {
+  const n = rows.vane.length
+  if (n < settings.minimumRows) {
+    return {
+      code: 'too-few-rows',
+      text: `${n} ${n === 1 ? 'row' : 'rows'} can be used, at least ${settings.minimumRows} are needed`,
+    }
+  }
+  if (usedDays < settings.minimumDays) {
+    return {
+      code: 'too-few-days',
+      text: `used rows lie on ${usedDays} ${usedDays === 1 ? 'day' : 'days'}, at least ${settings.minimumDays} are needed: days, not rows, are independent`,
+    }
+  }
+  return null
+}
+
+function emptySheet(
+  frame: TurbineFrame,
+  counts: { rows: number; days: number },
+): TurbineSheet['staticOffset'] {
+  return {
+    estimateDeg: null,
+    interval95Deg: [null, null],
+    standingMisalignmentDeg: null,
+    standingInterval95Deg: [null, null],
+    intervalParts: { statistical: null, response: null, exponent: null, instrument: null, dilution: null },
+    method: null,
+    estimates: [],
+    byExponent: [],
+    changes: [],
+    signChecked: frame.setup.vane?.sign !== undefined,
+    vaneLogged: frame.setup.vane?.logged ?? 'unknown',
+    furtherDays: null,
+    furtherNote: '',
+    ...counts,
+    bins: [],
+  }
+}
