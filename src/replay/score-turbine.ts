@@ -99,6 +99,8 @@ export function scoreTurbine(task: ScoreTask): TurbineSheet {
       ...segment.findings,
       ...task.farmFindings,
     ],
+    sensorTests: [],
+    attribution: { text: '', evidence: [], wouldSettle: [] },
     yawActivity: {},
     advice: adviceFor(verdict, offset),
     cautions: [...CAUTIONS],

@@ -1,5 +1,6 @@
 import { Type, type Static } from 'typebox'
 import { Interval, IsoTime, Nullable, NullableIsoTime } from './common.ts'
+import { Attribution, SensorFinding, SensorTest } from './findings.ts'
 import { Receipt } from './receipt.ts'
 import { ScoringSettings } from './settings.ts'
 
@@ -215,23 +216,9 @@ export const TurbineSheet = Type.Object(
         steepness: Nullable('d ln P / d ln u'),
       }),
     ),
-    sensors: Type.Array(
-      Type.Object({
-        sensor: Type.Union([
-          Type.Literal('vane'),
-          Type.Literal('nacelle-position'),
-          Type.Literal('anemometer'),
-          Type.Literal('power'),
-          Type.Literal('air'),
-          Type.Literal('clock'),
-        ]),
-        finding: Type.String(),
-        severity: Type.Union([Type.Literal('info'), Type.Literal('warn'), Type.Literal('fault')]),
-        from: NullableIsoTime('start'),
-        to: NullableIsoTime('end'),
-        detail: Type.Record(Type.String(), Type.Unknown()),
-      }),
-    ),
+    sensors: Type.Array(SensorFinding),
+    sensorTests: Type.Array(SensorTest),
+    attribution: Attribution,
     yawActivity: Type.Record(Type.String(), Type.Unknown()),
     advice: Type.Array(Type.String()),
     cautions: Type.Array(Type.String()),

@@ -149,6 +149,8 @@ export function turbineExample(turbine: string, standingDeg: number | null = 6.1
     },
     powerCurve: [],
     sensors: [],
+    sensorTests: [],
+    attribution: { text: '', evidence: [], wouldSettle: [] },
     yawActivity: {},
     advice: standingDeg === null ? [] : ['add 6.1 degrees to the vane offset once its sign is checked'],
     cautions: ['whether the logged vane already contains a correction is not known'],

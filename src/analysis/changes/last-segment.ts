@@ -5,6 +5,8 @@ import { offsetChanges, type OffsetChange, type OffsetHistory } from './offset-c
 
 /** Without headings a change is dated from power alone, which takes this many days with rows. */
 const DAYS_FOR_POWER = 40
+const NORTH_FIRST =
+  'At the desk: look for work at the yaw sensor or a north parameter that was set at that time. Then read the position against a known bearing.'
 
 /** Something that was done to a turbine and may have changed its offset. */
 export interface TurbineEvent {
@@ -78,8 +80,11 @@ function changesOffset(change: OffsetChange, events: readonly TurbineEvent[]): b
 function positionSteps(history: OffsetHistory): TurbineSheet['sensors'] {
   return history.positionSteps.map((step) => ({
     sensor: 'nacelle-position',
+    kind: 'position-step',
     finding: `the reading stepped by ${step.sizeDeg.toFixed(1)} degrees against the farm, and power did not: the position sensor, not the vane`,
     severity: 'warn',
+    howSure: 'likely',
+    checkFirst: NORTH_FIRST,
     from: iso(step.intervalMs[0]),
     to: iso(step.intervalMs[1]),
     detail: { sizeDeg: step.sizeDeg, halfWidthDeg: step.halfWidthDeg },
@@ -89,8 +94,11 @@ function positionSteps(history: OffsetHistory): TurbineSheet['sensors'] {
 function undecided(change: OffsetChange): TurbineSheet['sensors'][number] {
   return {
     sensor: 'nacelle-position',
+    kind: 'unexplained-step',
     finding: 'the heading stepped against the farm; power cannot tell whether vane or position sensor did it',
     severity: 'warn',
+    howSure: 'possible',
+    checkFirst: NORTH_FIRST,
     from: iso(change.interval[0]),
     to: iso(change.interval[1]),
     detail: { sizeByPowerDeg: change.sizeDeg, sizeInterval95Deg: [...change.sizeInterval95Deg] },

@@ -255,8 +255,12 @@ function findingOf(lag: ClockLag): SensorFinding {
   const side = lag.lagS > 0 ? 'ahead of' : 'behind'
   return {
     sensor: 'clock',
+    kind: 'clock-off',
     finding: `the clock runs about ${minutes} minutes ${side} the other turbines: changes of wind speed fit theirs at that lag (correlation ${lag.correlation.toFixed(2)}, without it ${lag.correlationAtZero.toFixed(2)})`,
     severity: 'warn',
+    howSure: 'likely',
+    checkFirst:
+      'At the desk: compare the clock of this turbine’s controller and logger with the time server of the site.',
     from: new Date(lag.fromMs).toISOString(),
     to: new Date(lag.toMs).toISOString(),
     detail: { lagS: lag.lagS, correlation: lag.correlation, correlationAtZero: lag.correlationAtZero },

@@ -326,8 +326,12 @@ function findingOf(
   const { time, intervalS } = turbine
   return {
     sensor,
+    kind: 'reversed-sign',
     finding: text,
     severity,
+    howSure: 'likely',
+    checkFirst:
+      'At the desk: watch vane and nacelle position live while the turbine yaws one way, and compare with the sign conventions of the log.',
     from: new Date(time[0]!).toISOString(),
     to: new Date(time[time.length - 1]! + intervalS * 1000).toISOString(),
     detail: {
