@@ -17,3 +17,12 @@ export { preferReference } from './offset/prefer-reference.ts'
 export { referenceOffset, type ReferenceOffset } from './offset/reference-offset.ts'
 export { lastSegment, type LastSegment, type TurbineEvent } from './changes/last-segment.ts'
 export { headingSteps, type HeadingRecord } from './changes/offset-changes-heading.ts'
+export {
+  buffersOf,
+  DAY_MARGIN_MS,
+  DAY_MS,
+  HIGH_RATE_CHANNELS,
+  highRateRows,
+  type HighRateRows,
+} from './high-rate/high-rate-rows.ts'
+export { examineDay, type HighRateDay, type HighRateRecord } from './high-rate/examine-day.ts'

@@ -143,6 +143,8 @@ function buildTurbine(
     normalisedSpeed: normalised,
     turbulence,
     vane,
+    vaneSource: angles.convention.source,
+    vaneCentreDeg: angles.convention.centreDeg,
     vaneSd: angles.convention.vaneSd,
     vaneMin: angles.convention.vaneMin,
     vaneMax: angles.convention.vaneMax,

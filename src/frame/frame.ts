@@ -37,6 +37,9 @@ export interface TurbineFrame {
   readonly turbulence: Float64Array
   /** Sign as DESIGN: positive = wind from clockwise of the axis; degrees, [-180, 180). */
   readonly vane: Float64Array
+  /** What `vane` was made of, and what the logged angle reads when the rotor faces the wind. */
+  readonly vaneSource: 'vane' | 'wind direction less nacelle position' | 'none'
+  readonly vaneCentreDeg: 0 | 180
   /** SD of the vane inside the interval, degrees. */
   readonly vaneSd: Float64Array
   /** Lowest and highest vane inside the interval, turned as the vane is, degrees; may run beyond half a turn. */

@@ -18,6 +18,7 @@ export const ReplaySummary = Type.Object(
           stage: Type.Union([
             Type.Literal('reading'),
             Type.Literal('framing'),
+            Type.Literal('examining'),
             Type.Literal('scoring'),
             Type.Literal('writing'),
           ]),

@@ -43,7 +43,7 @@ export interface RowsExport {
 }
 
 export interface Progress {
-  readonly stage: 'reading' | 'framing' | 'scoring' | 'writing'
+  readonly stage: 'reading' | 'framing' | 'examining' | 'scoring' | 'writing'
   /** 0 to 1 within the stage. */
   readonly share: number
 }

@@ -3,6 +3,7 @@ import {
   dayBlocks,
   headingSteps,
   signChecks,
+  type HighRateRecord,
   type Neighbours,
   type TurbineEvent,
 } from '../analysis/index.ts'
@@ -22,6 +23,8 @@ export interface FarmRequest {
   readonly receipt: Receipt
   /** How the log was read, for the provenance. */
   readonly reading: Record<string, unknown>
+  /** Looks at the high-rate rows that the farm's intervals were made of; absent: they were logged as they are. */
+  readonly examine?: ((turbines: readonly TurbineFrame[]) => Promise<readonly HighRateRecord[]>) | undefined
 }
 
 /**
@@ -43,6 +46,7 @@ export async function scoreFarm(
   const days = frame.calendar.days
   const dayWeights = dayBlocks(days, settings)
 
+  const highRate = request.examine ? await request.examine(frame.turbines) : []
   const signs = signChecks(frame)
   const clocks = clockLags(frame)
   const headings = headingSteps(frame)
@@ -71,6 +75,7 @@ export async function scoreFarm(
         heading: headings[i] ?? null,
         events: eventsOf(site, turbine),
         farmFindings: clocks[i] ?? [],
+        highRate: highRate.find((record) => record.turbine === turbine.turbine) ?? null,
       })
       onTurbine(++done, frame.turbines.length)
       return sheet

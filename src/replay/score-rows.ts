@@ -2,6 +2,7 @@ import type { TurbineColumns } from '../frame/index.ts'
 import type { Receipt, ScoreSheet, ScoringSettings, SiteFile } from '../sheet/index.ts'
 import { isHighRate, type CsvColumn, type Store } from '../store/index.ts'
 import type { Progress } from './contract.ts'
+import { examineHighRate, isExamined } from './examine-high-rate.ts'
 import { frameRows, scoredIntervalS, type KeptRequest } from './frame-rows.ts'
 import { scoreFarm } from './score-farm.ts'
 import type { ScoreTask } from './score-turbine.ts'
@@ -37,7 +38,6 @@ export async function scoreRows(
   const reducedFromS = work.loggedIntervalsS.some(isHighRate) ? finest(work.loggedIntervalsS) : null
   const farm = await frameRows(store.scans, work.path, reducedFromS)
   signal.throwIfAborted()
-  onProgress({ stage: 'scoring', share: 0 })
   const intervalS = scoredIntervalS(reducedFromS, receipt.intervalS)
   const responsesPerDeg: Record<string, number> = {}
   const scorers: Scorers = {
@@ -57,6 +57,10 @@ export async function scoreRows(
       ratedPowerKw,
       receipt: { ...receipt, intervalS },
       reading: work.reading,
+      examine:
+        reducedFromS !== null && isExamined(reducedFromS)
+          ? (turbines) => examineHighRate({ store, scorers }, work.path, turbines, signal, onProgress)
+          : undefined,
     },
     scorers,
     (done, of) => {

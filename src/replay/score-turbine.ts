@@ -14,6 +14,7 @@ import {
   type DayWeights,
   type FarmEstimate,
   type HeadingRecord,
+  type HighRateRecord,
   type SignCheck,
   type StaticOffsetAnswer,
   type TurbineEvent,
@@ -41,6 +42,8 @@ export interface ScoreTask {
   readonly events: readonly TurbineEvent[]
   /** Findings that need the whole farm, such as a clock that is off. */
   readonly farmFindings: TurbineSheet['sensors']
+  /** What the high-rate rows behind the intervals told; null = the log holds none. */
+  readonly highRate: HighRateRecord | null
 }
 
 /** Runs the questions about one turbine, in order, and writes its part of the sheet. NaN stands for missing. */

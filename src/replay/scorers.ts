@@ -1,7 +1,16 @@
 import { existsSync } from 'node:fs'
 import { fileURLToPath } from 'node:url'
 import { Piscina } from 'piscina'
-import { compareNeighbours, type DayWeights, type FarmRows, type Neighbours } from '../analysis/index.ts'
+import {
+  buffersOf,
+  compareNeighbours,
+  examineDay,
+  type DayWeights,
+  type FarmRows,
+  type HighRateDay,
+  type HighRateRows,
+  type Neighbours,
+} from '../analysis/index.ts'
 import type { ScoringSettings, TurbineSheet } from '../sheet/index.ts'
 import { scoreTurbine, type ScoreTask } from './score-turbine.ts'
 
@@ -14,14 +23,18 @@ export interface FarmTask {
 
 /** What travels to a worker thread, and back. */
 export type Work =
-  { readonly kind: 'turbine'; readonly task: ScoreTask } | ({ readonly kind: 'farm' } & FarmTask)
-export type WorkAnswer = TurbineSheet | Neighbours | null
+  | { readonly kind: 'turbine'; readonly task: ScoreTask }
+  | ({ readonly kind: 'farm' } & FarmTask)
+  | { readonly kind: 'high-rate-day'; readonly rows: HighRateRows }
+export type WorkAnswer = TurbineSheet | Neighbours | HighRateDay | null
 
 /** Runs the heavy questions, on this thread or on several. The sheet is the same either way. */
 export interface Scorers {
   score(task: ScoreTask): Promise<TurbineSheet>
   /** Compares neighbours; null where there is nothing to compare. */
   compare(task: FarmTask): Promise<Neighbours | null>
+  /** Examines a day of high-rate rows, whose arrays are handed over: they are not to be used afterwards. */
+  examine(rows: HighRateRows): Promise<HighRateDay>
   close(): Promise<void>
 }
 
@@ -34,6 +47,7 @@ export function openScorers(threads: number): Scorers {
       score: (task) => Promise.resolve(scoreTurbine(task)),
       compare: (task) =>
         Promise.resolve(compareNeighbours(task.farm, task.days, task.dayWeights, task.settings)),
+      examine: (rows) => Promise.resolve(examineDay(rows)),
       close: () => Promise.resolve(),
     }
   }
@@ -46,6 +60,8 @@ export function openScorers(threads: number): Scorers {
   return {
     score: async (task) => (await pool.run({ kind: 'turbine', task })) as TurbineSheet,
     compare: async (task) => (await pool.run({ kind: 'farm', ...task })) as Neighbours | null,
+    examine: async (rows) =>
+      (await pool.run({ kind: 'high-rate-day', rows }, { transferList: buffersOf(rows) })) as HighRateDay,
     close: () => pool.close(),
   }
 }

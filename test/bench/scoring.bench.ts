@@ -28,6 +28,7 @@ export function benchScoring(print: (text: string) => void): void {
       farmFindings: [],
       heading: null,
       events: [],
+      highRate: null,
     })
     return sheet.rows.accepted
   }

@@ -34,6 +34,7 @@ export async function openCompiledScorers(threads: number): Promise<Scorers> {
   return {
     score: (task) => opened.score(task),
     compare: (task) => opened.compare(task),
+    examine: (rows) => opened.examine(rows),
     async close() {
       await opened.close()
       rmSync(folder, { recursive: true, force: true })

@@ -55,6 +55,8 @@ export interface HighRateChunk {
 
 /** One row per yaw move, and one per rest: a moment without a move, treated as if there had been one of no travel. */
 export interface YawMoveRows {
+  /** Start of the move, epoch ms. */
+  readonly startMs: readonly number[]
   readonly day: readonly number[]
   /** Degrees, positive = clockwise; 0 = a rest. */
   readonly travelDeg: readonly number[]
@@ -75,6 +77,7 @@ export interface YawMoveRows {
  */
 export class YawMoveWindows {
   readonly #rows = {
+    startMs: [] as number[],
     day: [] as number[],
     travelDeg: [] as number[],
     logPower: [] as number[],
@@ -90,6 +93,14 @@ export class YawMoveWindows {
 
   get rows(): YawMoveRows {
     return this.#rows
+  }
+
+  /** Rows of moves and rests that begin from one moment to before another, epoch ms. */
+  rowsBetween(fromMs: number, toMs: number): YawMoveRows {
+    return yawMoveRowsWhere(this.#rows, (i) => {
+      const startMs = this.#rows.startMs[i]!
+      return startMs >= fromMs && startMs < toMs
+    })
   }
 
   /** @throws InputError LENGTH_MISMATCH; OUT_OF_RANGE when a chunk begins before the end of the one before. */
@@ -154,6 +165,7 @@ export class YawMoveWindows {
     ]
     if (path.some((angle) => Number.isNaN(angle))) return
     const rows = this.#rows
+    rows.startMs.push(startS * 1000)
     rows.day.push(log.day[sums.indexOf(startS)]!)
     rows.travelDeg.push(travelDeg)
     rows.logPower.push((before + after) / 2)
@@ -161,6 +173,22 @@ export class YawMoveWindows {
     rows.vaneBeforeDeg.push(sums.vane(startS - WINDOW_S, startS))
     rows.vaneAfterDeg.push(sums.vane(stopS + SETTLE_S, stopS + SETTLE_S + WINDOW_S))
     for (const angle of path) rows.pathDeg.push(angle - reference)
+  }
+}
+
+/** The rows that are chosen, in their order. */
+export function yawMoveRowsWhere(rows: YawMoveRows, chosen: (row: number) => boolean): YawMoveRows {
+  const index = rows.startMs.map((_, i) => i).filter(chosen)
+  const of = (values: readonly number[]): number[] => index.map((i) => values[i]!)
+  return {
+    startMs: of(rows.startMs),
+    day: of(rows.day),
+    travelDeg: of(rows.travelDeg),
+    logPower: of(rows.logPower),
+    logPowerGain: of(rows.logPowerGain),
+    vaneBeforeDeg: of(rows.vaneBeforeDeg),
+    vaneAfterDeg: of(rows.vaneAfterDeg),
+    pathDeg: index.flatMap((i) => rows.pathDeg.slice(i * PATH_LENGTH, (i + 1) * PATH_LENGTH)),
   }
 }
 
