@@ -205,6 +205,8 @@ export const SETTINGS = {
     text: 'how long the rows of a one-shot replay are kept',
   }),
   exponent: scoring('exponent', '', 3),
+  exponentLow: scoring('exponentLow', '', 1.4),
+  exponentHigh: scoring('exponentHigh', '', 3),
   actionThresholdDeg: scoring('actionThresholdDeg', 'degrees', 3),
   resamples: scoring('resamples', '', 1000),
   seed: scoring('seed', '', 1),

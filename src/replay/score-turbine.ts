@@ -60,7 +60,9 @@ export function scoreTurbine(task: ScoreTask): TurbineSheet {
   })
   // From here on the sheet speaks of the rows since the last change.
   const byPower = staticOffset(rowsSince(task.frame, segment.fromMs), task, block)
-  const answer = block ? byPower : preferReference(byPower, referenceOffset(byPower.frame, task.dayWeights))
+  const answer = block
+    ? byPower
+    : preferReference(byPower, referenceOffset(byPower.frame, task.dayWeights), settings)
   const { frame, standing } = answer
   const offset = { ...answer.sheet, changes: segment.changes, signChecked: sign.checked }
   const whole = correctSpeed(task.frame, answer.responsePerDeg, settings.vaneMaxDeg)
@@ -125,6 +127,10 @@ function judge(block: Block | null, answer: StaticOffsetAnswer, settings: Scorin
       answer.standing.standingDeg,
       answer.standing.standingInterval95Deg,
       settings.actionThresholdDeg,
+      {
+        exponent: settings.exponent,
+        interval95Deg: answer.standing.standingInterval95GivenExponentDeg,
+      },
     )
   }
   const failure = answer.failure ?? { code: 'no-fit', text: 'no estimate' }

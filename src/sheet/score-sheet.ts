@@ -76,6 +76,7 @@ const Estimate = Type.Object({
   method: Type.String(),
   estimateDeg: Nullable('d by this method'),
   interval95Deg: Interval('of d by this method'),
+  interval95GivenExponentDeg: Interval('the same, were the exponent known'),
   leansOn: Type.String({ description: 'the assumption it stands on' }),
   kind: Type.Union([Type.Literal('slope'), Type.Literal('vertex'), Type.Literal('direct')]),
   rows: Count,
@@ -84,18 +85,25 @@ const Estimate = Type.Object({
 
 const StaticOffset = Type.Object({
   estimateDeg: Nullable('d: degrees to add to the logged vane to get the yaw error'),
-  interval95Deg: Interval('of d'),
+  interval95Deg: Interval('of d, with what is not known of the exponent'),
+  interval95GivenExponentDeg: Interval('of d, were the exponent in force known to be the true one'),
   standingMisalignmentDeg: Nullable('m = d + mean vane: what is judged and what is entered'),
-  standingInterval95Deg: Interval('of m'),
+  standingInterval95Deg: Interval('of m, with what is not known of the exponent: what the verdict looks at'),
+  standingInterval95GivenExponentDeg: Interval('of m, were the exponent in force known to be the true one'),
   intervalParts: Type.Object(
     {
       statistical: Nullable('half-width from the scatter between days, degrees'),
       response: Nullable('half-width from the anemometer response, degrees'),
-      exponent: Nullable('half-width from the exponent, degrees'),
+      exponent: Nullable(
+        'how much further an end lies because the exponent is not known, degrees: added to the end, not to the squares, and mostly to the one away from 0',
+      ),
       instrument: Nullable('half-width from the reference instrument, degrees'),
       dilution: Nullable('half-width from vane noise that the rotor does not feel, degrees'),
     },
-    { description: 'half-widths at 95 %, combined as root of the sum of squares' },
+    {
+      description:
+        'half-widths at 95 % of m; all but the exponent’s combine as root of the sum of squares to the interval with the exponent given',
+    },
   ),
   method: Type.Union([Type.String(), Type.Null()]),
   estimates: Type.Array(Estimate),

@@ -9,6 +9,17 @@ export const ScoringSettings = Type.Object(
       maximum: 6,
       description: 'p: power below rated follows the power curve at u cos(g)^(p/3)',
     }),
+    exponentLow: Type.Number({
+      minimum: 0.5,
+      maximum: 6,
+      description:
+        'lowest value that the true exponent may have (field values of 1.4 to 3 are reported); as `exponent` where that is known',
+    }),
+    exponentHigh: Type.Number({
+      minimum: 0.5,
+      maximum: 6,
+      description: 'highest value that the true exponent may have; as `exponent` where that is known',
+    }),
     actionThresholdDeg: Type.Number({
       minimum: 0.1,
       maximum: 45,

@@ -64,6 +64,8 @@ export function sheetExample(replay: string, turbines: Turbine[] = [turbineExamp
 export function settingsExample(): ScoreSheet['provenance']['settings'] {
   return {
     exponent: 3,
+    exponentLow: 1.4,
+    exponentHigh: 3,
     actionThresholdDeg: 3,
     resamples: 1000,
     seed: 1,
@@ -114,8 +116,12 @@ export function turbineExample(turbine: string, standingDeg: number | null = 6.1
     staticOffset: {
       estimateDeg: standingDeg,
       interval95Deg: standingDeg === null ? [null, null] : [standingDeg - 1.3, standingDeg + 1.3],
+      interval95GivenExponentDeg:
+        standingDeg === null ? [null, null] : [standingDeg - 1.3, standingDeg + 1.2],
       standingMisalignmentDeg: standingDeg,
       standingInterval95Deg: standingDeg === null ? [null, null] : [standingDeg - 1.4, standingDeg + 1.4],
+      standingInterval95GivenExponentDeg:
+        standingDeg === null ? [null, null] : [standingDeg - 1.4, standingDeg + 1.2],
       intervalParts: { statistical: 0.9, response: 0.8, exponent: 0.5, instrument: null, dilution: 0.1 },
       method: 'power-slope',
       estimates: [],

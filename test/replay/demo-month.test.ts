@@ -19,15 +19,15 @@ import {
 
 let folder: string
 let service: Service
-/** With the response known to be 0, as the made-up month's README says it is. */
+/** With the response known to be 0 and the exponent to be 3, as the made-up month's README says they are. */
 let sheet: ScoreSheet
-/** With the response not known, as on a real farm. */
+/** With neither known, as on a real farm. */
 let unsure: ScoreSheet
 
 beforeAll(async () => {
   folder = await makeFolder()
   service = await openService(folder)
-  sheet = await service.replays.oneShot(demoRequest({ assumedResponsePctPerDeg: 0 }))
+  sheet = await service.replays.oneShot(demoRequest({ assumedResponsePctPerDeg: 0, exponentLow: 3 }))
   unsure = await service.replays.oneShot(demoRequest())
 })
 afterAll(async () => {
@@ -46,6 +46,29 @@ test('the three turbines that stand off the wind are found, the others are align
     'Q07 aligned',
     'Q08 offset',
   ])
+})
+
+test('an exponent that is not known moves the far ends of intervals, and costs no turbine that stands off', async () => {
+  const open = await service.replays.oneShot(demoRequest({ assumedResponsePctPerDeg: 0 }))
+  for (const { turbine, verdict, reasonCode, staticOffset, energyLoss } of open.turbines) {
+    const known = turbineOf(sheet, turbine)
+    const [low, high] = staticOffset.standingInterval95Deg as [number, number]
+    const given = known.staticOffset.standingInterval95Deg as [number, number]
+    expect(staticOffset.standingInterval95GivenExponentDeg, turbine).toEqual(given)
+    expect(staticOffset.intervalParts.exponent, turbine).toBeCloseTo(
+      Math.max(given[0] - low, high - given[1]),
+      9,
+    )
+    expect(known.staticOffset.intervalParts.exponent, turbine).toBe(0)
+    if (known.verdict === 'offset') {
+      expect(verdict, turbine).toBe('offset')
+      expect(Math.min(Math.abs(low), Math.abs(high)), turbine).toBe(Math.min(...given.map(Math.abs)))
+      // What is seen is p d: a lower exponent means a larger loss.
+      expect(energyLoss.static.annualInterval95Mwh[1]!, turbine).toBeGreaterThan(
+        known.energyLoss.static.annualInterval95Mwh[1]!,
+      )
+    } else if (verdict !== 'aligned') expect(reasonCode, turbine).toBe('exponent-not-known')
+  }
 })
 
 test('the intervals of the turbines that stand off hold the truth, and the estimates are near it', () => {

@@ -11,6 +11,8 @@ const CACHE = join(import.meta.dirname, '..', '..', '.cache', 'study')
 /** Settings of a study: the defaults of config.ts, the response taken as known, fewer resamples for speed. */
 export const STUDY_SETTINGS: ScoringSettings = {
   exponent: 3,
+  exponentLow: 1.4,
+  exponentHigh: 3,
   actionThresholdDeg: 3,
   resamples: 500,
   seed: 1,

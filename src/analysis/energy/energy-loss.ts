@@ -17,6 +17,8 @@ export interface EnergyLossRequest {
     readonly offsetDeg: number
     readonly standingDeg: number
     readonly standingInterval95Deg: readonly [number, number]
+    /** Exponents that the ends of the interval go with: a wide end goes with a small one. Absent: the exponent in force. */
+    readonly endExponents?: readonly [number, number]
   } | null
   readonly byExponent: readonly { exponent: number; offsetDeg: number; standingDeg: number }[]
 }
@@ -73,7 +75,8 @@ export function energyLoss(frame: TurbineFrame, request: EnergyLossRequest): Tur
     })
   const windowMwh = staticMwh(offset.standingDeg, request.exponent)
   const [low, high] = offset.standingInterval95Deg
-  const ends = [staticMwh(low, request.exponent), staticMwh(high, request.exponent)]
+  const [lowExponent, highExponent] = offset.endExponents ?? [request.exponent, request.exponent]
+  const ends = [staticMwh(low, lowExponent), staticMwh(high, highExponent)]
   const spansZero = low <= 0 && high >= 0
   const interval = [spansZero ? 0 : Math.max(0, Math.min(...ends)), Math.max(...ends)] as const
   const dynamicMwh =

@@ -1,6 +1,13 @@
+import { wrap180 } from '../../kernel/angle/index.ts'
+import type { ScoringSettings } from '../../sheet/index.ts'
 import { disagree } from '../neighbours/farm-estimates.ts'
+import { exponentDoubt, noDoubt } from './exponent-doubt.ts'
+import { furtherDays } from './further-days.ts'
 import type { ReferenceOffset } from './reference-offset.ts'
 import type { StaticOffsetAnswer } from './static-offset.ts'
+
+/** Steps through the range of exponents. */
+const EXPONENTS = 16
 
 /**
  * Puts the estimate of a reference instrument in front: it leans on neither power nor anemometer. What power says stays
@@ -12,6 +19,7 @@ import type { StaticOffsetAnswer } from './static-offset.ts'
 export function preferReference(
   answer: StaticOffsetAnswer,
   reference: ReferenceOffset | null,
+  settings: ScoringSettings,
 ): StaticOffsetAnswer {
   if (reference === null) return answer
   const counts = { rows: reference.rows, days: reference.days }
@@ -20,6 +28,7 @@ export function preferReference(
       method: reference.method,
       estimateDeg: null,
       interval95Deg: [null, null],
+      interval95GivenExponentDeg: [null, null],
       leansOn: `not used: ${reference.failure.text}`,
       kind: 'direct' as const,
       ...counts,
@@ -29,29 +38,36 @@ export function preferReference(
   const { offsetDeg, standingDeg, halfWidthDeg, standingHalfWidthDeg } = reference
   const interval = [offsetDeg - halfWidthDeg, offsetDeg + halfWidthDeg]
   const standingInterval = [standingDeg - standingHalfWidthDeg, standingDeg + standingHalfWidthDeg] as const
-  const [first] = answer.sheet.estimates
-  const byPower = answer.standing
-    ? {
-        offsetDeg: answer.standing.offsetDeg,
-        halfWidthDeg: ((first?.interval95Deg[1] ?? NaN) - (first?.interval95Deg[0] ?? NaN)) / 2,
-      }
-    : null
-  const apart = byPower !== null && disagree({ offsetDeg, halfWidthDeg }, byPower)
+  const apart = answer.standing !== null && disagreeAtEveryExponent(reference, answer, settings)
+  const further = furtherDays(
+    standingDeg,
+    { shrinking: reference.standingStatistical, fixed: reference.instrument },
+    reference.days,
+    { thresholdDeg: settings.actionThresholdDeg, doubt: noDoubt(settings.exponent) },
+  )
   const byExponent = answer.byExponent.map(({ exponent }) => ({ exponent, offsetDeg, standingDeg }))
   return {
     ...answer,
     failure: null,
     byExponent,
     disagreement: apart
-      ? `estimates differ beyond chance: ${reference.method} ${offsetDeg.toFixed(1)}, power against vane ${byPower.offsetDeg.toFixed(1)}`
+      ? `estimates differ beyond chance: ${reference.method} ${offsetDeg.toFixed(1)}, power against vane ${answer.standing.offsetDeg.toFixed(1)}`
       : null,
-    standing: { offsetDeg, standingDeg, standingInterval95Deg: standingInterval },
+    standing: {
+      offsetDeg,
+      standingDeg,
+      standingInterval95Deg: standingInterval,
+      standingInterval95GivenExponentDeg: standingInterval,
+      endExponents: [settings.exponent, settings.exponent],
+    },
     sheet: {
       ...answer.sheet,
       estimateDeg: offsetDeg,
       interval95Deg: interval,
+      interval95GivenExponentDeg: interval,
       standingMisalignmentDeg: standingDeg,
       standingInterval95Deg: [...standingInterval],
+      standingInterval95GivenExponentDeg: [...standingInterval],
       intervalParts: {
         statistical: reference.standingStatistical,
         response: 0,
@@ -65,6 +81,7 @@ export function preferReference(
           method: reference.method,
           estimateDeg: offsetDeg,
           interval95Deg: interval,
+          interval95GivenExponentDeg: interval,
           leansOn: `${reference.leansOn}; ${reference.kindText}`,
           kind: 'direct',
           ...counts,
@@ -76,7 +93,30 @@ export function preferReference(
         estimateDeg: offsetDeg,
         standingMisalignmentDeg: standingDeg,
       })),
+      furtherDays: further.days,
+      furtherNote: further.note,
       ...counts,
     },
   }
+}
+
+/** Power reads d with an exponent, a reference with none: only what no exponent of the range brings together is apart. */
+function disagreeAtEveryExponent(
+  reference: ReferenceOffset,
+  { standing }: StaticOffsetAnswer,
+  settings: ScoringSettings,
+): boolean {
+  if (!standing) return false
+  const { given, low, high } = exponentDoubt(settings)
+  const meanVaneDeg = standing.standingDeg - standing.offsetDeg
+  const [from, to] = standing.standingInterval95GivenExponentDeg
+  for (let k = 0; k <= EXPONENTS; k++) {
+    const scale = given / (low + (k / EXPONENTS) * (high - low))
+    const byPower = {
+      offsetDeg: wrap180(standing.standingDeg * scale - meanVaneDeg),
+      halfWidthDeg: ((to - from) / 2) * scale,
+    }
+    if (!disagree(reference, byPower)) return false
+  }
+  return true
 }

@@ -3,6 +3,7 @@ import type { DayWeights } from '../../kernel/stats/index.ts'
 import { correctSpeed, type TurbineFrame } from '../../frame/index.ts'
 import type { ScoringSettings, TurbineSheet } from '../../sheet/index.ts'
 import type { TurbineResponse } from '../neighbours/anemometer-response.ts'
+import { exponentDoubt, withExponentDoubt } from './exponent-doubt.ts'
 import { furtherDays } from './further-days.ts'
 import { disagree, type FarmEstimate } from '../neighbours/farm-estimates.ts'
 import { fitOffset, offsetAtExponent } from './offset-fit.ts'
@@ -47,6 +48,10 @@ export interface StaticOffsetAnswer {
     readonly offsetDeg: number
     readonly standingDeg: number
     readonly standingInterval95Deg: readonly [number, number]
+    /** Were the exponent in force known to be the true one. */
+    readonly standingInterval95GivenExponentDeg: readonly [number, number]
+    /** Exponents that the ends of standingInterval95Deg go with. */
+    readonly endExponents: readonly [number, number]
   } | null
   readonly failure: { code: string; text: string } | null
 }
@@ -56,7 +61,8 @@ export interface StaticOffsetAnswer {
  *
  * Days, not rows, are taken as independent: whole days are resampled in blocks of 1, 2 and 4, the levels refitted in each
  * resample; the widest of the three half-widths counts, with a t quantile for the number of blocks. To it come, as the
- * root of the sum of squares, what is not known of the anemometer's response, and what slow vane noise may hide.
+ * root of the sum of squares, what is not known of the anemometer's response, and what slow vane noise may hide. What is
+ * not known of the exponent then moves the ends, mostly away from 0.
  *
  * @param block  a sensor that forbids an estimate, if any.
  * @returns null in the sheet, with `failure`, when there are too few rows or days, the vane does not vary, or a sensor blocks.
@@ -91,9 +97,17 @@ export function staticOffset(
   const offsetDeg = wrap180(fit.offset * DEG_PER_RAD - rows.centreDeg)
   const standingDeg = wrap180(offsetDeg + vane.meanDeg)
   const dilution = DILUTION_SHARE * Math.abs(standingDeg)
-  const around = (centre: number, half: number): [number, number] => [centre - half, centre + half]
-  const interval = around(offsetDeg, Math.hypot(statistical.offset, response, dilution))
-  const standingInterval = around(standingDeg, Math.hypot(statistical.standing, response, dilution))
+  const offsetHalf = Math.hypot(statistical.offset, response, dilution)
+  const standingHalf = Math.hypot(statistical.standing, response, dilution)
+  const doubt = exponentDoubt(settings)
+  const doubted = withExponentDoubt(standingDeg, standingHalf, doubt)
+  // An exponent scales m, whichever way the mean vane is taken off to get d.
+  const intervalOf = (ofDeg: number, half: number): [number, number] => {
+    const [low, high] = withExponentDoubt(wrap180(ofDeg + vane.meanDeg), half, doubt).interval
+    const shift = ofDeg - wrap180(ofDeg + vane.meanDeg)
+    return [low + shift, high + shift]
+  }
+  const interval = intervalOf(offsetDeg, offsetHalf)
 
   const byExponent = SHOWN_EXPONENTS.map((exponent) => {
     if (exponent === settings.exponent) return { exponent, offsetDeg, standingDeg }
@@ -105,11 +119,15 @@ export function staticOffset(
   // Neighbours' comparison shrinks with days; a response that is only bounded by a setting does not.
   const shrinking = anemometer.measured ? Math.hypot(statistical.standing, response) : statistical.standing
   const fixed = anemometer.measured ? dilution : Math.hypot(response, dilution)
-  const further = furtherDays(standingDeg, { shrinking, fixed }, usedDays, settings.actionThresholdDeg)
+  const further = furtherDays(standingDeg, { shrinking, fixed }, usedDays, {
+    thresholdDeg: settings.actionThresholdDeg,
+    doubt,
+  })
   const method = anemometer.measured
     ? 'power against vane, own anemometer corrected for its response'
     : 'power against vane, own anemometer'
-  const own = { offsetDeg, halfWidthDeg: Math.hypot(statistical.offset, response, dilution) }
+  // All of them read the same power with the same exponent, which therefore cannot part them.
+  const own = { offsetDeg, halfWidthDeg: offsetHalf }
   const others = request.farmEstimates ?? []
   const apart = others.filter((other) => disagree(own, other))
   return {
@@ -122,20 +140,35 @@ export function staticOffset(
         ? null
         : `estimates differ beyond chance: ${method} ${offsetDeg.toFixed(1)}, ` +
           apart.map((other) => `${other.method} ${other.offsetDeg.toFixed(1)}`).join(', '),
-    standing: { offsetDeg, standingDeg, standingInterval95Deg: standingInterval },
+    standing: {
+      offsetDeg,
+      standingDeg,
+      standingInterval95Deg: doubted.interval,
+      standingInterval95GivenExponentDeg: around(standingDeg, standingHalf),
+      endExponents: doubted.endExponents,
+    },
     sheet: {
       ...emptySheet(frame, counts),
       estimateDeg: offsetDeg,
       interval95Deg: interval,
+      interval95GivenExponentDeg: around(offsetDeg, offsetHalf),
       standingMisalignmentDeg: standingDeg,
-      standingInterval95Deg: standingInterval,
-      intervalParts: { statistical: statistical.standing, response, exponent: 0, instrument: 0, dilution },
+      standingInterval95Deg: [...doubted.interval],
+      standingInterval95GivenExponentDeg: around(standingDeg, standingHalf),
+      intervalParts: {
+        statistical: statistical.standing,
+        response,
+        exponent: doubted.part,
+        instrument: 0,
+        dilution,
+      },
       method,
       estimates: [
         {
           method,
           estimateDeg: offsetDeg,
           interval95Deg: interval,
+          interval95GivenExponentDeg: around(offsetDeg, offsetHalf),
           leansOn: anemometer.text,
           kind: 'slope' as const,
           ...counts,
@@ -143,7 +176,8 @@ export function staticOffset(
         ...others.map((other) => ({
           method: other.method,
           estimateDeg: other.offsetDeg,
-          interval95Deg: around(other.offsetDeg, other.halfWidthDeg),
+          interval95Deg: intervalOf(other.offsetDeg, other.halfWidthDeg),
+          interval95GivenExponentDeg: around(other.offsetDeg, other.halfWidthDeg),
           leansOn: other.leansOn,
           kind: 'slope' as const,
           rows: other.rows,
@@ -160,6 +194,10 @@ export function staticOffset(
       bins: powerByVane(frame),
     },
   }
+}
+
+function around(centre: number, half: number): [number, number] {
+  return [centre - half, centre + half]
 }
 
 /** The response that the fit takes: a stated one, else what neighbours tell, else none with the setting's spread. */
@@ -246,8 +284,10 @@ function emptySheet(
   return {
     estimateDeg: null,
     interval95Deg: [null, null],
+    interval95GivenExponentDeg: [null, null],
     standingMisalignmentDeg: null,
     standingInterval95Deg: [null, null],
+    standingInterval95GivenExponentDeg: [null, null],
     intervalParts: { statistical: null, response: null, exponent: null, instrument: null, dilution: null },
     method: null,
     estimates: [],

@@ -23,7 +23,7 @@ function answers(numbers: Record<string, Float64Array>) {
   const days = frame.calendar.days
   const dayWeights = dayBlocks(days, settings)
   const byPower = staticOffset(frame.turbines[0]!, { settings, dayWeights, days })
-  return { byPower, both: preferReference(byPower, referenceOffset(byPower.frame, dayWeights)) }
+  return { byPower, both: preferReference(byPower, referenceOffset(byPower.frame, dayWeights), settings) }
 }
 
 test('a reference on the nacelle comes first, power stays beside it, and both hold the truth', () => {
@@ -46,9 +46,15 @@ test('with a reference the exponent has no say in d', () => {
 })
 
 test('a reference that is mounted askew by far differs from power beyond chance, and that is said', () => {
-  const askew = turbine.columns.reference_yaw_error.map((angle) => angle + 12)
+  const askew = turbine.columns.reference_yaw_error.map((angle) => angle - 12)
   const { both } = answers({ ...turbine.columns, reference_yaw_error: askew })
   expect(both.disagreement).toMatch(/differ beyond chance/)
+})
+
+test('a reference further out than power by no more than a lower exponent explains is no contradiction', () => {
+  // 6 degrees read at an exponent of 3 are 9 at 2.
+  const further = turbine.columns.reference_yaw_error.map((angle) => angle + 3)
+  expect(answers({ ...turbine.columns, reference_yaw_error: further }).both.disagreement).toBeNull()
 })
 
 test('without a reference the answer stays as it is', () => {
