@@ -26,3 +26,5 @@ export {
   type HighRateRows,
 } from './high-rate/high-rate-rows.ts'
 export { examineDay, type HighRateDay, type HighRateRecord } from './high-rate/examine-day.ts'
+export { vaneAndAnemometer } from './sensors/vane-and-anemometer.ts'
+export { joinReports, type SensorReport } from './sensors/sensor-report.ts'

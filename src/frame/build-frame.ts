@@ -6,6 +6,8 @@ import { acrossNorth, type AcrossNorth, type LoggedAngle } from './across-north.
 import { buildCalendar, type Calendar } from './calendar.ts'
 import { curveAndRange } from './curve-and-range.ts'
 import type { Frame, TurbineColumns, TurbineFrame } from './frame.ts'
+import { icedAnemometers, type IcedAnemometer } from './iced-anemometer.ts'
+import { sensorSpells } from './sensor-spells.ts'
 import { setAsideBeforeCurve } from './set-aside.ts'
 import { conventionalVane, type ConventionalVane } from './vane-convention.ts'
 
@@ -34,13 +36,20 @@ export function buildFrame(farm: readonly TurbineColumns[], request: FrameReques
   }
   const calendar = buildCalendar(request.site.timezone ?? 'UTC', fromMs, toMs)
   const setups = new Map((request.site.turbines ?? []).map((setup) => [setup.turbine, setup]))
+  const iced = icedAnemometers(farm, intervalMs)
   return {
     intervalS: request.intervalS,
     fromMs,
     toMs,
     calendar,
-    turbines: farm.map((columns) =>
-      buildTurbine(columns, setups.get(columns.turbine) ?? { turbine: columns.turbine }, calendar, request),
+    turbines: farm.map((columns, k) =>
+      buildTurbine(
+        columns,
+        setups.get(columns.turbine) ?? { turbine: columns.turbine },
+        calendar,
+        request,
+        iced[k]!,
+      ),
     ),
   }
 }
@@ -50,6 +59,7 @@ function buildTurbine(
   setup: TurbineSetup,
   calendar: Calendar,
   request: FrameRequest,
+  iced: IcedAnemometer,
 ): TurbineFrame {
   const { time, numbers, texts } = columns
   const { settings } = request
@@ -58,7 +68,17 @@ function buildTurbine(
   const windSpeed = numbers['wind_speed'] ?? missing
   const power = numbers['power'] ?? missing
   const angles = anglesOf(columns, setup, power, request.intervalS * 1000)
-  const { vane, nacelle, windDirection } = angles
+  const { nacelle, windDirection } = angles
+  const intervalMs = request.intervalS * 1000
+  const faults = sensorSpells(
+    columns,
+    angles.vane,
+    angles.convention,
+    setup.vane?.sign ?? 1,
+    iced,
+    intervalMs,
+  )
+  const vane = angles.vane.map((value, i) => (faults.vaneFrozen[i] === 1 ? NaN : value))
   const indicatedDirection = nacelle
     ? nacelle.map((position, i) => wrap360(position + vane[i]!))
     : (windDirection?.map(wrap360) ?? missing)
@@ -72,7 +92,7 @@ function buildTurbine(
   const { reason, running, limited } = setAsideBeforeCurve(
     {
       time,
-      intervalMs: request.intervalS * 1000,
+      intervalMs,
       ratedPowerKw: rated.powerKw,
       windSpeed,
       vane,
@@ -86,6 +106,8 @@ function buildTurbine(
       nacelleMax: numbers['nacelle_position_max'],
       direction: nacelle || windDirection ? indicatedDirection : undefined,
       averagedAcrossNorth: angles.averaged,
+      sensorFault: faults.fault,
+      unmeasured: faults.unmeasured,
       coverage: numbers['coverage'],
       status: texts['status'],
       runningStatus: request.site.runningStatus,
@@ -139,16 +161,22 @@ function buildTurbine(
     day,
     night,
     windSpeed,
+    windSpeed2: numbers['wind_speed_2'] ?? missing,
+    airTemperature: numbers['air_temperature'] ?? missing,
+    rotorSpeed: numbers['rotor_speed'] ?? missing,
     density: air.density,
     normalisedSpeed: normalised,
     turbulence,
     vane,
     vaneSource: angles.convention.source,
     vaneCentreDeg: angles.convention.centreDeg,
+    vaneRead: angles.vane,
+    vane2: faults.vane2,
     vaneSd: angles.convention.vaneSd,
     vaneMin: angles.convention.vaneMin,
     vaneMax: angles.convention.vaneMax,
     averagedAcrossNorth: angles.counts,
+    spells: faults.spells,
     power,
     nacellePosition: nacelle ?? missing,
     referenceYawError: numbers['reference_yaw_error'] ?? missing,

@@ -2,6 +2,7 @@ import type { MeasuredCurve } from '../kernel/wind/index.ts'
 import type { SetAsideReason, TurbineSetup } from '../sheet/index.ts'
 import type { AcrossNorthChannel } from './across-north.ts'
 import type { Calendar } from './calendar.ts'
+import type { SensorSpell } from './still-spells.ts'
 
 /** Clean rows of one turbine as they come from storage, sorted by time. */
 export interface TurbineColumns {
@@ -29,17 +30,26 @@ export interface TurbineFrame {
   readonly night: Uint8Array
   /** As read, m/s. */
   readonly windSpeed: Float64Array
+  readonly windSpeed2: Float64Array
+  /** Degrees C. */
+  readonly airTemperature: Float64Array
+  /** As read, rpm. */
+  readonly rotorSpeed: Float64Array
   /** kg/m3; NaN where there is no air temperature. */
   readonly density: Float64Array
   /** Normalised to 1.225 kg/m3 where the density is known, else as read; m/s. */
   readonly normalisedSpeed: Float64Array
   /** SD of the wind speed inside the interval over its mean, no unit. */
   readonly turbulence: Float64Array
-  /** Sign as DESIGN: positive = wind from clockwise of the axis; degrees, [-180, 180). */
+  /** Sign as DESIGN: positive = wind from clockwise of the axis; degrees, [-180, 180). NaN inside frozen spells. */
   readonly vane: Float64Array
   /** What `vane` was made of, and what the logged angle reads when the rotor faces the wind. */
   readonly vaneSource: 'vane' | 'wind direction less nacelle position' | 'none'
   readonly vaneCentreDeg: 0 | 180
+  /** The vane as it was read, frozen spells included, in the same sign; what the tests of the sensor look at. */
+  readonly vaneRead: Float64Array
+  /** The second vane, turned as the first; degrees, [-180, 180). */
+  readonly vane2: Float64Array
   /** SD of the vane inside the interval, degrees. */
   readonly vaneSd: Float64Array
   /** Lowest and highest vane inside the interval, turned as the vane is, degrees; may run beyond half a turn. */
@@ -57,10 +67,17 @@ export interface TurbineFrame {
   readonly indicatedDirection: Float64Array
   /** Readings that were averaged across the end of their scale, by channel: NaN in the frame, their rows set aside. */
   readonly averagedAcrossNorth: Readonly<Record<AcrossNorthChannel, number>>
+  /** Spells in which a sensor gave no measurement: their rows are set aside as `sensor-fault`. */
+  readonly spells: {
+    readonly vaneFrozen: readonly SensorSpell[]
+    readonly anemometerStuck: readonly SensorSpell[]
+    /** `value`: the reading as a share of what it usually is against the neighbours. */
+    readonly anemometerIced: readonly SensorSpell[]
+  }
   readonly densitySource: string
   /** 0 = used for the static offset, else 1 + index into SET_ASIDE_REASONS. */
   readonly reason: Uint8Array
-  /** 1 = wind speed, vane and power are there, the interval is complete, not excluded, and the turbine produces. */
+  /** 1 = wind speed, vane and power are there and measured, the interval is complete, not excluded, and the turbine produces. */
   readonly running: Uint8Array
   /** 1 = held below what the wind offers, by set-point, pitch or category. */
   readonly limited: Uint8Array

@@ -12,3 +12,4 @@ export {
 } from './set-aside.ts'
 export { correctSpeed } from './correct-speed.ts'
 export { reasonsSince, rowsSince } from './rows-since.ts'
+export type { SensorSpell } from './still-spells.ts'

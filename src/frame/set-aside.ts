@@ -38,6 +38,10 @@ export interface SetAsideInput {
   readonly direction?: Float64Array | undefined
   /** 1 = an angle of the row was averaged across the end of its scale. */
   readonly averagedAcrossNorth?: Uint8Array | undefined
+  /** 1 = vane or anemometer was frozen, stuck or iced, or became so or free again within the row. */
+  readonly sensorFault?: Uint8Array | undefined
+  /** 1 = ... for the whole row: it has no vane, or no wind speed, that was measured. */
+  readonly unmeasured?: Uint8Array | undefined
   /** Of intervals made of high-rate rows: rows that are there over rows due, 0 to 1. */
   readonly coverage?: Float64Array | undefined
   readonly status?: readonly (string | null)[] | undefined
@@ -51,7 +55,7 @@ export interface SetAsideInput {
 export interface EarlySetAside {
   /** 0 = still used, else a code of REASON_CODE. */
   readonly reason: Uint8Array
-  /** 1 = wind speed, vane and power are there, the interval is complete, not excluded, and the turbine produces. */
+  /** 1 = wind speed, vane and power are there and measured, the interval is complete, not excluded, and the turbine produces. */
   readonly running: Uint8Array
   /** 1 = held below what the wind offers, by set-point, pitch or category; whatever else holds. */
   readonly limited: Uint8Array
@@ -79,7 +83,8 @@ export function setAsideBeforeCurve(input: SetAsideInput, settings: ScoringSetti
     const averaged = input.averagedAcrossNorth?.[i] === 1
     const hasVane = !Number.isNaN(input.vane[i]!)
     const hasOthers = !Number.isNaN(input.windSpeed[i]!) && !Number.isNaN(input.power[i]!)
-    if (!hasOthers || !(hasVane || averaged)) set(i, 'missing-channel')
+    const unmeasured = input.unmeasured?.[i] === 1
+    if (!hasOthers || !(hasVane || averaged || unmeasured)) set(i, 'missing-channel')
     if (averaged) set(i, 'averaged-across-north')
     const incomplete = input.coverage !== undefined && !(input.coverage[i]! >= COVERAGE_LEAST)
     if (incomplete) set(i, 'incomplete-interval')
@@ -88,7 +93,7 @@ export function setAsideBeforeCurve(input: SetAsideInput, settings: ScoringSetti
     if (excluded) set(i, 'excluded')
     if (stopped[i] === 1) set(i, 'not-running')
     // A bad nacelle reading leaves vane and power as they are: such a row still counts for the yaw error.
-    if (hasOthers && hasVane && !incomplete && !excluded && stopped[i] === 0) running[i] = 1
+    if (hasOthers && hasVane && !unmeasured && !incomplete && !excluded && stopped[i] === 0) running[i] = 1
 
     const previous = before[i]!
     const next = after[i]!
@@ -101,6 +106,7 @@ export function setAsideBeforeCurve(input: SetAsideInput, settings: ScoringSetti
       limited[i] = 1
       set(i, 'limited')
     }
+    if (input.sensorFault?.[i] === 1) set(i, 'sensor-fault')
 
     if (previous >= 0) {
       const turned = input.direction

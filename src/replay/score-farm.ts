@@ -4,6 +4,7 @@ import {
   headingSteps,
   signChecks,
   type HighRateRecord,
+  vaneAndAnemometer,
   type Neighbours,
   type TurbineEvent,
 } from '../analysis/index.ts'
@@ -50,6 +51,7 @@ export async function scoreFarm(
   const signs = signChecks(frame)
   const clocks = clockLags(frame)
   const headings = headingSteps(frame)
+  const sensors = vaneAndAnemometer(frame)
   const { intervalS: rowS, fromMs, toMs, turbines: rows } = frame
   const neighbours =
     settings.assumedResponsePctPerDeg === null
@@ -74,8 +76,9 @@ export async function scoreFarm(
         sign: signs[i]!,
         heading: headings[i] ?? null,
         events: eventsOf(site, turbine),
-        farmFindings: clocks[i] ?? [],
         highRate: highRate.find((record) => record.turbine === turbine.turbine) ?? null,
+        farmFindings: [...(clocks[i] ?? []), ...sensors[i]!.findings],
+        farmTests: sensors[i]!.tests,
       })
       onTurbine(++done, frame.turbines.length)
       return sheet

@@ -44,6 +44,8 @@ export interface ScoreTask {
   readonly farmFindings: TurbineSheet['sensors']
   /** What the high-rate rows behind the intervals told; null = the log holds none. */
   readonly highRate: HighRateRecord | null
+  /** Which tests of sensors ran before the turbines were scored. */
+  readonly farmTests: readonly TurbineSheet['sensorTests'][number][]
 }
 
 /** Runs the questions about one turbine, in order, and writes its part of the sheet. NaN stands for missing. */
@@ -104,7 +106,7 @@ export function scoreTurbine(task: ScoreTask): TurbineSheet {
       ...segment.findings,
       ...task.farmFindings,
     ],
-    sensorTests: [],
+    sensorTests: [...task.farmTests],
     attribution: { text: '', evidence: [], wouldSettle: [] },
     yawActivity: {},
     advice: adviceFor(verdict, offset),

@@ -26,6 +26,7 @@ export function benchScoring(print: (text: string) => void): void {
       farmEstimates: [],
       sign: signChecks(frame)[0]!,
       farmFindings: [],
+      farmTests: [],
       heading: null,
       events: [],
       highRate: null,

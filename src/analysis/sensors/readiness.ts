@@ -19,7 +19,7 @@ export function readiness(frame: TurbineFrame): Block | null {
   const n = frame.time.length
   if (n === 0) return null
   for (const [channel, sensor, values] of [
-    ['vane', 'vane', frame.vane],
+    ['vane', 'vane', frame.vaneRead],
     ['wind_speed', 'anemometer', frame.windSpeed],
     ['power', 'power', frame.power],
   ] as const) {
@@ -28,7 +28,8 @@ export function readiness(frame: TurbineFrame): Block | null {
       return { code: `${sensor}-missing`, text, finding: finding(frame, sensor, 'not-usable', text) }
     }
   }
-  const running = frame.vane.filter((_, i) => frame.running[i] === 1)
+  // A frozen vane takes its rows out of those that count as running.
+  const running = frame.vaneRead.filter((_, i) => frame.running[i] === 1 || frame.power[i]! > 0)
   if (running.length >= FEW_ROWS && robustSd(running) < STILL_VANE_DEG) {
     const text = `the vane does not move: ${running.length} running rows spread less than ${STILL_VANE_DEG} degrees`
     return { code: 'vane-still', text, finding: finding(frame, 'vane', 'frozen', text) }
