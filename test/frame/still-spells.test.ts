@@ -121,7 +121,7 @@ test('an anemometer that reads half against its neighbours near freezing carries
   const iced = (temperatureC: number) =>
     frameOf(
       farm
-        .map((one) => ({
+        .map((one): TurbineColumns => ({
           ...one,
           numbers: {
             ...one.numbers,
