@@ -67,6 +67,7 @@ export function anemometerResponse(
     others: logSpeed,
     x: vane,
     otherX: vane,
+    unrest: comparison.turbulence,
   }
   const plain = resampleAll(neighbourSlopes({ ...question, nuisance: [] }), dayWeights)
   const lagged =

@@ -6,8 +6,8 @@ import { farmDirection, type FarmDirection } from './farm-direction.ts'
 import { farmGrid, onGrid, type FarmGrid, type GridChannel } from './farm-grid.ts'
 import { freeStream, type FreeStream } from './free-stream.ts'
 
-/** Wind speeds of the farm, m/s, between which anemometers are compared. */
-const COMPARED_MS = [4.5, 14] as const
+/** Wind speeds of the farm, m/s, between which anemometers are compared: somewhat wider than power is, as rows are dear. */
+const COMPARED_MS = [4, 16] as const
 /** Local direction stands in the regression at these distances in intervals: now, three before, one after. */
 const LAGS = [-3, -2, -1, 0, 1] as const
 
@@ -27,6 +27,8 @@ export interface FarmComparison {
   readonly farmSpeed: Float64Array
   /** Local direction at each lag, [l][i][t]; empty where no nacelle position is logged. */
   readonly localDirection: readonly GridChannel[]
+  /** Median turbulence intensity of the farm, no unit, [t]; NaN where no SD of the wind speed is logged. */
+  readonly turbulence: Float64Array
 }
 
 /**
@@ -63,6 +65,7 @@ export function farmComparison(
     steady,
     logSpeed,
     vane: onGrid(grid, (turbine, row) => turbine.vane[row]!),
+    turbulence: mediansOver(onGrid(grid, (turbine, row) => turbine.turbulence[row]!)),
     farmSpeed: farmLogSpeed.map((value) => Math.exp(value)),
     localDirection: hasPosition ? LAGS.map((lag) => shifted(direction.localDeg, lag)) : [],
   }
@@ -98,4 +101,9 @@ function steadyIntervals(
 /** What stands `lag` intervals later (earlier for a negative lag). */
 function shifted(values: GridChannel, lag: number): GridChannel {
   return values.map((series) => series.map((_, t) => series[t + lag] ?? NaN))
+}
+
+/** Median over turbines at each interval. */
+function mediansOver(values: GridChannel): Float64Array {
+  return Float64Array.from(values[0] ?? [], (_, t) => medianOf(values.map((series) => series[t]!)))
 }

@@ -55,7 +55,13 @@ export function farmEstimates(
   const neighbourWind = comparison.logSpeed.map((values, i) =>
     values.map((value, t) => value - responseOf(i) * comparison.vane[i]![t]!),
   )
-  const common = { grid, days: comparison.days, directionDeg: direction.consensusDeg, nuisance }
+  const common = {
+    grid,
+    days: comparison.days,
+    directionDeg: direction.consensusDeg,
+    nuisance,
+    unrest: comparison.turbulence,
+  }
   const third = settings.exponent / 3
 
   const solve = (byRatio: boolean): { offset: Float64Array; slopes: NeighbourSlopes | null } => {

@@ -18,6 +18,11 @@ const SECTORS = 360 / SECTOR_DEG
 const LEVEL_ROUNDS = 4
 const ROBUST_ROUNDS = 4
 const CLIP = 3
+/** Noise is measured in at most so many groups of rows alike in unrest, of at least so many rows. */
+const MOST_UNREST_GROUPS = 10
+const ROWS_OF_UNREST_GROUP = 100
+/** A group quieter than this share of all is not believed. */
+const LEAST_SHARE_OF_SD = 0.2
 /** Rows of a turbine below which it is not compared. */
 const MIN_ROWS = 200
 
@@ -36,6 +41,8 @@ export interface NeighbourQuestion {
   readonly otherX: GridChannel | null
   /** Regressors with a coefficient of no interest, [l][i][t]; the neighbours' mean is taken out of each. */
   readonly nuisance: readonly GridChannel[]
+  /** What the noise of an interval grows with, [t]: rows count by the inverse of the variance at its level. NaN = not known. */
+  readonly unrest: Float64Array
 }
 
 export interface NeighbourSlope {
@@ -155,15 +162,14 @@ function compareOne(
   const places = { position: Int32Array.from(at), chain: day }
   const layout = dayCells(day, cell, { days: question.days, cells: SECTORS })
 
-  const raw = [x, y, ...z].map((values) => demeaned(values, cell, SECTORS))
-  const [freeX, freeY] = partialOut(raw) as [Float64Array, Float64Array]
-  const slope = dot(freeX, freeY) / dot(freeX, freeX)
-  const residual = new Float64Array(n)
-  for (let r = 0; r < n; r++) residual[r] = freeY[r]! - slope * freeX[r]!
+  const even = new Float64Array(n).fill(1)
+  const first = plainFit([x, y, ...z], cell, even)
+  const rowSd = sdByUnrest(first.residual, at, question.unrest)
+  const { series, freeX, residual } = plainFit([x, y, ...z], cell, rowSd)
   const scale = robustSd(residual)
   for (let r = 0; r < n; r++) residual[r] = Math.max(-CLIP, Math.min(CLIP, residual[r]! / scale))
   const noise = serialNoise(residual, places)
-  const [whiteX, whiteY] = partialOut(whiten(raw, places, noise)) as [Float64Array, Float64Array]
+  const [whiteX, whiteY] = partialOut(whiten(series, places, noise)) as [Float64Array, Float64Array]
   const weight = new Float64Array(n).fill(1)
   let sums = dayCellSums(layout, whiteX, whiteY, weight)
   let stretch = 1
@@ -179,7 +185,14 @@ function compareOne(
     stretch = robustStretch(residual, whiteX, huberWeight)
     sums = dayCellSums(layout, whiteX, whiteY, weight)
   }
-  if (question.otherX !== null) couple(question.otherX, prepared, { i, at, x: freeX }, coupling)
+  if (question.otherX !== null) {
+    couple(
+      question.otherX,
+      prepared,
+      { i, at, x: divided(freeX, rowSd), spread: dot(freeX, freeX) },
+      coupling,
+    )
+  }
   return { sums, direct: slopeWithinCells(sums), stretch, rows: n, days: new Set(day).size }
 }
 
@@ -189,25 +202,55 @@ function meanOfOthers(all: Totals, own: Float64Array, isNeighbour: Float64Array,
   return count > 0 ? (all.sum[t]! - (counted ? own[t]! : 0)) / count : 0
 }
 
+/** Least squares of y on x with levels and nuisance taken out, rows counted by 1 / rowSd^2; all series over rowSd. */
+function plainFit(
+  raw: readonly Float64Array[],
+  cell: Int32Array,
+  rowSd: Float64Array,
+): { series: Float64Array[]; freeX: Float64Array; residual: Float64Array } {
+  const series = raw.map((values) => divided(withoutCellMeans(values, cell, rowSd), rowSd))
+  const [freeX, freeY] = partialOut(series) as [Float64Array, Float64Array]
+  const slope = dot(freeX, freeY) / dot(freeX, freeX)
+  return { series, freeX, residual: freeY.map((value, r) => value - slope * freeX[r]!) }
+}
+
+/** SD of the residuals at each row's level of unrest, from groups of rows alike in it; that of all rows where it is not known. */
+function sdByUnrest(residual: Float64Array, at: readonly number[], unrest: Float64Array): Float64Array {
+  const all = robustSd(residual)
+  const sd = new Float64Array(residual.length).fill(all > 0 ? all : 1)
+  const order = [...at.keys()]
+    .filter((r) => !Number.isNaN(unrest[at[r]!]!))
+    .sort((a, b) => unrest[at[a]!]! - unrest[at[b]!]!)
+  const groups = Math.min(MOST_UNREST_GROUPS, Math.floor(order.length / ROWS_OF_UNREST_GROUP))
+  for (let g = 0; g < groups; g++) {
+    const members = order.slice(
+      Math.floor((g * order.length) / groups),
+      Math.floor(((g + 1) * order.length) / groups),
+    )
+    const own = robustSd(members.map((r) => residual[r]!))
+    if (own > LEAST_SHARE_OF_SD * all) for (const r of members) sd[r] = own
+  }
+  return sd
+}
+
 /**
  * How much of each neighbour's coefficient is in the slope of turbine i: slope of the neighbour's share of the mean on x.
- * `x` has its levels taken out, so that those of the neighbour need not be.
+ * `x` has its levels taken out, so that those of the neighbour need not be; `spread` is the sum of its weighted squares.
  */
 function couple(
   otherX: GridChannel,
   prepared: Prepared,
-  one: { i: number; at: readonly number[]; x: Float64Array },
+  one: { i: number; at: readonly number[]; x: Float64Array; spread: number },
   coupling: Float64Array,
 ): void {
   const { others, sum } = prepared
-  const { i, at, x } = one
+  const { i, at, x, spread } = one
   const k = others.length
   const share = new Float64Array(at.length)
   for (let r = 0; r < at.length; r++) {
     const t = at[r]!
     share[r] = x[r]! / (sum.count[t]! - (Number.isNaN(others[i]![t]!) ? 0 : 1))
   }
-  const spread = dot(x, x)
   for (let j = 0; j < k; j++) {
     if (j === i) continue
     let joint = 0
@@ -280,16 +323,19 @@ function sectorMeans(
   return sum.map((value, s) => (count[s]! > 0 ? value / count[s]! : 0))
 }
 
-function demeaned(values: Float64Array, cell: Int32Array, cells: number): Float64Array {
-  const sum = new Float64Array(cells)
-  const count = new Float64Array(cells)
+function withoutCellMeans(values: Float64Array, cell: Int32Array, rowSd: Float64Array): Float64Array {
+  const sum = new Float64Array(SECTORS)
+  const count = new Float64Array(SECTORS)
   for (let r = 0; r < values.length; r++) {
-    sum[cell[r]!]! += values[r]!
-    count[cell[r]!]!++
+    const weight = 1 / (rowSd[r]! * rowSd[r]!)
+    sum[cell[r]!]! += weight * values[r]!
+    count[cell[r]!]! += weight
   }
-  const out = new Float64Array(values.length)
-  for (let r = 0; r < values.length; r++) out[r] = values[r]! - sum[cell[r]!]! / count[cell[r]!]!
-  return out
+  return values.map((value, r) => value - sum[cell[r]!]! / count[cell[r]!]!)
+}
+
+function divided(values: Float64Array, by: Float64Array): Float64Array {
+  return values.map((value, r) => value / by[r]!)
 }
 
 /** Series 0 and 1, each minus its projection on the ones behind. */
