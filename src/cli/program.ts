@@ -1,4 +1,5 @@
 import { Command, Option } from 'commander'
+import { faultsHelp } from './fault-options.ts'
 import type { CommandParts, SettingFlags } from './parts.ts'
 import { replayCommand, type ReplayFlags } from './replay-command.ts'
 import { sweepCommand, type SweepFlags } from './sweep-command.ts'
@@ -175,6 +176,24 @@ function addSimulate(program: Command, parts: CommandParts): void {
     .option('--name <name>', 'name of the site')
     .option('--start <date>', 'first day (UTC), such as 2026-03-01')
     .option('--random', 'draw controller, sensors, weather and layout from ranges too')
+    .option(
+      '--fault <fault>',
+      'TURBINE:KIND:FROM:TO[:SIZE[:PLACE]], times in UTC; may be given again',
+      collect,
+      [],
+    )
+    .option(
+      '--correction <correction>',
+      "TURBINE:AT:DEGREES[:right|wrong-sign|not-entered], of the controller's vane offset; may be given again",
+      collect,
+      [],
+    )
+    .addOption(
+      new Option('--vane-logged <which>', "the vane before or after the controller's correction").choices([
+        'beforeCorrection',
+        'afterCorrection',
+      ]),
+    )
     .option('--demo', 'the farm of data-demo/; no other option but --out is taken')
     .addOption(logLevelOption())
     .addHelpText(
@@ -183,6 +202,12 @@ function addSimulate(program: Command, parts: CommandParts): void {
 Examples:
   yawledger simulate --out made-up --turbines 8 --days 30 --seed 7
   yawledger simulate --out fast --turbines 1 --days 3 --rate 1
+  yawledger simulate --out faulty --fault Q03:frozen:2026-03-05:2026-03-08 --fault Q05:nacelle-shift:2026-03-12T04:00Z:2026-04-01:24
+  yawledger simulate --out corrected --days 60 --correction Q04:2026-03-20T10:00Z:6
+
+Kinds of faults, and their numbers with what they are when none is given. A kind may be written by its end where no
+other has it (frozen). The truth file holds every fault with its turbine, kind, start, end and size.
+${faultsHelp()}
 
 ${EXIT_CODES}`,
     )

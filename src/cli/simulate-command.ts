@@ -2,7 +2,14 @@ import type { Command } from 'commander'
 import { Type } from 'typebox'
 import { InputError } from '../errors.ts'
 import { checkShape } from '../setup/index.ts'
-import { DEMO_SCENARIO, randomScenario, writeSimulation, type FarmScenario } from '../simulate/index.ts'
+import {
+  DEMO_SCENARIO,
+  farmScenario,
+  randomScenario,
+  writeSimulation,
+  type FarmScenario,
+} from '../simulate/index.ts'
+import { parseCorrection, parseFault } from './fault-options.ts'
 import type { CommandParts } from './parts.ts'
 
 export interface SimulateFlags {
@@ -15,6 +22,9 @@ export interface SimulateFlags {
   start?: string
   random?: boolean
   demo?: boolean
+  fault: string[]
+  correction: string[]
+  vaneLogged?: FarmScenario['vaneLogged']
 }
 
 /** Ranges are those of the scenario, which says what it expected; here text becomes numbers. */
@@ -48,10 +58,13 @@ export async function simulateCommand(
 
 function scenarioOf(flags: SimulateFlags, command: Command): Partial<FarmScenario> {
   if (flags.demo === true) {
-    const others = ['turbines', 'days', 'seed', 'rate', 'name', 'start', 'random']
-    const given = others.find((name) => command.getOptionValueSource(name) === 'cli')
+    const given = command.options.find(
+      (option) =>
+        !['out', 'demo', 'logLevel'].includes(option.attributeName()) &&
+        command.getOptionValueSource(option.attributeName()) === 'cli',
+    )
     if (given !== undefined)
-      throw new InputError('BAD_OPTION', `--demo: expected no --${given} beside it, got one`)
+      throw new InputError('BAD_OPTION', `--demo: expected no ${given.long!} beside it, got one`)
     return DEMO_SCENARIO
   }
   const typed = {
@@ -71,5 +84,9 @@ function scenarioOf(flags: SimulateFlags, command: Command): Partial<FarmScenari
   }
   if (checked['--name'] !== undefined) overrides.site = checked['--name']
   if (checked['--start'] !== undefined) overrides.startMs = Date.parse(`${checked['--start']}T00:00:00Z`)
+  if (flags.vaneLogged !== undefined) overrides.vaneLogged = flags.vaneLogged
+  const place = farmScenario(overrides)
+  overrides.faults = flags.fault.map((text) => parseFault(text, place))
+  overrides.corrections = flags.correction.map((text) => parseCorrection(text, place))
   return flags.random === true ? randomScenario(checked['--seed'], overrides) : overrides
 }

@@ -1,7 +1,8 @@
 import { airDensity, REFERENCE_DENSITY } from '../kernel/wind/index.ts'
 import { STOP, type Orders } from './operation.ts'
 import { PURPOSE, RandomStream } from './random.ts'
-import type { FarmScenario, TurbinePlan } from './scenario.ts'
+import type { FarmScenario } from './scenario.ts'
+import type { TurbinePlan } from './turbine-plan.ts'
 import { thrustAt, wakeDeficit } from './wake.ts'
 import { PAD_MIN, Reverting, type Weather } from './weather.ts'
 

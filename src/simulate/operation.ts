@@ -1,5 +1,6 @@
 import { PURPOSE, RandomStream } from './random.ts'
-import type { FarmScenario, LimitSpell, Spell } from './scenario.ts'
+import type { Spell } from './faults.ts'
+import type { FarmScenario, LimitSpell } from './scenario.ts'
 
 export const STOP = { none: 0, fault: 1, maintenance: 2 } as const
 

@@ -122,6 +122,8 @@ export const PURPOSE = {
   slow: 34,
   drift: 35,
   secondVane: 36,
+  vaneFault: 37,
+  nacelleFault: 38,
   logger: 40,
   blemish: 50,
   scenario: 60,

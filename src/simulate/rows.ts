@@ -93,7 +93,8 @@ export class RowMaker {
   readonly #rateS: number
   readonly #northOffsetDeg: number
   readonly #nacelleScale: 'wrapped' | 'signed' | 'wound'
-  readonly #averageAcrossNorth: boolean
+  /** The logger takes the arithmetic mean of wrapped readings. */
+  averageAcrossNorth: boolean
   readonly #stateS = new Int32Array(STATES.length)
   #row = 0
   #n = 0
@@ -133,7 +134,7 @@ export class RowMaker {
     this.#rateS = logger.rateS
     this.#northOffsetDeg = logger.northOffsetDeg
     this.#nacelleScale = logger.nacelleScale
-    this.#averageAcrossNorth = logger.averageAcrossNorth
+    this.averageAcrossNorth = logger.averageAcrossNorth
     this.#secondVane = logger.secondVane
   }
 
@@ -197,7 +198,7 @@ export class RowMaker {
       columns.vane_sd[row] = yamartinoSigma(this.#vaneSin / n, this.#vaneCos / n)
     }
     const turn = Math.atan2(this.#nacelleSin, this.#nacelleCos) * DEG_PER_RAD
-    if (this.#nacelleScale === 'wound' || this.#averageAcrossNorth) {
+    if (this.#nacelleScale === 'wound' || this.averageAcrossNorth) {
       columns.nacelle_position[row] = this.#nacelle / n
     } else {
       columns.nacelle_position[row] = this.#nacelleScale === 'signed' ? turn : wrap360(turn)

@@ -1,10 +1,18 @@
 import type { Inflow } from './inflow.ts'
-import { STOP, type Orders } from './operation.ts'
+import { AnemometerFaults } from './anemometer-faults.ts'
+import { faultsOf } from './faults.ts'
+import { NacelleFaults, type NacelleStep } from './nacelle-faults.ts'
+import type { Orders } from './operation.ts'
 import { COS_POWER_PER_DEG, cosPowerTable, powerTable, speedAtPower } from './power-curve.ts'
 import { PURPOSE, RandomStream } from './random.ts'
 import { BLOCK_S, RowMaker, Seconds, STATE, type TurbineRows } from './rows.ts'
-import { changesOf, scenarioSeconds, type FarmScenario, type TurbinePlan } from './scenario.ts'
+import { scenarioSeconds, type FarmScenario } from './scenario.ts'
+import { offsetSteps, type TurbinePlan } from './turbine-plan.ts'
+import { SecondSums, type TurbineSums } from './turbine-sums.ts'
+import { VaneFaults } from './vane-faults.ts'
 import { Reverting } from './weather.ts'
+import { behaviourChanges, yawBehaviour } from './yaw-behaviour.ts'
+import { YawController } from './yaw-controller.ts'
 
 /** Seconds between two values of the slower processes. */
 const NODE_S = 10
@@ -24,28 +32,14 @@ const ROTOR_S = 7
 const PITCH_S = 5
 const SPEED_S = 10
 const START_S = 60
+/** Tracks of an encoder disc where the scenario names none. */
+const USUAL_BITS = 8
 /** The anemometer's response is taken from the vane within this range: beyond it the flow has parted. */
 const RESPONSE_MAX_DEG = 30
-/** Cables allow so many degrees; then the turbine stops and turns back. */
-const CABLE_DEG = 900
-
-/** Sums of single seconds over the window; `clear`: running, started up, no set-point below rated. */
-export interface TurbineSums {
-  producedMwh: number
-  clearHours: number
-  clearMwh: number
-  /** Energy not made in clear seconds because of the standing yaw error d / k, MWh: power at g - d/k less power at g. */
-  lostStaticMwh: number
-  /** ... because of the rest: power at yaw error 0 less power at g - d/k. */
-  lostDynamicMwh: number
-  /** Clear seconds below 95 % of rated power: hours, mean true yaw error, its standard deviation, mean of the logged vane. */
-  belowRatedHours: number
-  yawErrorMeanDeg: number
-  yawErrorSdDeg: number
-  vaneMeanDeg: number
-  /** Number of yaw moves, and degrees travelled. */
-  yawMoves: number
-  yawTravelDeg: number
+/** A turbine's time: its sums, and when the error of its nacelle position took another value of its own accord. */
+export interface TurbineRun {
+  sums: TurbineSums
+  nacelleSteps: readonly NacelleStep[]
 }
 
 /**
@@ -58,7 +52,7 @@ export function runTurbine(
   inflow: Inflow,
   orders: Orders,
   rows: TurbineRows,
-): TurbineSums {
+): TurbineRun {
   const seconds = scenarioSeconds(scenario)
   const rated = scenario.ratedPowerKw
   const table = powerTable(rated, scenario.ratedWindMs)
@@ -99,31 +93,36 @@ export function runTurbine(
   const weight600 = Math.sqrt(SHARE_600S)
   const keep5 = Math.exp(-1 / 5)
   const fresh5 = Math.sqrt(1 - keep5 * keep5)
-  const keepYaw = Math.exp(-2 / scenario.yawAverageS)
-  const keepStop = Math.exp(-1 / 5)
   const keepMinute = Math.exp(-1 / 30)
-  const codeStep = scenario.vaneBits > 0 ? 360 / 2 ** scenario.vaneBits : 0
+  const faults = faultsOf(scenario.faults, plan.index)
+  const faulty = faults.length > 0
+  const bits =
+    scenario.vaneBits > 0
+      ? scenario.vaneBits
+      : faults.some(({ kind }) => kind === 'vane-stuck-bit')
+        ? USUAL_BITS
+        : 0
+  const codeStep = bits > 0 ? 360 / 2 ** bits : 0
   const gain = scenario.vaneGain
   let loggedShift = scenario.vaneLogged === 'beforeCorrection' ? plan.correctionDeg : 0
-  const changes = changesOf(scenario, plan.index)
+  const changes = offsetSteps(scenario, plan)
 
   // Taken out of their objects once: scenarios differ in the order of their keys, and the loop below would be compiled anew.
   const { vaneNoiseDeg, vaneSlowNoiseDeg, anemometerNoiseMs, anemometerSlowError } = scenario
   const { directionSdDeg, localSpeedSd, localDirectionSdDeg, vaneLogged } = scenario
-  const { yawRateDegS, yawThresholdDeg, yawHoldS, yawStopDeg } = scenario
   const { anemometerGain, responsePerDeg } = plan
 
   const second = scenario.secondVaneOffsetDeg
   const secondNoise = streamOf(PURPOSE.secondVane)
   const secondSlow = new Reverting(secondNoise, 1200 / NODE_S)
-  const faults = scenario.faults.filter((fault) => fault.turbine === plan.index)
+
+  const vaneFaults = new VaneFaults(faults, streamOf(PURPOSE.vaneFault), NODE_S, bits)
+  const nacelleFaults = new NacelleFaults(faults, streamOf(PURPOSE.nacelleFault), NODE_S)
+  const anemometerFaults = new AnemometerFaults(faults)
+  const behaviourChangesS = behaviourChanges(faults)
 
   let offset = plan.offsetDeg
   let nextChange = 0
-  let frozen = false
-  let frozenAt = NaN
-  let nacelleShift = 0
-  let windFactor = 1
   let limit = rated
   let limitSpeed = speedAtPower(table, 0.97 * rated)
 
@@ -132,46 +131,23 @@ export function runTurbine(
   let nodeTurn = inflow.directionDeg[0]!
   let nodeVane = 0
   let nodeError = 0
-  let heading = nodeTurn - 360 * Math.floor(nodeTurn / 360)
+  const twist = 360 * Math.round(faults.find(({ kind }) => kind === 'yaw-no-untwist')?.size ?? 0)
+  const controller = new YawController(
+    yawBehaviour(scenario, faults),
+    nodeTurn - 360 * Math.floor(nodeTurn / 360) + twist,
+  )
   let gust = 0
   let veer = 0
-  let vaneMean = 0
-  let vaneShort = 0
   let windMean = nodeWind
-  let holdS = 0
-  let yawing = 0
-  let untwistTo = NaN
   let ramp = nodeWind > CUT_IN_MS ? 1 : 0
   let idle = ramp === 0
   let storm = false
+  let running = false
   let power = 0
   let pitch = 0
   let rotorSpeed = 0
 
-  const sums: TurbineSums = {
-    producedMwh: 0,
-    clearHours: 0,
-    clearMwh: 0,
-    lostStaticMwh: 0,
-    lostDynamicMwh: 0,
-    belowRatedHours: 0,
-    yawErrorMeanDeg: 0,
-    yawErrorSdDeg: 0,
-    vaneMeanDeg: 0,
-    yawMoves: 0,
-    yawTravelDeg: 0,
-  }
-  let yawMoves = 0
-  let yawTravel = 0
-  let produced = 0,
-    clearS = 0,
-    clear = 0,
-    lostStatic = 0,
-    lostDynamic = 0
-  let belowS = 0,
-    belowError = 0,
-    belowErrorSquares = 0,
-    belowVane = 0
+  const sums = new SecondSums()
 
   const { speedMs, directionDeg, turbulence: turbulences, densityFactor: densityFactors } = inflow
   const { performance: performances } = inflow
@@ -222,29 +198,26 @@ export function runTurbine(
         limitSpeed = speedAtPower(table, Math.min(limit, 0.97 * rated))
       }
       if (nextChange < changes.length && changes[nextChange]!.atS < endS) {
-        // A correction that was entered is one that the vane before correction does not show.
-        if (changes[nextChange]!.entered && vaneLogged === 'beforeCorrection') {
-          loggedShift += offset - changes[nextChange]!.toDeg
-        }
+        // The vane before correction does not show what the controller adds.
+        if (vaneLogged === 'beforeCorrection') loggedShift += changes[nextChange]!.addedDeg
         offset = changes[nextChange]!.toDeg
         nextChange++
       }
       const standing = offset / gain
-      if (faults.length > 0) {
-        frozen = false
-        nacelleShift = 0
-        windFactor = 1
-        for (const { kind, size, fromS, toS } of faults) {
-          const sinceS = endS - NODE_S - fromS
-          if (!(sinceS >= 0 && endS - NODE_S < toS)) continue
-          if (kind === 'vane-frozen') frozen = true
-          if (kind === 'nacelle-shift') nacelleShift += size
-          if (kind === 'nacelle-drift') nacelleShift += (size * sinceS) / 86400
-          if (kind === 'anemometer-gain') windFactor *= size
+      if (faulty) {
+        const atS = endS - NODE_S
+        vaneFaults.update(atS)
+        nacelleFaults.update(atS)
+        anemometerFaults.update(atS)
+        maker.averageAcrossNorth = scenario.averageAcrossNorth || nacelleFaults.averagedAcrossNorth
+        if (behaviourChangesS.some((second) => second > atS - NODE_S && second <= atS)) {
+          controller.behave(yawBehaviour(scenario, faults, atS))
         }
-        if (!frozen) frozenAt = NaN
       }
-      const secondShift = second === null ? 0 : second + loggedShift - vaneSlowNoiseDeg * secondSlow.step()
+      const secondShift =
+        second === null
+          ? 0
+          : second + loggedShift - vaneSlowNoiseDeg * secondSlow.step() - vaneFaults.secondDriftDeg
 
       for (let i = nodeS; i < nodeS + NODE_S; i++) {
         nodeWind += stepWind
@@ -255,16 +228,13 @@ export function runTurbine(
         veer = keep5 * veer + fresh5 * (link * gustNoise[i]! + apart * veerNoise[i]!)
 
         // Yaw error as the rotor feels it, and as the point of the vane does.
-        let error = nodeTurn - heading
+        let error = nodeTurn - controller.headingDeg
         error -= 360 * Math.floor((error + 180) * (1 / 360))
         const flow = gain * (error + veerSize * veer) - offset
         let vane = flow + nodeVane + vaneNoiseDeg * vaneNoise[i]!
         if (codeStep > 0) vane = Math.round(vane / codeStep) * codeStep
         vane -= 360 * Math.floor((vane + 180) * (1 / 360))
-        if (frozen) {
-          if (Number.isNaN(frozenAt)) frozenAt = vane
-          vane = frozenAt
-        }
+        if (faulty) vane = vaneFaults.read(vane, vaneNoiseDeg * vaneNoise[i]!, running)
         if (second !== null) {
           const other = flow + vaneNoiseDeg * secondNoise.normal() - secondShift
           secondVaneDeg[i] = other - 360 * Math.floor((other + 180) * (1 / 360))
@@ -275,46 +245,23 @@ export function runTurbine(
         let wind =
           nodeWind * (1 + gustSize * gust) * anemometerGain * (1 + responsePerDeg * bend) * (1 + nodeError) +
           anemometerNoiseMs * windNoise[i]!
-        wind = wind < 0 ? 0 : wind * windFactor
+        if (wind < 0) wind = 0
+        if (faulty) wind = anemometerFaults.read(wind)
         windMean = keepMinute * windMean + (1 - keepMinute) * wind
 
         // State.
         if (storm ? windMean < STORM_END_MS : windMean > STORM_MS) storm = !storm
         if (idle ? windMean > CUT_IN_MS : windMean < IDLE_MS) idle = !idle
-        const untwisting = !Number.isNaN(untwistTo)
-        const running = stop === 0 && !idle && !storm && !untwisting
+        const untwisting = controller.untwisting
+        running = stop === 0 && !idle && !storm && !untwisting
         ramp = running ? (ramp < 1 ? ramp + 1 / START_S : 1) : 0
 
-        // Yaw controller: it sees the vane and nothing else.
-        vaneMean = keepYaw * vaneMean + (1 - keepYaw) * vane
-        vaneShort = keepStop * vaneShort + (1 - keepStop) * vane
-        if (untwisting) {
-          const left = untwistTo - heading
-          if (left > yawRateDegS) heading += yawRateDegS
-          else if (left < -yawRateDegS) heading -= yawRateDegS
-          else untwistTo = NaN
-          yawing = 0
-          vaneMean = vane
-        } else if (yawing !== 0) {
-          heading += yawing * yawRateDegS
-          yawTravel += yawRateDegS
-          if (vaneShort * yawing < yawStopDeg || stop === STOP.maintenance) {
-            yawing = 0
-            vaneMean = vaneShort
-            holdS = 0
-            if (heading > CABLE_DEG || heading < -CABLE_DEG) {
-              untwistTo = heading - 360 * Math.round(heading / 360)
-            }
-          }
-        } else {
-          const threshold = running ? yawThresholdDeg : 2 * yawThresholdDeg
-          const off = vaneMean > threshold || vaneMean < -threshold
-          holdS = off ? holdS + 1 : 0
-          if (holdS > yawHoldS && windMean > IDLE_MS - 0.4 && stop !== STOP.maintenance) {
-            yawing = vaneMean > 0 ? 1 : -1
-            yawMoves++
-          }
-        }
+        controller.step(vane, running, windMean, stop)
+        const heading = controller.headingDeg
+
+        let logged = vane - loggedShift
+        if (loggedShift !== 0) logged -= 360 * Math.floor((logged + 180) / 360)
+        if (faulty) logged = vaneFaults.logged(logged)
 
         // Power at the yaw error, at the error less its standing part, and without any.
         const effective = nodeWind * densityFactor
@@ -342,22 +289,17 @@ export function runTurbine(
           k = at | 0
           let faced = performance * (curve[k]! + (at - k) * (curve[k + 1]! - curve[k]!))
           if (faced > rated) faced = rated
-          clearS++
-          clear += available
-          lostStatic += corrected - available
-          lostDynamic += faced - corrected
-          if (available < 0.95 * rated) {
-            belowS++
-            belowError += error
-            belowErrorSquares += error * error
-            belowVane += vane - loggedShift
-          }
+          sums.clearS++
+          sums.clear += available
+          sums.lostStatic += corrected - available
+          sums.lostDynamic += faced - corrected
+          if (available < 0.95 * rated) sums.addBelowRated(error, faulty ? logged : vane - loggedShift)
         }
 
         const allowed = available < limit ? available : limit
         const targetPower = running ? allowed * ramp + CONSUMPTION_KW * (1 - ramp) : CONSUMPTION_KW
         power += (targetPower - power) * (1 / ROTOR_S)
-        if (power > 0) produced += power
+        if (power > 0) sums.produced += power
         const excess = along - limitSpeed
         const targetPitch = running
           ? excess > 0
@@ -374,8 +316,6 @@ export function runTurbine(
         } else if (stop !== 0) targetSpeed = 0
         rotorSpeed += (targetSpeed - rotorSpeed) * (1 / SPEED_S)
 
-        let logged = vane - loggedShift
-        if (loggedShift !== 0) logged -= 360 * Math.floor((logged + 180) / 360)
         const state = running
           ? limit < rated
             ? STATE.limited
@@ -387,10 +327,10 @@ export function runTurbine(
               : storm
                 ? STATE.storm
                 : STATE.idle
-        const moving = yawing !== 0 || untwisting ? 1 : 0
+        const moving = controller.yawing !== 0 || untwisting ? 1 : 0
         windMs[i] = wind
         vaneDeg[i] = logged
-        headingDeg[i] = heading + nacelleShift
+        headingDeg[i] = faulty ? nacelleFaults.read(heading, stop) : heading
         yawingNow[i] = moving
         powerKw[i] = power
         pitchDeg[i] = pitch
@@ -404,21 +344,5 @@ export function runTurbine(
     maker.addBlock(block)
   }
 
-  const mwhPerKws = 1 / 3.6e6
-  sums.yawMoves = yawMoves
-  sums.yawTravelDeg = yawTravel
-  sums.producedMwh = produced * mwhPerKws
-  sums.clearHours = clearS / 3600
-  sums.clearMwh = clear * mwhPerKws
-  sums.lostStaticMwh = lostStatic * mwhPerKws
-  sums.lostDynamicMwh = lostDynamic * mwhPerKws
-  sums.belowRatedHours = belowS / 3600
-  if (belowS > 0) {
-    sums.yawErrorMeanDeg = belowError / belowS
-    sums.yawErrorSdDeg = Math.sqrt(Math.max(0, belowErrorSquares / belowS - sums.yawErrorMeanDeg ** 2))
-    sums.vaneMeanDeg = belowVane / belowS
-  } else {
-    sums.yawErrorMeanDeg = sums.yawErrorSdDeg = sums.vaneMeanDeg = NaN
-  }
-  return sums
+  return { sums: sums.finished(controller.moves, controller.travelDeg), nacelleSteps: nacelleFaults.steps }
 }

@@ -1,13 +1,5 @@
 import { InputError } from '../errors.ts'
-import { PURPOSE, RandomStream } from './random.ts'
-
-/** A spell in which a turbine stands still or is held below rated; times in seconds from the start of the scenario. */
-export interface Spell {
-  /** Index of the turbine, 0 = first. */
-  turbine: number
-  fromS: number
-  toS: number
-}
+import { checkFault, type Fault, type Spell } from './faults.ts'
 
 /** A spell with a set-point below rated, kW. */
 export interface LimitSpell extends Spell {
@@ -24,16 +16,14 @@ export interface OffsetChange {
   entered: boolean
 }
 
-/** A sensor that goes wrong for a spell. */
-export interface SensorFault extends Spell {
-  /**
-   * vane-frozen: the vane keeps its value of the first second, and the controller believes it; nacelle-shift: `size`
-   * degrees are added to the nacelle reading; nacelle-drift: `size` degrees a day are; anemometer-gain: the reading is
-   * multiplied by `size`.
-   */
-  kind: 'vane-frozen' | 'nacelle-shift' | 'nacelle-drift' | 'anemometer-gain'
-  /** No meaning for a frozen vane. */
-  size: number
+/** Someone set out to correct a vane offset. */
+export interface Correction {
+  turbine: number
+  atS: number
+  /** Degrees that the site file says were added to the controller's vane. */
+  recordedDeg: number
+  /** Degrees that were: as recorded; the other way round with the wrong sign; 0 when nothing was entered. */
+  addedDeg: number
 }
 
 /**
@@ -63,6 +53,7 @@ export interface FarmScenario {
   /** Offset d of each turbine's controller vane, degrees; null: drawn, half within about 1 degree of 0, half 3 to 9 off. */
   offsetsDeg: readonly number[] | null
   offsetChanges: readonly OffsetChange[]
+  corrections: readonly Correction[]
   /** k in vane = k g - d. */
   vaneGain: number
   /** The controller's own correction of each turbine, contained in the vane it uses; null: none. */
@@ -138,7 +129,7 @@ export interface FarmScenario {
   references: readonly number[]
   /** Degrees that a second vane reads less than the first, beside noise of its own; null: there is none. */
   secondVaneOffsetDeg: number | null
-  faults: readonly SensorFault[]
+  faults: readonly Fault[]
   /** Decimals of the vane in the log. */
   vaneDecimals: number
   /** Share of cells that are missing from the log. */
@@ -160,6 +151,7 @@ const DEFAULTS: FarmScenario = {
   exponent: 3,
   offsetsDeg: null,
   offsetChanges: [],
+  corrections: [],
   vaneGain: 1,
   correctionsDeg: null,
   vaneLogged: 'afterCorrection',
@@ -305,6 +297,7 @@ export function farmScenario(given: Partial<FarmScenario> = {}): FarmScenario {
   }
   const named = [
     ...scenario.offsetChanges,
+    ...scenario.corrections,
     ...scenario.faults,
     ...(typeof scenario.stops === 'boolean' ? [] : scenario.stops),
     ...(typeof scenario.limits === 'boolean' ? [] : scenario.limits),
@@ -317,71 +310,17 @@ export function farmScenario(given: Partial<FarmScenario> = {}): FarmScenario {
       )
     }
   }
+  scenario.faults.forEach(checkFault)
+  if (
+    scenario.secondVaneOffsetDeg === null &&
+    scenario.faults.some(({ kind }) => kind === 'second-vane-drift')
+  ) {
+    scenario.secondVaneOffsetDeg = 0
+  }
   return scenario
 }
 
 /** Length of a scenario in seconds. */
 export function scenarioSeconds(scenario: FarmScenario): number {
   return Math.round(scenario.days * 86400)
-}
-
-/** The changes of one turbine's offset, in order of time. */
-export function changesOf(scenario: FarmScenario, turbine: number): OffsetChange[] {
-  return scenario.offsetChanges.filter((change) => change.turbine === turbine).sort((a, b) => a.atS - b.atS)
-}
-
-/** What one turbine is, once drawn. */
-export interface TurbinePlan {
-  index: number
-  name: string
-  /** d of the controller's vane at the start, degrees. */
-  offsetDeg: number
-  correctionDeg: number
-  responsePerDeg: number
-  anemometerGain: number
-  northOffsetDeg: number
-  eastingM: number
-  northingM: number
-}
-
-/** Draws each turbine's own values from streams of its own: a further turbine changes none of them. */
-export function planTurbines(scenario: FarmScenario): TurbinePlan[] {
-  return Array.from({ length: scenario.turbines }, (_, index) => {
-    const setup = new RandomStream(scenario.seed, PURPOSE.setup, index)
-    const responsePerDeg =
-      scenario.anemometerResponsePerDeg + scenario.anemometerResponseSpread * setup.normal()
-    const anemometerGain = 1 + scenario.anemometerGainSpread * setup.normal()
-    const northOffsetDeg = index % 5 < 2 ? 3 * setup.normal() : setup.between(-180, 180)
-    return {
-      index,
-      name: scenario.prefix + String(index + 1).padStart(2, '0'),
-      offsetDeg: scenario.offsetsDeg?.[index] ?? drawOffset(scenario.seed, index),
-      correctionDeg: scenario.correctionsDeg?.[index] ?? 0,
-      responsePerDeg,
-      anemometerGain,
-      northOffsetDeg: scenario.northOffsetsDeg?.[index] ?? northOffsetDeg,
-      ...position(scenario, index),
-    }
-  })
-}
-
-function drawOffset(seed: number, index: number): number {
-  const stream = new RandomStream(seed, PURPOSE.offset, index)
-  if (index % 2 === 0) return 1.2 * stream.normal()
-  return (stream.uniform() < 0.5 ? -1 : 1) * stream.between(3, 9)
-}
-
-/** Staggered rows with some metres of disorder; the first turbine stands near the origin. */
-function position(scenario: FarmScenario, index: number): { eastingM: number; northingM: number } {
-  const { columns, spacingD, rowSpacingD, bearingDeg } = scenario.layout
-  const stream = new RandomStream(scenario.seed, PURPOSE.position, index)
-  const row = Math.floor(index / columns)
-  const along =
-    ((index % columns) + (row % 2) / 2) * spacingD * scenario.rotorDiameterM + 30 * stream.normal()
-  const across = row * rowSpacingD * scenario.rotorDiameterM + 30 * stream.normal()
-  const bearing = (bearingDeg * Math.PI) / 180
-  return {
-    eastingM: Math.round(along * Math.sin(bearing) + across * Math.cos(bearing)),
-    northingM: Math.round(along * Math.cos(bearing) - across * Math.sin(bearing)),
-  }
 }

@@ -2,16 +2,23 @@ import { turbineInflow } from './inflow.ts'
 import { turbineOrders } from './operation.ts'
 import { PURPOSE, RandomStream } from './random.ts'
 import { emptyRows, STATES, type TurbineRows } from './rows.ts'
-import { runTurbine, type TurbineSums } from './run-turbine.ts'
-import {
-  changesOf,
-  farmScenario,
-  planTurbines,
-  scenarioSeconds,
-  type FarmScenario,
-  type TurbinePlan,
-} from './scenario.ts'
+import { faultsOf, type FaultKind } from './faults.ts'
+import { runTurbine, type TurbineRun } from './run-turbine.ts'
+import { farmScenario, scenarioSeconds, type FarmScenario } from './scenario.ts'
+import { offsetSteps, planTurbines, type TurbinePlan } from './turbine-plan.ts'
+import type { TurbineSums } from './turbine-sums.ts'
 import { farmWeather, PAD_MIN } from './weather.ts'
+
+/** A fault as it was put into the farm. */
+export interface FaultTruth {
+  kind: FaultKind
+  fromS: number
+  /** End of the fault, or of the window where that comes first. */
+  toS: number
+  /** What `FAULTS` says of the kind; null: it has no such number. */
+  size: number | null
+  place: number | null
+}
 
 /** What is true of one turbine, and what no log shows. */
 export interface TurbineTruth extends TurbineSums {
@@ -22,6 +29,11 @@ export interface TurbineTruth extends TurbineSums {
   standingDeg: number
   /** Both, from a second of the window on; one entry when nothing changes. */
   offsets: { fromS: number; offsetDeg: number; standingDeg: number }[]
+  /** Corrections of the vane offset: what the site file says was added to the controller's vane, and what was. */
+  corrections: { atS: number; recordedDeg: number; addedDeg: number }[]
+  faults: FaultTruth[]
+  /** When the error of the nacelle position took another value of its own accord, and by how much: lost zeros and jumps. */
+  nacelleSteps: { atS: number; stepDeg: number }[]
   correctionDeg: number
   responsePerDeg: number
   anemometerGain: number
@@ -58,7 +70,7 @@ export function simulateFarm(given: Partial<FarmScenario> = {}): SimulatedFarm {
   const turbines = plans.map((plan): SimulatedTurbine => {
     const inflow = turbineInflow(scenario, weather, plans, orders, plan.index)
     const rows = emptyRows(scenario.startMs, scenario.rateS, rowCount)
-    const sums = runTurbine(scenario, plan, inflow, orders[plan.index]!, rows)
+    const run = runTurbine(scenario, plan, inflow, orders[plan.index]!, rows)
     const logger = new RandomStream(scenario.seed, PURPOSE.logger, plan.index)
     addAir(rows, scenario, weather, logger)
     if (scenario.references.includes(plan.index)) addReference(rows, logger)
@@ -66,7 +78,7 @@ export function simulateFarm(given: Partial<FarmScenario> = {}): SimulatedFarm {
       ...rows,
       turbine: plan.name,
       status: Array.from(rows.state, (code) => STATES[code]!),
-      truth: truthOf(scenario, plan, sums),
+      truth: truthOf(scenario, plan, run),
     }
   })
   return { scenario, turbines }
@@ -96,7 +108,7 @@ function addReference(rows: TurbineRows, logger: RandomStream): void {
   }
 }
 
-function truthOf(scenario: FarmScenario, plan: TurbinePlan, sums: TurbineSums): TurbineTruth {
+function truthOf(scenario: FarmScenario, plan: TurbinePlan, run: TurbineRun): TurbineTruth {
   const before = scenario.vaneLogged === 'beforeCorrection'
   let correctionDeg = before ? plan.correctionDeg : 0
   let controllerDeg = plan.offsetDeg
@@ -106,22 +118,35 @@ function truthOf(scenario: FarmScenario, plan: TurbinePlan, sums: TurbineSums): 
     standingDeg: controllerDeg / scenario.vaneGain,
   })
   const offsets = [period(0)]
-  for (const change of changesOf(scenario, plan.index)) {
-    if (before && change.entered) correctionDeg += controllerDeg - change.toDeg
-    controllerDeg = change.toDeg
-    offsets.push(period(change.atS))
+  const steps = offsetSteps(scenario, plan)
+  for (const { atS, toDeg, addedDeg } of steps) {
+    if (before) correctionDeg += addedDeg
+    controllerDeg = toDeg
+    offsets.push(period(atS))
   }
+  const endS = scenarioSeconds(scenario)
   return {
     turbine: plan.name,
     offsetDeg: offsets[0]!.offsetDeg,
     standingDeg: offsets[0]!.standingDeg,
     offsets,
+    corrections: steps.flatMap(({ atS, recordedDeg, addedDeg }) =>
+      recordedDeg === null ? [] : [{ atS, recordedDeg, addedDeg }],
+    ),
+    faults: faultsOf(scenario.faults, plan.index).map(({ kind, fromS, toS, size, place }) => ({
+      kind,
+      fromS,
+      toS: Math.min(toS, endS),
+      size,
+      place,
+    })),
+    nacelleSteps: [...run.nacelleSteps],
     correctionDeg: plan.correctionDeg,
     responsePerDeg: plan.responsePerDeg,
     anemometerGain: plan.anemometerGain,
     northOffsetDeg: plan.northOffsetDeg,
     eastingM: plan.eastingM,
     northingM: plan.northingM,
-    ...sums,
+    ...run.sums,
   }
 }

@@ -1,8 +1,13 @@
+import type { Spell } from './faults.ts'
 import { PURPOSE, RandomStream } from './random.ts'
 import type { FarmScenario } from './scenario.ts'
 
 /** Minutes of weather before and after the window, for air that is still on its way or has passed. */
 export const PAD_MIN = 60
+
+/** Temperature at which sensors ice, and how long it takes to come and go, s. */
+const ICING_C = -1
+const CHILL_S = 3 * 3600
 
 /** The weather of the whole farm at hub height, one value a minute; entry PAD_MIN is the first second of the window. */
 export interface Weather {
@@ -25,7 +30,7 @@ export interface Weather {
  * - fronts, one in 3 days: a veer of 50 +- 20 degrees within 20 to 60 min, with up to 30 % more wind for 2 h;
  * - turbulence: shape of the normal turbulence model of IEC 61400-1, (0.75 u + 5.6) / u; a third less by night;
  * - temperature and pressure: 4 degrees by day and night, 4 degrees over 40 h; 9 hPa over 48 h, less the altitude
- *   (hydrostatic, 288 K).
+ *   (hydrostatic, 288 K); while a sensor ices the farm has about -1 degrees.
  */
 export function farmWeather(scenario: FarmScenario): Weather {
   const minutes = Math.ceil(scenario.days * 1440) + 1 + 2 * PAD_MIN
@@ -36,6 +41,7 @@ export function farmWeather(scenario: FarmScenario): Weather {
     temperatureC: new Float64Array(minutes),
     pressureHpa: new Float64Array(minutes),
   }
+  const icingSpells = scenario.faults.filter(({ kind }) => kind.endsWith('-iced'))
   const synoptic = new RandomStream(scenario.seed, PURPOSE.synoptic)
   const meso = new RandomStream(scenario.seed, PURPOSE.mesoscale)
   const logSpeed = new Reverting(synoptic, 15 * 60)
@@ -83,11 +89,23 @@ export function farmWeather(scenario: FarmScenario): Weather {
     const warm = warmth.step()
     const low = depth.step()
     const seaLevel = 1013 + (scenario.densityVariation ? 9 * low : 0)
-    weather.temperatureC[i] =
-      8 + (scenario.densityVariation ? 4 * Math.cos(((hour - 15) / 12) * Math.PI) + 4 * warm : 0)
+    const awayC = scenario.densityVariation ? 4 * Math.cos(((hour - 15) / 12) * Math.PI) + 4 * warm : 0
+    weather.temperatureC[i] = 8 + awayC
+    const icing = icingShare(icingSpells, (i - PAD_MIN) * 60)
+    if (icing > 0) weather.temperatureC[i]! += icing * (ICING_C - 8 - 0.9 * awayC)
     weather.pressureHpa[i] = seaLevel * altitudeFactor
   }
   return weather
+}
+
+/** 1 while a sensor ices, 0 far from it: the whole farm cools within 3 h before, and warms within 3 h after. */
+function icingShare(spells: readonly Spell[], second: number): number {
+  let share = 0
+  for (const { fromS, toS } of spells) {
+    const outsideS = Math.max(fromS - second, second - toS, 0)
+    share = Math.max(share, 1 - outsideS / CHILL_S)
+  }
+  return share
 }
 
 /** A first-order autoregressive process of variance one: a mean-reverting walk seen at equal steps. */

@@ -5,14 +5,14 @@ import { Readable } from 'node:stream'
 import { pipeline } from 'node:stream/promises'
 import { createGzip } from 'node:zlib'
 import type { SiteFile } from '../sheet/index.ts'
+import { FAULTS } from './faults.ts'
 import { emptyAccount, logCsv, type LogAccount } from './log-csv.ts'
-import { changesOf, type FarmScenario } from './scenario.ts'
+import type { FarmScenario } from './scenario.ts'
 import { simulateFarm, type SimulatedFarm } from './simulate-farm.ts'
 
 /** The site file of a made-up farm: what an operator would know, nothing of the truth. */
 export function siteFileOf(farm: SimulatedFarm): SiteFile {
   const { scenario, turbines } = farm
-  const iso = (second: number) => new Date(scenario.startMs + second * 1000).toISOString()
   return {
     site: scenario.site,
     timezone: scenario.timezone,
@@ -31,22 +31,41 @@ export function siteFileOf(farm: SimulatedFarm): SiteFile {
       vane: { logged: scenario.vaneLogged, correctionDeg: truth.correctionDeg, sign: 1 as const },
       nacelle: { northOffsetSource: 'unknown' as const },
     })),
-    corrections: turbines.flatMap(({ turbine, truth }, index) => {
-      let beforeDeg = truth.standingDeg * scenario.vaneGain
-      return changesOf(scenario, index).flatMap((change) => {
-        const enteredDeg = rounded(beforeDeg - change.toDeg)
-        beforeDeg = change.toDeg
-        return change.entered ? [{ turbine, at: iso(change.atS), enteredDeg }] : []
-      })
-    }),
+    corrections: turbines.flatMap(({ turbine, truth }) =>
+      truth.corrections.map(({ atS, recordedDeg }) => ({
+        turbine,
+        at: isoTime(farm, atS),
+        enteredDeg: rounded(recordedDeg),
+      })),
+    ),
   }
 }
 
-/** What no log shows, as a document: the scenario, the account of the log's lines, each turbine's truth. */
+/** What no log shows, as a document: the scenario, what was wrong with which turbine, the account of the log's lines, each turbine's truth. */
 export function truthDocument(farm: SimulatedFarm, log: LogAccount) {
   return {
     note: 'Invented data: a made-up wind farm in made-up weather.',
     scenario: farm.scenario,
+    faults: farm.turbines.flatMap(({ turbine, truth }) =>
+      truth.faults.map(({ kind, fromS, toS, size, place }) => ({
+        turbine,
+        sensor: FAULTS[kind].sensor,
+        kind,
+        from: isoTime(farm, fromS),
+        to: isoTime(farm, toS),
+        size,
+        place,
+        means: FAULTS[kind].does,
+      })),
+    ),
+    corrections: farm.turbines.flatMap(({ turbine, truth }) =>
+      truth.corrections.map(({ atS, recordedDeg, addedDeg }) => ({
+        turbine,
+        at: isoTime(farm, atS),
+        recordedDeg: rounded(recordedDeg),
+        addedDeg: rounded(addedDeg),
+      })),
+    ),
     log,
     turbines: farm.turbines.map(({ truth }) =>
       Object.fromEntries(
@@ -89,6 +108,10 @@ export async function writeSimulation(
   await writeFile(sitePath, JSON.stringify(siteFileOf(farm), null, 2) + '\n')
   await writeFile(truthPath, JSON.stringify(truthDocument(farm, account), null, 2) + '\n')
   return { logPath, sitePath, truthPath, account }
+}
+
+function isoTime(farm: SimulatedFarm, second: number): string {
+  return new Date(farm.scenario.startMs + second * 1000).toISOString()
 }
 
 /** Six decimals are more than any use of the truth needs, and the same on every machine. */

@@ -240,3 +240,23 @@ test('simulate writes a log that the same seed writes again', async () => {
   // Two turbines, 144 rows of ten minutes each, one header.
   expect(texts[0]?.trimEnd().split('\n')).toHaveLength(289)
 })
+
+test('simulate puts faults and corrections into the farm, its truth and its site file', async () => {
+  const out = join(folder, 'faulty')
+  const given = [
+    '--fault',
+    'Q02:anemometer-gain:2026-03-01:2026-03-02:0.8',
+    '--correction',
+    'Q01:2026-03-01:5',
+  ]
+  const { status, err } = await runCli(['simulate', '--out', out, '--turbines', '2', '--days', '1', ...given])
+  expect(err).toBe('')
+  expect(status).toBe(0)
+  const read = async (name: string) =>
+    JSON.parse(await readFile(join(out, name), 'utf8')) as { faults: object[]; corrections: object[] }
+  const truth = await read('quern-hill.truth.json')
+  expect(truth.faults).toMatchObject([{ turbine: 'Q02', kind: 'anemometer-gain', size: 0.8 }])
+  expect((await read('quern-hill.site.json')).corrections).toEqual([
+    { turbine: 'Q01', at: '2026-03-01T00:00:00.000Z', enteredDeg: 5 },
+  ])
+})
