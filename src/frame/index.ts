@@ -13,3 +13,11 @@ export {
 export { correctSpeed } from './correct-speed.ts'
 export { reasonsSince, rowsSince } from './rows-since.ts'
 export type { SensorSpell } from './still-spells.ts'
+export {
+  DECODED_CHANNELS,
+  decodingPlan,
+  holdsRawWords,
+  RawWordDecoder,
+  type DecodedChannel,
+  type DecodingAccount,
+} from './raw-words.ts'

@@ -44,6 +44,7 @@ const UNIT_WORDS = new Set([
   'mw',
   'w',
   'ms',
+  'us',
   'mps',
   'kmh',
   'kn',

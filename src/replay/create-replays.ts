@@ -2,8 +2,9 @@ import { mkdir, rm } from 'node:fs/promises'
 import { join } from 'node:path'
 import PQueue from 'p-queue'
 import { InputError } from '../errors.ts'
+import { decodingPlan } from '../frame/index.ts'
 import { stageLog, type LogLimits, type StagedLog } from '../log/index.ts'
-import type { Receipt, ScoreSheet } from '../sheet/index.ts'
+import type { Receipt, ScoreSheet, SiteFile } from '../sheet/index.ts'
 import type { Store, StoredReplay } from '../store/index.ts'
 import type { OneShotRequest, Progress, ReplayRecord, Replays, StoredRequest } from './contract.ts'
 import { frameRows, type KeptRequest } from './frame-rows.ts'
@@ -42,7 +43,7 @@ export function createReplays(parts: ReplayParts): Replays {
   const scoreStored = async (id: string, request: StoredRequest, run: Run, folder: string) => {
     run.onProgress({ stage: 'reading', share: 0 })
     const window = await readStored(store, request, folder)
-    checkChannels(window)
+    checkChannels(window, window.site)
     run.signal.throwIfAborted()
     return score({ ...request, ...window, id, keepScoredOnly: true }, run)
   }
@@ -85,7 +86,7 @@ export function createReplays(parts: ReplayParts): Replays {
         const staged = await stage(parts, folder, request)
         run.signal.throwIfAborted()
         await store.replays.begin({ id, site: request.site.site ?? null, createdMs: clock() })
-        checkChannels(staged)
+        checkChannels(staged, request.site)
         const { site, settings, ratedPowerKw } = request
         const { path, receipt } = staged
         return score(
@@ -207,9 +208,14 @@ async function stage(parts: ReplayParts, folder: string, request: OneShotRequest
   )
 }
 
-/** The offset needs these; anything else in the log is welcome but not needed. */
-function checkChannels({ channels, receipt }: { channels: readonly string[]; receipt: Receipt }): void {
-  const has = (channel: string) => channels.includes(channel)
+/** The offset needs these; anything else in the log is welcome but not needed. Raw words count where the site file describes them. */
+function checkChannels(
+  { channels, receipt }: { channels: readonly string[]; receipt: Receipt },
+  site: SiteFile,
+): void {
+  const plans = [{ turbine: '' }, ...(site.turbines ?? [])].map((setup) => decodingPlan(setup, channels))
+  const has = (channel: string) =>
+    channels.includes(channel) || plans.some(({ makes }) => makes.some((made) => made === channel))
   const isVaneWorkedOut = has('wind_direction') && has('nacelle_position')
   const missing = ['wind_speed', 'vane', 'power'].filter(
     (channel) => !has(channel) && !(channel === 'vane' && isVaneWorkedOut),
@@ -222,7 +228,8 @@ function checkChannels({ channels, receipt }: { channels: readonly string[]; rec
   throw new InputError(
     'LOG_COLUMNS_MISSING',
     `log: expected columns for ${missing.join(', ')}; recognised ${recognised.join(', ') || 'nothing'}; ` +
-      `not used ${others.join(', ') || 'nothing'}. Name them in columns, such as {"${missing[0]!}":"..."}`,
+      `not used ${others.join(', ') || 'nothing'}. Name them in columns, such as {"${missing[0]!}":"..."}` +
+      plans[0]!.missing.map((line) => `; ${line}`).join(''),
     { detail: { missing, recognised, notUsed: others } },
   )
 }

@@ -24,6 +24,8 @@ export interface FarmRequest {
   readonly receipt: Receipt
   /** How the log was read, for the provenance. */
   readonly reading: Record<string, unknown>
+  /** Turbine -> what went wrong while its raw words were decoded. */
+  readonly decodingFindings?: ReadonlyMap<string, TurbineSheet['sensors']> | undefined
   /** Looks at the high-rate rows that the farm's intervals were made of; absent: they were logged as they are. */
   readonly examine?: ((turbines: readonly TurbineFrame[]) => Promise<readonly HighRateRecord[]>) | undefined
 }
@@ -77,7 +79,11 @@ export async function scoreFarm(
         heading: headings[i] ?? null,
         events: eventsOf(site, turbine),
         highRate: highRate.find((record) => record.turbine === turbine.turbine) ?? null,
-        farmFindings: [...(clocks[i] ?? []), ...sensors[i]!.findings],
+        farmFindings: [
+          ...(clocks[i] ?? []),
+          ...sensors[i]!.findings,
+          ...(request.decodingFindings?.get(turbine.turbine) ?? []),
+        ],
         farmTests: sensors[i]!.tests,
       })
       onTurbine(++done, frame.turbines.length)

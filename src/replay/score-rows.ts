@@ -2,6 +2,7 @@ import type { TurbineColumns } from '../frame/index.ts'
 import type { Receipt, ScoreSheet, ScoringSettings, SiteFile } from '../sheet/index.ts'
 import { isHighRate, type CsvColumn, type Store } from '../store/index.ts'
 import type { Progress } from './contract.ts'
+import { decodeLog } from './decode-log.ts'
 import { examineHighRate, isExamined } from './examine-high-rate.ts'
 import { frameRows, scoredIntervalS, type KeptRequest } from './frame-rows.ts'
 import { scoreFarm } from './score-farm.ts'
@@ -35,8 +36,9 @@ export async function scoreRows(
   const { store } = parts
   const { receipt, site, settings, ratedPowerKw } = work
   onProgress({ stage: 'framing', share: 0 })
+  const { path, warnings, findings } = await decodeLog(store, work.path, site, signal)
   const reducedFromS = work.loggedIntervalsS.some(isHighRate) ? finest(work.loggedIntervalsS) : null
-  const farm = await frameRows(store.scans, work.path, reducedFromS)
+  const farm = await frameRows(store.scans, path, reducedFromS)
   signal.throwIfAborted()
   const intervalS = scoredIntervalS(reducedFromS, receipt.intervalS)
   const responsesPerDeg: Record<string, number> = {}
@@ -57,9 +59,10 @@ export async function scoreRows(
       ratedPowerKw,
       receipt: { ...receipt, intervalS },
       reading: work.reading,
+      decodingFindings: findings,
       examine:
         reducedFromS !== null && isExamined(reducedFromS)
-          ? (turbines) => examineHighRate({ store, scorers }, work.path, turbines, signal, onProgress)
+          ? (turbines) => examineHighRate({ store, scorers }, path, turbines, signal, onProgress)
           : undefined,
     },
     scorers,
@@ -70,10 +73,10 @@ export async function scoreRows(
   signal.throwIfAborted()
   onProgress({ stage: 'writing', share: 0 })
   const reduced = reducedFromS === null ? [] : [reductionNote(receipt, farm)]
-  const sheet: ScoreSheet = { ...scored, receipt, warnings: [...scored.warnings, ...reduced] }
+  const sheet: ScoreSheet = { ...scored, receipt, warnings: [...scored.warnings, ...warnings, ...reduced] }
   const scoredOnly = reducedFromS !== null && work.keepScoredOnly
-  if (scoredOnly) await writeScored(store, work.path, farm)
-  await store.frames.keep(work.id, work.path)
+  if (scoredOnly) await writeScored(store, path, farm)
+  await store.frames.keep(work.id, path)
   const kept: KeptRequest = {
     site,
     settings,

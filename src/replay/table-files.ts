@@ -32,17 +32,31 @@ const CHUNK_ROWS = 4096
 
 /** CSV in pieces of some thousand rows; a missing value is an empty field. */
 export function* csvPieces(schema: TableSchema, parts: Iterable<TablePart>): Generator<string> {
+  yield headerOf(schema)
+  for (const part of parts) yield* linesOf(schema, part)
+}
+
+async function* csvPiecesOf(
+  schema: TableSchema,
+  parts: Iterable<TablePart> | AsyncIterable<TablePart>,
+): AsyncGenerator<string> {
+  yield headerOf(schema)
+  for await (const part of parts) yield* linesOf(schema, part)
+}
+
+function headerOf(schema: TableSchema): string {
+  return `${Object.keys(schema).join(',')}\n`
+}
+
+function* linesOf(schema: TableSchema, part: TablePart): Generator<string> {
   const names = Object.keys(schema)
-  yield `${names.join(',')}\n`
-  for (const part of parts) {
-    for (let from = 0; from < part.rows; from += CHUNK_ROWS) {
-      const to = Math.min(from + CHUNK_ROWS, part.rows)
-      const cells = Object.fromEntries(
-        names.map((name) => [name, cellsOf(part, name, schema[name]!, from, to)]),
-      )
-      const text = table(cells, names).toCSV({ header: false })
-      yield text.endsWith('\n') ? text : `${text}\n`
-    }
+  for (let from = 0; from < part.rows; from += CHUNK_ROWS) {
+    const to = Math.min(from + CHUNK_ROWS, part.rows)
+    const cells = Object.fromEntries(
+      names.map((name) => [name, cellsOf(part, name, schema[name]!, from, to)]),
+    )
+    const text = table(cells, names).toCSV({ header: false })
+    yield text.endsWith('\n') ? text : `${text}\n`
   }
 }
 
@@ -54,11 +68,11 @@ export async function writeParquetTable(
   scans: Store['scans'],
   path: string,
   schema: TableSchema,
-  parts: Iterable<TablePart>,
+  parts: Iterable<TablePart> | AsyncIterable<TablePart>,
 ): Promise<void> {
   const csv = `${path}.csv`
   try {
-    await pipeline(Readable.from(csvPieces(schema, parts)), createWriteStream(csv))
+    await pipeline(Readable.from(csvPiecesOf(schema, parts)), createWriteStream(csv))
     await csvToParquet(scans, csv, path, schema)
   } finally {
     await rm(csv, { force: true })

@@ -20,7 +20,40 @@ export const NUMBER_CHANNELS = {
   reference_direction: { unit: 'deg', min: -360, max: 720 },
   reference_yaw_error: { unit: 'deg', min: -180, max: 180 },
   reference_wind_speed: { unit: 'm/s', min: 0, max: 75 },
+  // Raw words, decoded as the site file describes the sensors.
+  vane_code: { unit: '1', min: 0, max: 2 ** 52 },
+  vane_ratio: { unit: '1', min: -1, max: 2 },
+  nacelle_code: { unit: '1', min: 0, max: 2 ** 52 },
+  pulse_a: { unit: '1', min: 0, max: 1 },
+  pulse_b: { unit: '1', min: 0, max: 1 },
+  pulse_z: { unit: '1', min: 0, max: 1 },
+  transit_1: { unit: 'us', min: 0, max: 1e6 },
+  transit_2: { unit: 'us', min: 0, max: 1e6 },
+  transit_3: { unit: 'us', min: 0, max: 1e6 },
+  transit_4: { unit: 'us', min: 0, max: 1e6 },
+  transit_5: { unit: 'us', min: 0, max: 1e6 },
+  transit_6: { unit: 'us', min: 0, max: 1e6 },
 } as const satisfies Record<string, { unit: string; min: number; max: number }>
+
+/**
+ * Words as a sensor gives them: they have no mean. `transit_1`, `transit_2`: time of flight of the first path of an ultrasonic
+ * sensor, forward and backward; `_3`, `_4` the second; `_5`, `_6` the third.
+ */
+export const RAW_CHANNELS = [
+  'vane_code',
+  'vane_ratio',
+  'nacelle_code',
+  'pulse_a',
+  'pulse_b',
+  'pulse_z',
+  'transit_1',
+  'transit_2',
+  'transit_3',
+  'transit_4',
+  'transit_5',
+  'transit_6',
+] as const satisfies readonly (keyof typeof NUMBER_CHANNELS)[]
+export type RawChannel = (typeof RAW_CHANNELS)[number]
 
 export const TEXT_CHANNELS = ['status', 'availability_category'] as const
 

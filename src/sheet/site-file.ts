@@ -3,6 +3,26 @@ import { IsoTime } from './common.ts'
 
 const Name = Type.String({ minLength: 1, maxLength: 100, pattern: '^[^\\u0000-\\u001f/]+$' })
 
+/** How an angle stands in a sensor, and which way it counts. */
+const zeroDeg = Type.Optional(
+  Type.Number({
+    minimum: -360,
+    maximum: 360,
+    description: 'angle at the raw word, ratio or count 0, degrees; default 0',
+  }),
+)
+const direction = Type.Optional(
+  Type.Union([Type.Literal(1), Type.Literal(-1)], {
+    description: '1: raw words rise clockwise, seen from above; -1: counter-clockwise; default 1',
+  }),
+)
+const bits = Type.Optional(
+  Type.Integer({ minimum: 1, maximum: 52, description: 'of an absolute encoder: 2^bits codes a turn' }),
+)
+const code = Type.Optional(
+  Type.Union([Type.Literal('gray'), Type.Literal('binary')], { description: 'of its words; default gray' }),
+)
+
 export const TurbineSetup = Type.Object(
   {
     turbine: Name,
@@ -50,6 +70,24 @@ export const TurbineSetup = Type.Object(
                 'what the vane reads when the rotor faces the wind; default: told from the rows that produce',
             }),
           ),
+          kind: Type.Optional(
+            Type.Union([Type.Literal('encoder'), Type.Literal('potentiometer'), Type.Literal('ultrasonic')], {
+              description:
+                'what the vane is: raw words are decoded from vane_code, vane_ratio or transit_1, ...; default: told by what the log holds',
+            }),
+          ),
+          bits,
+          code,
+          zeroDeg,
+          direction,
+          deadBandDeg: Type.Optional(
+            Type.Number({
+              minimum: 0,
+              maximum: 90,
+              description:
+                'gap of the track of a potentiometer, degrees; the ratios 0 to 1 span 360 less the gap',
+            }),
+          ),
         },
         { additionalProperties: false },
       ),
@@ -58,6 +96,74 @@ export const TurbineSetup = Type.Object(
       Type.Object(
         {
           northOffsetSource: Type.Optional(Type.Union([Type.Literal('surveyed'), Type.Literal('unknown')])),
+          kind: Type.Optional(
+            Type.Union(
+              [
+                Type.Literal('absolute-encoder'),
+                Type.Literal('incremental-encoder'),
+                Type.Literal('proximity'),
+              ],
+              {
+                description:
+                  'what reads the nacelle position: raw words are decoded from nacelle_code, or counted from pulse_a and pulse_b; proximity: switches at the teeth of the yaw ring; default: told by what the log holds',
+              },
+            ),
+          ),
+          bits,
+          code,
+          pulsesPerTurn: Type.Optional(
+            Type.Integer({
+              minimum: 1,
+              maximum: 1_000_000,
+              description: 'pulses of track A per turn of the encoder, or teeth of the yaw ring',
+            }),
+          ),
+          quadrature: Type.Optional(
+            Type.Boolean({
+              description:
+                'true: tracks A and B stand a quarter pulse apart, every edge counts, four a pulse; false: B is the direction of the pulses of A; default true',
+            }),
+          ),
+          index: Type.Optional(
+            Type.Boolean({
+              description:
+                'whether pulse_z is an index, once a turn of the encoder, that checks the count; default true',
+            }),
+          ),
+          gearRatio: Type.Optional(
+            Type.Number({
+              exclusiveMinimum: 0,
+              maximum: 10_000,
+              description: 'turns of the encoder per turn of the nacelle; default 1',
+            }),
+          ),
+          twistLimitTurns: Type.Optional(
+            Type.Number({
+              exclusiveMinimum: 0,
+              maximum: 20,
+              description: 'turns to one side after which the controller untwists the cable',
+            }),
+          ),
+          zeroDeg,
+          direction,
+        },
+        { additionalProperties: false },
+      ),
+    ),
+    ultrasonic: Type.Optional(
+      Type.Object(
+        {
+          pathLengthM: Type.Number({
+            exclusiveMinimum: 0,
+            maximum: 5,
+            description: 'between the transducers of a path, m; the same for all',
+          }),
+          directionsDeg: Type.Array(Type.Number({ minimum: -360, maximum: 360 }), {
+            minItems: 2,
+            maxItems: 3,
+            description:
+              'bearing that the forward pulse of each path travels to, clockwise from ahead of the nacelle: transit_1 and transit_2 are the first path forward and backward, and so on',
+          }),
         },
         { additionalProperties: false },
       ),

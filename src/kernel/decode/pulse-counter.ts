@@ -47,6 +47,8 @@ export interface IndexError {
 export interface PulseCounts {
   /** Running count, wound over turns; NaN before the first known row. */
   readonly count: Float64Array
+  /** Rows in which A or B changed. */
+  readonly changes: number
   /** Rows in which A and B changed at once: the way is not known, and nothing is counted. */
   readonly jumps: readonly number[]
   readonly indexErrors: readonly IndexError[]
@@ -105,12 +107,14 @@ export class PulseCounter {
     const count = new Float64Array(n)
     const jumps: number[] = []
     const indexErrors: IndexError[] = []
+    let changes = 0
     let indexPulses = 0
     for (let i = 0; i < n; i++) {
       if (!Number.isNaN(a[i]! + b[i]!)) {
         const levels = (a[i]! >= 0.5 ? 2 : 0) + (b[i]! >= 0.5 ? 1 : 0)
         const before = this.#count
         if (this.#levels >= 0) {
+          if (levels !== this.#levels) changes++
           if (!this.#quadrature) {
             if (levels >= 2 && this.#levels < 2) this.#count += levels === 3 ? 1 : -1
           } else if ((levels ^ this.#levels) === BOTH_CHANGED) jumps.push(i)
@@ -138,7 +142,7 @@ export class PulseCounter {
       }
       count[i] = this.#levels < 0 ? NaN : this.#count
     }
-    return { count, jumps, indexErrors, indexPulses }
+    return { count, changes, jumps, indexErrors, indexPulses }
   }
 
   /** How far a count at the index stands from the nearest whole turn from the reference; the first one is the reference. */

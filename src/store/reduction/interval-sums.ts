@@ -1,5 +1,5 @@
 import { quoteIdentifier } from '../../duck/index.ts'
-import { NUMBER_CHANNELS } from '../../sheet/index.ts'
+import { NUMBER_CHANNELS, RAW_CHANNELS } from '../../sheet/index.ts'
 import { BIN_SQL } from './high-rate.ts'
 
 /** Numbers are summed as whole millionths of their unit, sines and cosines as whole 1e-12: whole sums know no order. */
@@ -17,6 +17,8 @@ const ANGLES: ReadonlySet<string> = new Set([
   'reference_direction',
   'reference_yaw_error',
 ])
+
+const RAW: ReadonlySet<string> = new Set(RAW_CHANNELS)
 
 /** `angle`: unit vectors; `position`: an angle that may be wound over turns; `mean`: a number of which the mean is enough. */
 export type ChannelKind = 'number' | 'angle' | 'position' | 'mean'
@@ -37,6 +39,7 @@ export interface HighRateChannel {
 export function highRateChannels(columns: readonly string[]): HighRateChannel[] {
   const all = new Set(columns)
   return columns
+    .filter((name) => !RAW.has(baseOf(name)))
     .filter((name) => name in NUMBER_CHANNELS || (baseOf(name) in NUMBER_CHANNELS && !all.has(baseOf(name))))
     .map((name) => ({
       name,
