@@ -1,6 +1,7 @@
 export type { DayWeights } from '../kernel/stats/index.ts'
 export { dayBlocks } from './offset/day-blocks.ts'
-export { energyLoss } from './energy/energy-loss.ts'
+export { energyLoss, type EnergyLossRequest } from './energy/energy-loss.ts'
+export { pricesOver, type Prices } from './energy/prices.ts'
 export { powerCurveTable } from './energy/power-curve-table.ts'
 export { readiness, type Block } from './sensors/readiness.ts'
 export { score, type Score } from './energy/score.ts'

@@ -2,6 +2,7 @@ import {
   clockLags,
   dayBlocks,
   headingSteps,
+  pricesOver,
   signChecks,
   type HighRateRecord,
   vaneAndAnemometer,
@@ -54,6 +55,11 @@ export async function scoreFarm(
   const clocks = clockLags(frame)
   const headings = headingSteps(frame)
   const sensors = vaneAndAnemometer(frame)
+  const prices = pricesOver(site.value, {
+    timezone: frame.calendar.timezone,
+    fromMs: frame.fromMs,
+    toMs: frame.toMs,
+  })
   const { intervalS: rowS, fromMs, toMs, turbines: rows } = frame
   const neighbours =
     settings.assumedResponsePctPerDeg === null
@@ -78,6 +84,8 @@ export async function scoreFarm(
         sign: signs[i]!,
         heading: headings[i] ?? null,
         events: eventsOf(site, turbine),
+        longTerm: site.longTerm,
+        prices,
         highRate: highRate.find((record) => record.turbine === turbine.turbine) ?? null,
         farmFindings: [
           ...(clocks[i] ?? []),

@@ -15,6 +15,7 @@ import {
   type FarmEstimate,
   type HeadingRecord,
   type HighRateRecord,
+  type Prices,
   type SignCheck,
   type StaticOffsetAnswer,
   type TurbineEvent,
@@ -22,7 +23,7 @@ import {
   type Verdict,
 } from '../analysis/index.ts'
 import { correctSpeed, countReasons, reasonsSince, rowsSince, type TurbineFrame } from '../frame/index.ts'
-import { SET_ASIDE_REASONS, type ScoringSettings, type TurbineSheet } from '../sheet/index.ts'
+import { SET_ASIDE_REASONS, type LongTerm, type ScoringSettings, type TurbineSheet } from '../sheet/index.ts'
 import { adviceFor } from './advice.ts'
 import { CAUTIONS } from './cautions.ts'
 
@@ -40,6 +41,10 @@ export interface ScoreTask {
   readonly heading: HeadingRecord | null
   /** What was done to this turbine, from the site file. */
   readonly events: readonly TurbineEvent[]
+  /** What the wind of a year is judged by, from the site file. */
+  readonly longTerm: LongTerm | undefined
+  /** What energy is worth; null = no money is shown. */
+  readonly prices: Prices | null
   /** Findings that need the whole farm, such as a clock that is off. */
   readonly farmFindings: TurbineSheet['sensors']
   /** What the high-rate rows behind the intervals told; null = the log holds none. */
@@ -98,6 +103,8 @@ export function scoreTurbine(task: ScoreTask): TurbineSheet {
       exponent: settings.exponent,
       offset: standing,
       byExponent: answer.byExponent,
+      longTerm: task.longTerm,
+      prices: task.prices,
     }),
     powerCurve: powerCurveTable(frame),
     sensors: [

@@ -64,7 +64,10 @@ function explain(errors: readonly ErrorObject[], root: string): string {
     return `${joinPlace(root, error.instancePath, missingProperty)}: expected a value, got none`
   }
   const expected = union && error === last ? branches(errors, last) : expectation(error)
-  return `${joinPlace(root, error.instancePath)}: expected ${expected}, got ${shown(error.data)}`
+  const got = COUNTED.includes(error.keyword)
+    ? `a list of ${(error.data as unknown[]).length}`
+    : shown(error.data)
+  return `${joinPlace(root, error.instancePath)}: expected ${expected}, got ${got}`
 }
 
 function deepestOf(errors: readonly ErrorObject[]): ErrorObject | undefined {
@@ -79,6 +82,9 @@ function branches(errors: readonly ErrorObject[], union: ErrorObject): string {
   const own = errors.filter((error) => error !== union && error.instancePath === union.instancePath)
   return [...new Set(own.map(expectation))].join(' or ')
 }
+
+/** Keywords that count the entries of a list: how many there are says more than the first of them. */
+const COUNTED: readonly string[] = ['minItems', 'maxItems']
 
 const ARTICLES: Readonly<Record<string, string>> = {
   number: 'a number',
@@ -102,6 +108,7 @@ function expectation(error: ErrorObject): string {
   }
   if (error.keyword === 'pattern') return `text that matches ${String(schema['pattern'])}`
   if (error.keyword === 'minLength') return `at least ${String(schema['minLength'])} character`
+  if (COUNTED.includes(error.keyword)) return entries(schema)
   if (error.keyword === 'maxLength') return `at most ${String(schema['maxLength'])} characters`
   const type = ARTICLES[String(schema['type'])] ?? error.message ?? 'another value'
   const minimum = (schema['minimum'] ?? schema['exclusiveMinimum']) as number | undefined
@@ -113,6 +120,12 @@ function expectation(error: ErrorObject): string {
   const lower = minimum === undefined ? '' : ` ${above} ${minimum}`
   const upper = maximum === undefined ? '' : ` up to ${maximum}`
   return `${type}${lower}${upper}`
+}
+
+function entries(schema: Record<string, unknown>): string {
+  const { minItems = 0, maxItems } = schema as { minItems?: number; maxItems?: number }
+  if (minItems === maxItems) return `a list of ${minItems}`
+  return `a list of ${minItems > 0 ? `at least ${minItems}` : `at most ${maxItems ?? 'any'}`}`
 }
 
 /** `/turbines/2/ratedPowerKw` -> `site.turbines[2].ratedPowerKw`. */

@@ -1,7 +1,9 @@
 import { IANAZone } from 'luxon'
 import { InputError } from '../errors.ts'
-import { SiteFile } from '../sheet/index.ts'
+import { SiteFile, type SiteValue } from '../sheet/index.ts'
 import { checkShape } from './check-shape.ts'
+
+const PRICES = ['pricePerMwh', 'monthlyPricesPerMwh', 'hourlyPricesPerMwh'] as const
 
 /**
  * A site file that came from outside: its schema, and what a schema cannot say.
@@ -17,6 +19,7 @@ export function checkSite(value: unknown, place: string): SiteFile {
       `${place}.timezone: expected an IANA zone such as "Europe/Berlin", got "${site.timezone}"`,
     )
   }
+  if (site.value !== undefined) checkPrice(site.value, `${place}.value`)
   const seen = new Set<string>()
   for (const [index, { turbine }] of (site.turbines ?? []).entries()) {
     if (seen.has(turbine)) {
@@ -36,4 +39,15 @@ export function checkSite(value: unknown, place: string): SiteFile {
     }
   }
   return site
+}
+
+/** Which price holds must not be left to chance. */
+function checkPrice(value: SiteValue, place: string): void {
+  const given = PRICES.filter((name) => value[name] !== undefined)
+  if (given.length !== 1) {
+    throw new InputError(
+      'BAD_SITE',
+      `${place}: expected exactly one of ${PRICES.join(', ')}, got ${given.join(' and ') || 'none'}`,
+    )
+  }
 }

@@ -1,5 +1,6 @@
 import { Type, type Static } from 'typebox'
 import { Interval, IsoTime, Nullable, NullableIsoTime } from './common.ts'
+import { EnergyLoss } from './energy-loss.ts'
 import { Attribution, SensorFinding, SensorTest } from './findings.ts'
 import { Receipt } from './receipt.ts'
 import { ScoringSettings } from './settings.ts'
@@ -153,35 +154,6 @@ const StaticOffset = Type.Object({
       relativePowerSd: Nullable('the same, standard deviation'),
     }),
   ),
-})
-
-const EnergyLoss = Type.Object({
-  exponent: Type.Number(),
-  producedMwh: Nullable('energy of all producing rows of the window'),
-  hours: Nullable('hours that these rows cover'),
-  windowHours: Nullable('hours from the first to the last row'),
-  scaledBy: Nullable('year over hours covered: factor from window to year'),
-  static: Type.Object({
-    windowMwh: Nullable('recoverable by a correction, within the window'),
-    windowInterval95Mwh: Interval('of it'),
-    recoverablePctOfProduced: Nullable('windowMwh over producedMwh'),
-    annualMwh: Nullable('window scaled to a year of 8766 h at the coverage found'),
-    annualInterval95Mwh: Interval('of it; lower end 0 when the interval of m spans 0'),
-  }),
-  dynamic: Type.Object({
-    windowMwh: Nullable('lost to the spread of the yaw error; a correction does not recover it'),
-    annualMwh: Nullable('scaled to a year'),
-  }),
-  band: Type.Array(
-    Type.Object({
-      exponent: Type.Number(),
-      offsetDeg: Nullable('d that belongs to this exponent'),
-      standingDeg: Nullable('m that belongs to it'),
-      staticAnnualMwh: Nullable('annual static loss'),
-    }),
-  ),
-  rows: Count,
-  note: Type.String(),
 })
 
 export const TurbineSheet = Type.Object(

@@ -206,6 +206,66 @@ export const TurbineSetup = Type.Object(
 )
 export type TurbineSetup = Static<typeof TurbineSetup>
 
+/** What the wind of a year is judged by. */
+export const LongTerm = Type.Object(
+  {
+    meanWindSpeedMs: Type.Number({
+      exclusiveMinimum: 0,
+      maximum: 30,
+      description: 'mean of many years at hub height, on the scale of the nacelle anemometers',
+    }),
+    weibullShape: Type.Optional(
+      Type.Number({
+        minimum: 0.8,
+        maximum: 10,
+        description: 'without it the distribution of the window is brought to the long-term mean',
+      }),
+    ),
+    source: Type.String({ minLength: 1, maxLength: 500, description: 'where the mean comes from' }),
+  },
+  {
+    additionalProperties: false,
+    description: 'without it a year ahead is told as a range over mean wind speeds',
+  },
+)
+export type LongTerm = Static<typeof LongTerm>
+
+const Price = (description: string) => Type.Number({ minimum: -100000, maximum: 100000, description })
+
+/** What a megawatt hour is worth and a visit costs. */
+export const SiteValue = Type.Object(
+  {
+    currency: Type.String({ minLength: 1, maxLength: 20, description: 'text that stands behind sums' }),
+    pricePerMwh: Type.Optional(Price('one price')),
+    monthlyPricesPerMwh: Type.Optional(
+      Type.Array(Price('of a month'), {
+        minItems: 12,
+        maxItems: 12,
+        description: 'January to December, by the clock of the site',
+      }),
+    ),
+    hourlyPricesPerMwh: Type.Optional(
+      Type.Array(Price('of an hour'), {
+        minItems: 24,
+        maxItems: 24,
+        description: 'by hour of the day, 0 to 23, by the clock of the site',
+      }),
+    ),
+    visitCost: Type.Optional(
+      Type.Number({
+        minimum: 0,
+        maximum: 1e9,
+        description: 'of one visit to a turbine, with what it does not produce meanwhile',
+      }),
+    ),
+  },
+  {
+    additionalProperties: false,
+    description: 'exactly one of the three kinds of price; without a price no money is shown',
+  },
+)
+export type SiteValue = Static<typeof SiteValue>
+
 /** The site file of the command line and of PUT /v1/sites: one document, one schema. */
 export const SiteFile = Type.Object(
   {
@@ -226,6 +286,8 @@ export const SiteFile = Type.Object(
       }),
     ),
     turbines: Type.Optional(Type.Array(TurbineSetup, { maxItems: 5000 })),
+    longTerm: Type.Optional(LongTerm),
+    value: Type.Optional(SiteValue),
     corrections: Type.Optional(
       Type.Array(
         Type.Object(

@@ -30,6 +30,8 @@ export function benchScoring(print: (text: string) => void): void {
       heading: null,
       events: [],
       highRate: null,
+      longTerm: undefined,
+      prices: null,
     })
     return sheet.rows.accepted
   }

@@ -1,4 +1,4 @@
-import type { ScoreSheet } from '../../src/sheet/index.ts'
+import { BINNED_NOT_A_TEST, type ScoreSheet } from '../../src/sheet/index.ts'
 
 type Turbine = ScoreSheet['turbines'][number]
 
@@ -140,15 +140,38 @@ export function turbineExample(turbine: string, standingDeg: number | null = 6.1
       producedMwh: 510,
       hours: 743,
       windowHours: 744,
-      scaledBy: 11.8,
+      gapHours: 1,
+      gapsScaledBy: 1.0013,
       static: {
         windowMwh: 6.9,
         windowInterval95Mwh: [3.4, 10.2],
         recoverablePctOfProduced: 1.35,
         annualMwh: 81.2,
         annualInterval95Mwh: [40.1, 120.9],
+        byMisalignment: [{ standingDeg: 6, windowMwh: 6.7, annualMwh: 79.1 }],
       },
       dynamic: { windowMwh: 1.9, annualMwh: 22.4 },
+      yearAhead: {
+        basis: 'range over mean wind speeds',
+        meanWindSpeedMs: 7.1,
+        windowMeanWindSpeedMs: 7.1,
+        rangeMwh: [60.3, 95.8],
+        rangeMeanWindSpeedMs: [5.7, 8.5],
+        byMeanWindSpeed: [],
+        note: '',
+      },
+      value: null,
+      curveCheck: {
+        label: BINNED_NOT_A_TEST,
+        hours: 390,
+        hoursNeeded: 180,
+        minutesNeeded: 30,
+        bins: 30,
+        incompleteBins: [],
+        complete: true,
+        note: '',
+      },
+      suppliedCurve: null,
       band: [],
       rows: 3900,
       note: '',

@@ -37,6 +37,35 @@ test.each([
     '{"turbines":[{"turbine":"A"},{"turbine":"A"}]}',
     'site.turbines[1].turbine: expected every turbine once, got "A" again',
   ],
+  [
+    '{"value":{"currency":"EUR","monthlyPricesPerMwh":[1,2,3]}}',
+    'site.value.monthlyPricesPerMwh: expected a list of 12, got a list of 3',
+  ],
+  [
+    JSON.stringify({ value: { currency: 'EUR', hourlyPricesPerMwh: Array.from({ length: 25 }, () => 50) } }),
+    'site.value.hourlyPricesPerMwh: expected a list of 24, got a list of 25',
+  ],
+  [
+    JSON.stringify({
+      value: {
+        currency: 'EUR',
+        hourlyPricesPerMwh: Array.from({ length: 24 }, (_, i) => (i === 7 ? null : 50)),
+      },
+    }),
+    'site.value.hourlyPricesPerMwh[7]: expected a number from -100000 up to 100000, got null',
+  ],
+  ['{"value":{"pricePerMwh":60}}', 'site.value.currency: expected a value, got none'],
+  [
+    '{"value":{"currency":"EUR","visitCost":900}}',
+    'site.value: expected exactly one of pricePerMwh, monthlyPricesPerMwh, hourlyPricesPerMwh, got none',
+  ],
+  [
+    JSON.stringify({
+      value: { currency: 'EUR', pricePerMwh: 60, hourlyPricesPerMwh: Array.from({ length: 24 }, () => 50) },
+    }),
+    'site.value: expected exactly one of pricePerMwh, monthlyPricesPerMwh, hourlyPricesPerMwh, got pricePerMwh and hourlyPricesPerMwh',
+  ],
+  ['{"longTerm":{"meanWindSpeedMs":7.1}}', 'site.longTerm.source: expected a value, got none'],
 ])('the site file %s is refused with place, expected and got', (json, message) => {
   expect(() => parseSite(json, 'site')).toThrow(wrong('BAD_SITE', message))
 })
@@ -46,7 +75,7 @@ test('an unknown name is refused with those that are known', () => {
   expect(call).toThrow(
     wrong(
       'BAD_SITE',
-      'site.turbins: expected one of site, timezone, stamp, intervalS, runningStatus, turbines, corrections, events, exclude, got an unknown name',
+      'site.turbins: expected one of site, timezone, stamp, intervalS, runningStatus, turbines, longTerm, value, corrections, events, exclude, got an unknown name',
     ),
   )
 })

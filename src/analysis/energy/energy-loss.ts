@@ -1,14 +1,17 @@
-import { circularMean, RAD_PER_DEG, wrap180 } from '../../kernel/angle/index.ts'
-import { powerAt } from '../../kernel/wind/index.ts'
+import { circularMean, wrap180 } from '../../kernel/angle/index.ts'
 import type { TurbineFrame } from '../../frame/index.ts'
-import type { TurbineSheet } from '../../sheet/index.ts'
+import { BINNED_NOT_A_TEST, type LongTerm, type TurbineSheet } from '../../sheet/index.ts'
 import { runningBelowRated } from '../vane-statistics.ts'
+import { curveCheck, suppliedCurve } from './curve-check.ts'
+import { gainRows, gainsKw, knownRows } from './gains.ts'
+import { priceAt, type Prices } from './prices.ts'
+import { yearAhead, type Year } from './year-ahead.ts'
 
-/** Mean length of a Gregorian year, h. */
-const YEAR_H = 8765.82
 const KWH_PER_MWH = 1000
-/** The cosine law says nothing about a rotor further off the wind, degrees. */
-const MAX_YAW_ERROR_DEG = 60
+/** Misalignments whose cost is told beside the estimate's, degrees. */
+const SHOWN_DEG = [-9, -6, -3, 3, 6, 9] as const
+
+type EnergyLoss = TurbineSheet['energyLoss']
 
 export interface EnergyLossRequest {
   readonly exponent: number
@@ -21,6 +24,10 @@ export interface EnergyLossRequest {
     readonly endExponents?: readonly [number, number]
   } | null
   readonly byExponent: readonly { exponent: number; offsetDeg: number; standingDeg: number }[]
+  /** What a year's wind is judged by; absent: nothing. */
+  readonly longTerm?: LongTerm | undefined
+  /** Absent or null: no money. */
+  readonly prices?: Prices | null
 }
 
 /**
@@ -31,49 +38,50 @@ export interface EnergyLossRequest {
  * [cos(v) / cos(v + d)]; with one that does not, the mean vane stays out of the gain. Dynamic: what the same rows would
  * gain on top of that if the rotor faced the wind in every interval. Over all producing rows that are not limited.
  *
- * The year is the window scaled by the hours of a year over the hours with rows; wind beyond the window is not known.
+ * The window is filled: gaps are taken to lose at the rate of the rest. The year is another matter, see `yearAhead`.
  */
-export function energyLoss(frame: TurbineFrame, request: EnergyLossRequest): TurbineSheet['energyLoss'] {
+export function energyLoss(frame: TurbineFrame, request: EnergyLossRequest): EnergyLoss {
+  const { exponent, offset } = request
   const hoursPerRow = frame.intervalS / 3600
-  const rows = producingRows(frame)
   const n = frame.time.length
-  const hours = n * hoursPerRow
+  const known = knownRows(frame)
+  const producing = gainRows(frame)
+  const hours = known.reduce((sum, one) => sum + one, 0) * hoursPerRow
   const windowHours = n > 0 ? (frame.time[n - 1]! - frame.time[0]!) / 3.6e6 + hoursPerRow : 0
-  const scaledBy = hours > 0 ? YEAR_H / hours : NaN
-  const producedMwh = (sumOver(runningRows(frame), (i) => frame.power[i]!) * hoursPerRow) / KWH_PER_MWH
+  const gapsScaledBy = hours > 0 ? windowHours / hours : NaN
+  const year = yearAhead(frame, known, producing, request.longTerm, windowHours)
+  let producedMwh = 0
+  let rows = 0
+  for (let i = 0; i < n; i++) {
+    if (frame.running[i] !== 1) continue
+    producedMwh += (frame.power[i]! * hoursPerRow) / KWH_PER_MWH
+    if (frame.limited[i] === 0) rows++
+  }
   const common = {
-    exponent: request.exponent,
+    exponent,
     producedMwh,
     hours,
     windowHours,
-    scaledBy,
-    rows: rows.length,
+    gapHours: Math.max(0, windowHours - hours),
+    gapsScaledBy,
+    rows,
+    curveCheck: curveCheck(frame),
+    suppliedCurve: suppliedCurve(frame, { curveMeanMs: year.curveMeanMs, printedMeanMs: year.meanMs }),
   }
-  const { offset } = request
-  if (!offset) {
-    return {
-      ...common,
-      static: {
-        windowMwh: null,
-        windowInterval95Mwh: [null, null],
-        recoverablePctOfProduced: null,
-        annualMwh: null,
-        annualInterval95Mwh: [null, null],
-      },
-      dynamic: { windowMwh: null, annualMwh: null },
-      band: [],
-      note: 'no loss without an offset',
-    }
-  }
+  if (!offset) return { ...common, ...withoutOffset(year) }
+
   const meanVaneDeg = wrap180(circularMean(runningBelowRated(frame).map((i) => frame.vane[i]!)).direction)
-  const basePower = Float64Array.from(rows, (i) => powerAt(frame.curve, frame.normalisedSpeed[i]!))
-  /** Static loss of the window if the rotor stands off by `standingDeg`, MWh. */
-  const staticMwh = (standingDeg: number, exponent: number): number =>
-    gainMwh(frame, { rows, basePower }, hoursPerRow, exponent, (vane) => {
+  /** Gains of the rows if the rotor stands off by `standingDeg` and that is corrected, kW. */
+  const staticGains = (standingDeg: number, p: number): Float64Array =>
+    gainsKw(frame, producing, p, (vane) => {
       const error = vane - meanVaneDeg + standingDeg
       return [error, error - standingDeg]
     })
-  const windowMwh = staticMwh(offset.standingDeg, request.exponent)
+  const seenMwh = (gains: Float64Array): number =>
+    (gains.reduce((sum, kw) => sum + kw, 0) * hoursPerRow) / KWH_PER_MWH
+  const windowMwh = (gains: Float64Array): number => seenMwh(gains) * gapsScaledBy
+
+  const at = staticGains(offset.standingDeg, exponent)
   const [low, high] = offset.standingInterval95Deg
   const [lowExponent, highExponent] = offset.endExponents ?? [request.exponent, request.exponent]
   const ends = [staticMwh(low, lowExponent), staticMwh(high, highExponent)]
@@ -84,70 +92,126 @@ export function energyLoss(frame: TurbineFrame, request: EnergyLossRequest): Tur
       vane - meanVaneDeg + offset.standingDeg,
       0,
     ]) - windowMwh
+  const ends = [staticGains(low, exponent), staticGains(high, exponent)]
+  const lowest = low <= 0 && high >= 0 ? 0 : null
+  const interval = (energyOf: (gains: Float64Array) => number): [number, number] => {
+    const energies = ends.map(energyOf)
+    return [lowest ?? Math.max(0, Math.min(...energies)), Math.max(...energies)]
+  }
+  const faced = gainsKw(frame, producing, exponent, (vane) => [vane - meanVaneDeg + offset.standingDeg, 0])
+  const dynamic = faced.map((gain, k) => gain - at[k]!)
+  const shown = SHOWN_DEG.map((standingDeg) => ({ standingDeg, gains: staticGains(standingDeg, exponent) }))
+  const { rangeMwh, meansMs } = year.rangeOf(at)
+  const annualInterval = interval((gains) => year.energyOf(gains))
+  const annualMwh = year.energyOf(at)
   return {
     ...common,
     static: {
-      windowMwh,
-      windowInterval95Mwh: [...interval],
-      recoverablePctOfProduced: producedMwh > 0 ? (100 * windowMwh) / producedMwh : NaN,
-      annualMwh: windowMwh * scaledBy,
-      annualInterval95Mwh: [interval[0] * scaledBy, interval[1] * scaledBy],
+      windowMwh: windowMwh(at),
+      windowInterval95Mwh: interval(windowMwh),
+      recoverablePctOfProduced: producedMwh > 0 ? (100 * seenMwh(at)) / producedMwh : NaN,
+      annualMwh,
+      annualInterval95Mwh: annualInterval,
+      byMisalignment: shown.map(({ standingDeg, gains }) => ({
+        standingDeg,
+        windowMwh: windowMwh(gains),
+        annualMwh: year.energyOf(gains),
+      })),
     },
-    dynamic: { windowMwh: dynamicMwh, annualMwh: dynamicMwh * scaledBy },
-    band: request.byExponent.map(({ exponent, offsetDeg, standingDeg }) => ({
-      exponent,
-      offsetDeg,
-      standingDeg,
-      staticAnnualMwh: staticMwh(standingDeg, exponent) * scaledBy,
-    })),
+    dynamic: { windowMwh: windowMwh(dynamic), annualMwh: year.energyOf(dynamic) },
+    yearAhead: {
+      ...yearHead(year),
+      rangeMwh,
+      rangeMeanWindSpeedMs: meansMs,
+      byMeanWindSpeed: year.table({ at, ends, low: lowest, dynamic }),
+    },
+    value: worth(frame, request.prices ?? null, {
+      rows: producing.rows,
+      at,
+      // Which hours and months a correction pays in does not hang on its size.
+      typical: shown.find(({ standingDeg }) => standingDeg === (offset.standingDeg < 0 ? -6 : 6))!.gains,
+      windowMwh: windowMwh(at),
+      annualMwh,
+      annualInterval,
+    }),
+    band: request.byExponent.map(({ exponent: p, offsetDeg, standingDeg }) => {
+      const gains = staticGains(standingDeg, p)
+      return {
+        exponent: p,
+        offsetDeg,
+        standingDeg,
+        staticWindowMwh: windowMwh(gains),
+        staticAnnualMwh: year.energyOf(gains),
+      }
+    }),
     note:
-      'from interval means over all producing rows that are not limited; a year is the window scaled to 8766 h over ' +
-      'the hours with rows, and holds no wind but that of the window',
+      'from interval means over all producing rows that are not limited, at most rated power; gaps of the window are taken to lose at the ' +
+      `rate of the rest; the curve is ${BINNED_NOT_A_TEST}`,
   }
 }
 
-/**
- * Energy that rows gain when their yaw error changes from the first to the second angle of `errorsDeg`, MWh.
- *
- * @param producing.basePower  the curve's answer at the rows' wind speeds, kW; length as `rows`.
- */
-function gainMwh(
-  frame: TurbineFrame,
-  producing: { rows: readonly number[]; basePower: Float64Array },
-  hoursPerRow: number,
-  exponent: number,
-  errorsDeg: (vaneDeg: number) => readonly [number, number],
-): number {
-  const rated = Number.isNaN(frame.ratedPowerKw) ? Infinity : frame.ratedPowerKw
-  const { rows, basePower } = producing
-  let gainKw = 0
-  for (let k = 0; k < rows.length; k++) {
-    const i = rows[k]!
-    const power = basePower[k]!
-    if (Number.isNaN(power)) continue // no curve there: below cut-in or far above rated, where yaw changes nothing seen
-    const [now, then] = errorsDeg(frame.vane[i]!)
-    const ratio = cosine(then) / cosine(now)
-    const faced = powerAt(frame.curve, frame.normalisedSpeed[i]! * ratio ** (exponent / 3))
-    // Beyond the last bin the curve has no answer: the turbine is at what it showed at most.
-    gainKw += Math.min(rated, Number.isNaN(faced) ? power : faced) - Math.min(rated, power)
+function withoutOffset(year: Year) {
+  return {
+    static: {
+      windowMwh: null,
+      windowInterval95Mwh: [null, null],
+      recoverablePctOfProduced: null,
+      annualMwh: null,
+      annualInterval95Mwh: [null, null],
+      byMisalignment: [],
+    },
+    dynamic: { windowMwh: null, annualMwh: null },
+    yearAhead: {
+      ...yearHead(year),
+      rangeMwh: [null, null],
+      rangeMeanWindSpeedMs: [null, null],
+      byMeanWindSpeed: year.table(null),
+    },
+    value: null,
+    band: [],
+    note: 'no loss without an offset',
   }
-  return (gainKw * hoursPerRow) / KWH_PER_MWH
 }
 
-function cosine(angleDeg: number): number {
-  return Math.cos(Math.min(MAX_YAW_ERROR_DEG, Math.abs(wrap180(angleDeg))) * RAD_PER_DEG)
+function yearHead(year: Year) {
+  const { basis, note, meanMs, windowMeanMs } = year
+  return { basis, note, meanWindSpeedMs: meanMs, windowMeanWindSpeedMs: windowMeanMs }
 }
 
-function producingRows(frame: TurbineFrame): number[] {
-  return runningRows(frame).filter((i) => frame.limited[i] === 0)
+interface Recovered {
+  readonly rows: Int32Array
+  readonly at: Float64Array
+  readonly typical: Float64Array
+  readonly windowMwh: number
+  readonly annualMwh: number
+  readonly annualInterval: readonly [number, number]
 }
 
-function runningRows(frame: TurbineFrame): number[] {
-  const rows: number[] = []
-  for (let i = 0; i < frame.time.length; i++) if (frame.running[i] === 1) rows.push(i)
-  return rows
-}
-
-function sumOver(rows: readonly number[], valueOf: (row: number) => number): number {
-  return rows.reduce((sum, i) => sum + valueOf(i), 0)
+/** What the static loss is worth: the window at the prices of its rows, the year at the price it is valued at. */
+function worth(frame: TurbineFrame, prices: Prices | null, recovered: Recovered): EnergyLoss['value'] {
+  if (prices === null) return null
+  const { rows, windowMwh, annualMwh, annualInterval } = recovered
+  const meanPrice = (weights: Float64Array): number => {
+    if (prices.slots === null) return prices.flatPerMwh
+    let sum = 0
+    let total = 0
+    for (let k = 0; k < rows.length; k++) {
+      sum += weights[k]! * priceAt(prices, frame.time[rows[k]!]!)
+      total += weights[k]!
+    }
+    return total > 0 ? sum / total : NaN
+  }
+  const typicalPrice = meanPrice(recovered.typical)
+  const windowPrice = windowMwh > 0 ? meanPrice(recovered.at) : typicalPrice
+  const annualPrice = Number.isNaN(prices.annualPerMwh) ? typicalPrice : prices.annualPerMwh
+  const ends = annualInterval.map((mwh) => mwh * annualPrice)
+  return {
+    currency: prices.currency,
+    windowPricePerMwh: windowPrice,
+    annualPricePerMwh: annualPrice,
+    window: windowMwh * windowPrice,
+    annual: annualMwh * annualPrice,
+    annualInterval95: [Math.min(...ends), Math.max(...ends)],
+    note: prices.note,
+  }
 }

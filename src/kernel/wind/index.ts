@@ -11,4 +11,4 @@ export { measuredPowerCurve, powerAt, type CurveOptions, type MeasuredCurve } fr
 export { kneeSpeed, ratedPowerFrom } from './rated-power.ts'
 export { pressureFromAltitude } from './standard-atmosphere.ts'
 export { steepnessAt } from './steepness.ts'
-export { rayleighCumulative, weibullCumulative } from './wind-distribution.ts'
+export { rayleighCumulative, weibullCumulative, weibullScale, weibullShapeFrom } from './wind-distribution.ts'

@@ -45,11 +45,12 @@ test('on u^3 and a steady vane the share lost is 1 - cos^p', () => {
 
 test('the produced energy is that of the running rows', () => {
   const frame = steadyFrame()
-  const { producedMwh, hours, windowHours, scaledBy, rows } = lossOf(frame, 5)
+  const { producedMwh, hours, windowHours, gapHours, gapsScaledBy, rows } = lossOf(frame, 5)
   expect(producedMwh).toBeCloseTo(frame.power.reduce((sum, kw) => sum + kw, 0) / 6 / 1000, 9)
   expect(hours).toBeCloseTo(480, 9)
   expect(windowHours).toBeCloseTo(480, 9)
-  expect(scaledBy).toBeCloseTo(8765.82 / 480, 9) // 365.2425 days of 24 hours
+  expect(gapHours).toBe(0)
+  expect(gapsScaledBy).toBe(1)
   expect(rows).toBe(20 * 144)
 })
 
@@ -83,8 +84,8 @@ test('the interval of the loss is that of the misalignment, from 0 where that sp
   expect(open.windowInterval95Mwh[0]).toBe(0)
   expect(open.windowInterval95Mwh[1]).toBeCloseTo(lossOf(frame, 6).static.windowMwh!, 9)
   expect(open.annualInterval95Mwh[0]).toBe(0)
-  // The year is the window, scaled.
-  expect(clear.annualMwh! / clear.windowMwh!).toBeCloseTo(8765.82 / 480, 9)
+  expect(clear.annualInterval95Mwh[0]).toBeLessThan(clear.annualMwh!)
+  expect(clear.annualInterval95Mwh[1]).toBeGreaterThan(clear.annualMwh!)
 })
 
 test('the same rows at a smaller exponent mean a larger offset and a larger loss', () => {
@@ -168,10 +169,29 @@ test('hours without rows are not hours covered', () => {
       Object.entries(columns.numbers).map(([key, values]) => [key, values.filter(kept)]),
     ),
   }
-  const { hours, windowHours, scaledBy } = lossOf(frameOf(gappy).frame, 5)
+  const { hours, windowHours, gapHours, gapsScaledBy, static: loss } = lossOf(frameOf(gappy).frame, 5)
   expect(hours).toBeCloseTo(360, 9)
   expect(windowHours).toBeCloseTo(480, 9)
-  expect(scaledBy).toBeCloseTo(8765.82 / 360, 9)
+  expect(gapHours).toBeCloseTo(120, 9)
+  expect(gapsScaledBy).toBeCloseTo(480 / 360, 9)
+  // The gap loses at the rate of the rest; 15 of the 20 days are alike to the whole within their weather.
+  const whole = lossOf(frameOf(columns).frame, 5).static.windowMwh!
+  expect(Math.abs(loss.windowMwh! / whole - 1)).toBeLessThan(0.1)
+})
+
+test('a row without a vane is a gap while the turbine produces, and none while it stands', () => {
+  const columns = syntheticColumns({ days: 20 })
+  const holes = (of: Float64Array, power: number) => ({
+    ...columns,
+    numbers: {
+      ...columns.numbers,
+      vane: of.map((value, i) => (i % 4 === 0 ? NaN : value)),
+      power: columns.numbers['power']!.map((kw, i) => (i % 4 === 0 ? power * kw : kw)),
+    },
+  })
+  const vane = columns.numbers['vane']!
+  expect(lossOf(frameOf(holes(vane, 1)).frame, 5).gapHours).toBeCloseTo(120, 9)
+  expect(lossOf(frameOf(holes(vane, -0.01)).frame, 5).gapHours).toBe(0)
 })
 
 test('the table of the curve is the curve: u^3 and its steepness 3', () => {

@@ -1,5 +1,10 @@
 import { expect, test } from 'vitest'
-import { rayleighCumulative, weibullCumulative } from '../../../src/kernel/wind/index.ts'
+import {
+  rayleighCumulative,
+  weibullCumulative,
+  weibullScale,
+  weibullShapeFrom,
+} from '../../../src/kernel/wind/index.ts'
 
 test('Rayleigh shares are those of the closed form', () => {
   // Reference run (numpy) of 1 - exp(-(pi/4)(V/Vave)^2).
@@ -49,4 +54,25 @@ test('a scale, shape or mean that is not above 0 is refused', () => {
   expect(() => rayleighCumulative(5, NaN)).toThrow(outOfRange)
   expect(() => weibullCumulative(5, { scaleMs: 0, shape: 2 })).toThrow(outOfRange)
   expect(() => weibullCumulative(5, { scaleMs: 5, shape: NaN })).toThrow(outOfRange)
+})
+
+test('a Weibull scale gives the mean it was asked for, and shape 2 the Rayleigh distribution', () => {
+  expect(Math.abs(weibullScale(7, 2) / ((2 * 7) / Math.sqrt(Math.PI)) - 1)).toBeLessThan(1e-8)
+  expect(Math.abs(weibullScale(7, 1) / 7 - 1)).toBeLessThan(1e-8) // exponential: scale and mean are one
+  for (const shape of [1.5, 2.3, 3.5]) {
+    const scaleMs = weibullScale(7, shape)
+    let mean = 0
+    for (let v = 0.005; v < 80; v += 0.01) mean += 0.01 * (1 - weibullCumulative(v, { scaleMs, shape }))
+    expect(mean).toBeCloseTo(7, 4)
+  }
+  expect(() => weibullScale(0, 2)).toThrow(expect.objectContaining({ code: 'OUT_OF_RANGE' }))
+  expect(() => weibullScale(7, NaN)).toThrow(expect.objectContaining({ code: 'OUT_OF_RANGE' }))
+})
+
+test('a shape is read back from mean and spread to 1.2 percent', () => {
+  // SD / mean of a Weibull distribution is sqrt(Gamma(1 + 2/k) / Gamma(1 + 1/k)^2 - 1); Rayleigh: sqrt(4/pi - 1).
+  expect(Math.abs(weibullShapeFrom(7, 7 * Math.sqrt(4 / Math.PI - 1)) / 2 - 1)).toBeLessThan(0.012)
+  expect(weibullShapeFrom(7, 7)).toBeCloseTo(1, 12)
+  expect(weibullShapeFrom(7, 0)).toBeNaN()
+  expect(weibullShapeFrom(NaN, 2)).toBeNaN()
 })
