@@ -83,16 +83,8 @@ export function energyLoss(frame: TurbineFrame, request: EnergyLossRequest): Ene
 
   const at = staticGains(offset.standingDeg, exponent)
   const [low, high] = offset.standingInterval95Deg
-  const [lowExponent, highExponent] = offset.endExponents ?? [request.exponent, request.exponent]
-  const ends = [staticMwh(low, lowExponent), staticMwh(high, highExponent)]
-  const spansZero = low <= 0 && high >= 0
-  const interval = [spansZero ? 0 : Math.max(0, Math.min(...ends)), Math.max(...ends)] as const
-  const dynamicMwh =
-    gainMwh(frame, { rows, basePower }, hoursPerRow, request.exponent, (vane) => [
-      vane - meanVaneDeg + offset.standingDeg,
-      0,
-    ]) - windowMwh
-  const ends = [staticGains(low, exponent), staticGains(high, exponent)]
+  const [lowExponent, highExponent] = offset.endExponents ?? [exponent, exponent]
+  const ends = [staticGains(low, lowExponent), staticGains(high, highExponent)]
   const lowest = low <= 0 && high >= 0 ? 0 : null
   const interval = (energyOf: (gains: Float64Array) => number): [number, number] => {
     const energies = ends.map(energyOf)
