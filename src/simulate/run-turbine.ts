@@ -111,6 +111,7 @@ export function runTurbine(
   const { vaneNoiseDeg, vaneSlowNoiseDeg, anemometerNoiseMs, anemometerSlowError } = scenario
   const { directionSdDeg, localSpeedSd, localDirectionSdDeg, vaneLogged } = scenario
   const { anemometerGain, responsePerDeg } = plan
+  const { anemometerResponseSquarePerDeg2: square, anemometerResponseCubePerDeg3: cube } = scenario
 
   const second = scenario.secondVaneOffsetDeg
   const secondNoise = streamOf(PURPOSE.secondVane)
@@ -242,8 +243,9 @@ export function runTurbine(
 
         const bend =
           flow > RESPONSE_MAX_DEG ? RESPONSE_MAX_DEG : flow < -RESPONSE_MAX_DEG ? -RESPONSE_MAX_DEG : flow
+        const response = 1 + bend * (responsePerDeg + bend * (square + bend * cube))
         let wind =
-          nodeWind * (1 + gustSize * gust) * anemometerGain * (1 + responsePerDeg * bend) * (1 + nodeError) +
+          nodeWind * (1 + gustSize * gust) * anemometerGain * response * (1 + nodeError) +
           anemometerNoiseMs * windNoise[i]!
         if (wind < 0) wind = 0
         if (faulty) wind = anemometerFaults.read(wind)

@@ -71,6 +71,9 @@ export interface FarmScenario {
   anemometerResponsePerDeg: number
   /** Standard deviation of a between turbines. */
   anemometerResponseSpread: number
+  /** Further terms of the reading, relative, alike on all turbines: times the square and the cube of the vane in degrees. */
+  anemometerResponseSquarePerDeg2: number
+  anemometerResponseCubePerDeg3: number
   /** Standard deviation of the anemometers' gains between turbines. */
   anemometerGainSpread: number
   /** Slow error (20 min) of the anemometer against the rotor's mean wind, relative, rms. */
@@ -160,6 +163,8 @@ const DEFAULTS: FarmScenario = {
   vaneBits: 0,
   anemometerResponsePerDeg: 0,
   anemometerResponseSpread: 0,
+  anemometerResponseSquarePerDeg2: 0,
+  anemometerResponseCubePerDeg3: 0,
   anemometerGainSpread: 0.02,
   anemometerSlowError: 0.022,
   anemometerNoiseMs: 0.15,
@@ -209,6 +214,8 @@ const RANGES: readonly [keyof FarmScenario, number, number][] = [
   ['vaneBits', 0, 16],
   ['anemometerResponsePerDeg', -0.02, 0.02],
   ['anemometerResponseSpread', 0, 0.01],
+  ['anemometerResponseSquarePerDeg2', -0.001, 0.001],
+  ['anemometerResponseCubePerDeg3', -0.0001, 0.0001],
   ['anemometerGainSpread', 0, 0.2],
   ['anemometerSlowError', 0, 0.2],
   ['anemometerNoiseMs', 0, 2],

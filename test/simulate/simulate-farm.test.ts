@@ -203,6 +203,23 @@ test('an anemometer that answers to the vane reads more on one side, by as much 
   expect(slope(-0.003) - slope(0)).toBeCloseTo(-0.003 * 0.97, 4)
 })
 
+test('an anemometer may read less on either side, or ever more towards one', () => {
+  const base: Partial<FarmScenario> = {
+    ...{ seed: 9, turbines: 1, days: 1, rateS: 1, offsetsDeg: [0] },
+    ...{ vaneNoiseDeg: 0, vaneSlowNoiseDeg: 0, anemometerNoiseMs: 0 },
+  }
+  const straight = simulateFarm(base).turbines[0]!
+  const terms = { anemometerResponseSquarePerDeg2: -1e-4, anemometerResponseCubePerDeg3: 1e-5 }
+  const bent = simulateFarm({ ...base, ...terms }).turbines[0]!
+  // Without noise the vane is what the anemometer answers to, and the reading is a product; angles carry rounding of 360 turns.
+  for (const row of [100, 1000, 2000]) {
+    const vane = straight.columns.vane[row]!
+    const ratio = bent.columns.wind_speed[row]! / straight.columns.wind_speed[row]!
+    expect(Math.abs(vane), `row ${row}`).toBeGreaterThan(0.01)
+    expect(ratio, `row ${row}`).toBeCloseTo(1 - 1e-4 * vane ** 2 + 1e-5 * vane ** 3, 9)
+  }
+})
+
 test('a vane before correction differs from the one after it by the correction', () => {
   const corrected: Partial<FarmScenario> = { ...short, offsetsDeg: [2, -1], correctionsDeg: [5, 0] }
   const after = simulateFarm(corrected).turbines[0]!
