@@ -30,3 +30,4 @@ export {
 export { examineDay, type HighRateDay, type HighRateRecord } from './high-rate/examine-day.ts'
 export { vaneAndAnemometer } from './sensors/vane-and-anemometer.ts'
 export { joinReports, type SensorReport } from './sensors/sensor-report.ts'
+export { proveCorrections, type ProveQuestion } from './proof/prove-corrections.ts'

@@ -11,7 +11,6 @@ export {
   type SetAsideInput,
 } from './set-aside.ts'
 export { correctSpeed } from './correct-speed.ts'
-export { reasonsSince, rowsSince } from './rows-since.ts'
 export type { SensorSpell } from './still-spells.ts'
 export {
   DECODED_CHANNELS,
@@ -21,3 +20,4 @@ export {
   type DecodedChannel,
   type DecodingAccount,
 } from './raw-words.ts'
+export { reasonsSince, rowsBetween, rowsSince } from './rows-since.ts'

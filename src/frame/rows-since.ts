@@ -7,13 +7,22 @@ import { REASON_CODE } from './set-aside.ts'
  * @param fromMs  epoch ms; a moment before the first row gives the frame itself.
  */
 export function rowsSince(frame: TurbineFrame, fromMs: number): TurbineFrame {
+  return rowsBetween(frame, fromMs, Infinity)
+}
+
+/** The rows of a frame in [fromMs, toMs), as {@link rowsSince} gives them. */
+export function rowsBetween(frame: TurbineFrame, fromMs: number, toMs: number): TurbineFrame {
   const n = frame.time.length
-  const first = frame.time.findIndex((time) => time >= fromMs)
-  const from = first < 0 ? n : first
-  if (from === 0) return frame
+  const indexOf = (ms: number): number => {
+    const first = frame.time.findIndex((time) => time >= ms)
+    return first < 0 ? n : first
+  }
+  const from = indexOf(fromMs)
+  const to = indexOf(toMs)
+  if (from === 0 && to === n) return frame
   const cut = Object.entries(frame).map(([name, values]) => [
     name,
-    isRowArray(values, n) ? values.slice(from) : (values as unknown),
+    isRowArray(values, n) ? values.slice(from, to) : (values as unknown),
   ])
   return Object.fromEntries(cut) as TurbineFrame
 }

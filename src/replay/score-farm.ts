@@ -11,6 +11,7 @@ import {
 } from '../analysis/index.ts'
 import { buildFrame, type TurbineColumns, type TurbineFrame } from '../frame/index.ts'
 import type { Receipt, ScoreSheet, ScoringSettings, SiteFile, TurbineSheet } from '../sheet/index.ts'
+import { withCorrections } from './corrections.ts'
 import type { Scorers } from './scorers.ts'
 import { worklistOf } from './worklist.ts'
 
@@ -72,7 +73,7 @@ export async function scoreFarm(
       : null
 
   let done = 0
-  const turbines = await Promise.all(
+  const scored = Promise.all(
     frame.turbines.map(async (turbine, i): Promise<TurbineSheet> => {
       const sheet = await scorers.score({
         frame: turbine,
@@ -98,6 +99,20 @@ export async function scoreFarm(
       return sheet
     }),
   )
+  const proved = !site.corrections?.length
+    ? []
+    : scorers.prove({
+        farm: { intervalS: rowS, fromMs, toMs, turbines: rows },
+        days,
+        dayWeights,
+        settings,
+        corrections: site.corrections,
+        events: site.events ?? [],
+        headings,
+        responses: rows.map((_, i) => neighbours?.response.turbines[i] ?? null),
+        blocked: signs.map(({ block }) => block !== null),
+      })
+  const [turbines, proofs] = await Promise.all([scored, proved])
   for (const turbine of frame.turbines) {
     for (const note of turbine.notes) warnings.push(`${turbine.turbine}: ${note}`)
   }
@@ -106,7 +121,7 @@ export async function scoreFarm(
       warnings.push(`${setup.turbine}: in the site file, but not in the log`)
     }
   }
-  return {
+  const sheet: ScoreSheet = {
     replay: request.replay,
     site: site.site ?? null,
     window: { from: iso(frame.fromMs), to: iso(frame.toMs), intervalS },
@@ -137,6 +152,7 @@ export async function scoreFarm(
     corrections: [],
     warnings,
   }
+  return withCorrections(sheet, proofs)
 }
 
 /** What the site file says was done to a turbine. A correction changes the logged vane only where the log holds it after correction. */

@@ -1,4 +1,4 @@
-import { compareNeighbours, examineDay } from '../analysis/index.ts'
+import { compareNeighbours, examineDay, proveCorrections } from '../analysis/index.ts'
 import { scoreTurbine } from './score-turbine.ts'
 import type { Work, WorkAnswer } from './scorers.ts'
 
@@ -6,5 +6,6 @@ import type { Work, WorkAnswer } from './scorers.ts'
 export default function work(task: Work): WorkAnswer {
   if (task.kind === 'turbine') return scoreTurbine(task.task)
   if (task.kind === 'high-rate-day') return examineDay(task.rows)
+  if (task.kind === 'proof') return proveCorrections(task.question)
   return compareNeighbours(task.farm, task.days, task.dayWeights, task.settings)
 }

@@ -5,13 +5,15 @@ import {
   buffersOf,
   compareNeighbours,
   examineDay,
+  proveCorrections,
   type DayWeights,
   type FarmRows,
   type HighRateDay,
   type HighRateRows,
   type Neighbours,
+  type ProveQuestion,
 } from '../analysis/index.ts'
-import type { ScoringSettings, TurbineSheet } from '../sheet/index.ts'
+import type { CorrectionProof, ScoringSettings, TurbineSheet } from '../sheet/index.ts'
 import { scoreTurbine, type ScoreTask } from './score-turbine.ts'
 
 export interface FarmTask {
@@ -26,7 +28,8 @@ export type Work =
   | { readonly kind: 'turbine'; readonly task: ScoreTask }
   | ({ readonly kind: 'farm' } & FarmTask)
   | { readonly kind: 'high-rate-day'; readonly rows: HighRateRows }
-export type WorkAnswer = TurbineSheet | Neighbours | HighRateDay | null
+  | { readonly kind: 'proof'; readonly question: ProveQuestion }
+export type WorkAnswer = TurbineSheet | Neighbours | HighRateDay | CorrectionProof[] | null
 
 /** Runs the heavy questions, on this thread or on several. The sheet is the same either way. */
 export interface Scorers {
@@ -35,6 +38,8 @@ export interface Scorers {
   compare(task: FarmTask): Promise<Neighbours | null>
   /** Examines a day of high-rate rows, whose arrays are handed over: they are not to be used afterwards. */
   examine(rows: HighRateRows): Promise<HighRateDay>
+  /** Holds corrections against what came after them. */
+  prove(question: ProveQuestion): Promise<CorrectionProof[]>
   close(): Promise<void>
 }
 
@@ -48,6 +53,7 @@ export function openScorers(threads: number): Scorers {
       compare: (task) =>
         Promise.resolve(compareNeighbours(task.farm, task.days, task.dayWeights, task.settings)),
       examine: (rows) => Promise.resolve(examineDay(rows)),
+      prove: (question) => Promise.resolve(proveCorrections(question)),
       close: () => Promise.resolve(),
     }
   }
@@ -62,6 +68,7 @@ export function openScorers(threads: number): Scorers {
     compare: async (task) => (await pool.run({ kind: 'farm', ...task })) as Neighbours | null,
     examine: async (rows) =>
       (await pool.run({ kind: 'high-rate-day', rows }, { transferList: buffersOf(rows) })) as HighRateDay,
+    prove: async (question) => (await pool.run({ kind: 'proof', question })) as CorrectionProof[],
     close: () => pool.close(),
   }
 }

@@ -1,6 +1,7 @@
 export * from './channels.ts'
 export * from './common.ts'
 export * from './energy-loss.ts'
+export * from './correction.ts'
 export * from './findings.ts'
 export * from './problem.ts'
 export * from './reading.ts'

@@ -1,6 +1,7 @@
 import { Type, type Static } from 'typebox'
 import { Interval, IsoTime, Nullable, NullableIsoTime } from './common.ts'
 import { EnergyLoss } from './energy-loss.ts'
+import { CorrectionProof } from './correction.ts'
 import { Attribution, SensorFinding, SensorTest } from './findings.ts'
 import { Receipt } from './receipt.ts'
 import { ScoringSettings } from './settings.ts'
@@ -254,7 +255,7 @@ export const ScoreSheet = Type.Object(
     }),
     turbines: Type.Array(TurbineSheet),
     worklist: Type.Array(WorklistEntry),
-    corrections: Type.Array(Type.Record(Type.String(), Type.Unknown())),
+    corrections: Type.Array(CorrectionProof),
     warnings: Type.Array(Type.String()),
   },
   { description: 'Score sheet' },

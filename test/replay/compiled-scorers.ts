@@ -35,6 +35,7 @@ export async function openCompiledScorers(threads: number): Promise<Scorers> {
     score: (task) => opened.score(task),
     compare: (task) => opened.compare(task),
     examine: (rows) => opened.examine(rows),
+    prove: (question) => opened.prove(question),
     async close() {
       await opened.close()
       rmSync(folder, { recursive: true, force: true })

@@ -1,4 +1,5 @@
 import { changeStudy } from './change-points.study.ts'
+import { correctionStudy } from './corrections.study.ts'
 import { honestAnemometers } from './honest-anemometers.study.ts'
 import { yawMoveStudy } from './yaw-moves.study.ts'
 import { neighboursStudy } from './neighbours.study.ts'
@@ -13,3 +14,4 @@ if (name === 'all' || name === 'honest') honestAnemometers(Number(count), print)
 if (name === 'all' || name === 'neighbours') neighboursStudy(Number(count), print)
 if (name === 'all' || name === 'moves') yawMoveStudy(Number(count), print)
 if (name === 'all' || name === 'changes') changeStudy(Number(count), print)
+if (name === 'all' || name === 'corrections') correctionStudy(Number(count), print)

@@ -6,7 +6,7 @@ import { buildFrame, type Frame } from '../../src/frame/index.ts'
 import { simulateFarm, type FarmScenario, type SimulatedFarm } from '../../src/simulate/index.ts'
 import type { ScoringSettings } from '../../src/sheet/index.ts'
 
-const CACHE = join(import.meta.dirname, '..', '..', '.cache', 'study')
+export const CACHE = join(import.meta.dirname, '..', '..', '.cache', 'study')
 
 /** Settings of a study: the defaults of config.ts, the response taken as known, fewer resamples for speed. */
 export const STUDY_SETTINGS: ScoringSettings = {
@@ -44,7 +44,7 @@ export function cachedFarm(scenario: FarmScenario): SimulatedFarm {
 }
 
 /** The simulator's sources: a farm made by another simulator is another farm. */
-function simulator(): string {
+export function simulator(): string {
   const folder = join(import.meta.dirname, '..', '..', 'src', 'simulate')
   return readdirSync(folder)
     .sort()
