@@ -1,4 +1,4 @@
-import { robustSd, studentQuantile } from '../../kernel/stats/index.ts'
+import { medianOf, robustSd, studentQuantile } from '../../kernel/stats/index.ts'
 
 /** Values further than this from their cell's level, in robust SDs, count as that far. */
 const CLIP = 4
@@ -62,7 +62,7 @@ export function stepWithinCells(question: StepQuestion): Step {
   }
   if (!(total > 0)) return { step: NaN, halfWidth: NaN, ...counts }
 
-  const value = Float64Array.from(compared, (t) => question.value[t]!)
+  const value = drawnIn(compared, question)
   const residual = new Float64Array(compared.length)
   let step = 0
   for (let round = 0; round < ROUNDS; round++) {
@@ -110,4 +110,16 @@ export function stepWithinCells(question: StepQuestion): Step {
     if (!(halfWidth >= half)) halfWidth = half
   }
   return { step, halfWidth, ...counts }
+}
+
+/** Values drawn in towards the median of their cell: means of values as they are would follow a single far one. */
+function drawnIn(rows: readonly number[], { value, cell, cells }: StepQuestion): Float64Array {
+  const byCell = Array.from({ length: cells }, (): number[] => [])
+  for (const t of rows) byCell[cell[t]!]!.push(value[t]!)
+  const centre = byCell.map((values) => medianOf(values))
+  const off = Float64Array.from(rows, (t) => value[t]! - centre[cell[t]!]!)
+  const reach = CLIP * robustSd(off)
+  return Float64Array.from(rows, (t, k) =>
+    reach > 0 ? centre[cell[t]!]! + Math.max(-reach, Math.min(reach, off[k]!)) : value[t]!,
+  )
 }
