@@ -25,7 +25,11 @@ export function standingEachSide(
 ): StandingEachSide {
   const on = (fromMs: number, toMs: number): StandingSide => {
     const byPower = staticOffset(rowsBetween(frame, fromMs, toMs), request)
-    const answer = preferReference(byPower, referenceOffset(byPower.frame, request.dayWeights))
+    const answer = preferReference(
+      byPower,
+      referenceOffset(byPower.frame, request.dayWeights),
+      request.settings,
+    )
     const { standing } = answer
     if (!standing) return { deg: NaN, halfWidthDeg: NaN, ownHalfWidthDeg: NaN }
     const [low, high] = standing.standingInterval95Deg
