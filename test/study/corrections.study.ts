@@ -23,7 +23,7 @@ import { turbineInflow } from '../../src/simulate/inflow.ts'
 import { turbineOrders } from '../../src/simulate/operation.ts'
 import { emptyRows, STATES, type TurbineRows } from '../../src/simulate/rows.ts'
 import { runTurbine } from '../../src/simulate/run-turbine.ts'
-import { planTurbines } from '../../src/simulate/scenario.ts'
+import { planTurbines } from '../../src/simulate/turbine-plan.ts'
 import { farmWeather } from '../../src/simulate/weather.ts'
 import { CACHE, cachedFarm, frameOf, simulator, STUDY_SETTINGS } from './simulated-farms.ts'
 
@@ -40,9 +40,9 @@ const AFTER_DAYS = [1, 2, 5, 10, 45] as const
 const BELOW_RATED_MS = [5, 10.8] as const
 
 const CASES = [
-  { name: 'right', toDeg: 0, wanted: 'worked' },
-  { name: 'wrong sign', toDeg: 12, wanted: 'wrong way' },
-  { name: 'not entered', toDeg: 6, wanted: 'not taken hold' },
+  { name: 'right', addedDeg: 6 },
+  { name: 'wrong sign', addedDeg: -6 },
+  { name: 'not entered', addedDeg: 0 },
 ] as const
 
 interface Line {
@@ -82,7 +82,7 @@ function farmCases(seed: number, lines: Line[]): void {
   const base = cachedFarm(scenario)
   for (const target of TARGETS) {
     for (const one of CASES) {
-      const farm = one.toDeg === 6 ? base : withChange(base, target, one.toDeg)
+      const farm = one.addedDeg === 0 ? base : withCorrection(base, target, one.addedDeg)
       const truth = trueGainPct(base, farm, target)
       for (const position of [true, false]) {
         for (const afterDays of AFTER_DAYS) {
@@ -144,11 +144,11 @@ function lineText(line: Line): string {
   return `| ${cells.join(' | ')} |`
 }
 
-/** The farm with one turbine run anew in the same weather, with another offset from the day on. */
-function withChange(base: SimulatedFarm, target: number, toDeg: number): SimulatedFarm {
+/** The farm with one turbine run anew in the same weather, with a correction from the day on. */
+function withCorrection(base: SimulatedFarm, target: number, addedDeg: number): SimulatedFarm {
   const scenario: FarmScenario = {
     ...base.scenario,
-    offsetChanges: [{ turbine: target, atS: DAY * 86_400, toDeg, entered: true }],
+    corrections: [{ turbine: target, atS: DAY * 86_400, recordedDeg: ENTERED_DEG, addedDeg }],
   }
   const key = createHash('sha256')
     .update(simulator())
