@@ -16,6 +16,7 @@ export { compareNeighbours, type FarmRows, type Neighbours } from './neighbours/
 export type { FarmResponse, TurbineResponse } from './neighbours/anemometer-response.ts'
 export { disagree, type FarmEstimate } from './neighbours/farm-estimates.ts'
 export { preferReference } from './offset/prefer-reference.ts'
+export { preferYawMoves } from './offset/prefer-yaw-moves.ts'
 export { referenceOffset, type ReferenceOffset } from './offset/reference-offset.ts'
 export { lastSegment, type LastSegment, type TurbineEvent } from './changes/last-segment.ts'
 export { headingSteps, type HeadingRecord } from './changes/offset-changes-heading.ts'

@@ -3,6 +3,7 @@ import {
   lastSegment,
   powerCurveTable,
   preferReference,
+  preferYawMoves,
   readiness,
   referenceOffset,
   score,
@@ -69,7 +70,11 @@ export function scoreTurbine(task: ScoreTask): TurbineSheet {
   const byPower = staticOffset(rowsSince(task.frame, segment.fromMs), task, block)
   const answer = block
     ? byPower
-    : preferReference(byPower, referenceOffset(byPower.frame, task.dayWeights), settings)
+    : preferReference(
+        preferYawMoves(byPower, task.highRate, { ...task, hasNeighbours: task.response !== null }),
+        referenceOffset(byPower.frame, task.dayWeights),
+        settings,
+      )
   const { frame, standing } = answer
   const offset = { ...answer.sheet, changes: segment.changes, signChecked: sign.checked }
   const whole = correctSpeed(task.frame, answer.responsePerDeg, settings.vaneMaxDeg)

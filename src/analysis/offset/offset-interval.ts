@@ -56,6 +56,17 @@ export function offsetSpread(
   return widest
 }
 
+/** Half-width at 95 % of the mean vane alone, degrees, from whole days in blocks, the widest length; NaN as `offsetSpread`. */
+export function meanVaneSpread(vane: VaneByDay, dayWeights: readonly DayWeights[], usedDays: number): number {
+  let widest = NaN
+  for (const weights of dayWeights) {
+    const resampled = withMeanVane(new Float64Array(weights.resamples), vane, weights)
+    const half = resampledHalfWidth(resampled, weights, usedDays)
+    if (!Number.isNaN(half) && !(widest >= half)) widest = half
+  }
+  return widest
+}
+
 function withMeanVane(offset: Float64Array, vane: VaneByDay, weights: DayWeights): Float64Array {
   const standing = new Float64Array(offset.length)
   for (let r = 0; r < offset.length; r++) {
