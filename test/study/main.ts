@@ -4,12 +4,13 @@ import { honestAnemometers } from './honest-anemometers.study.ts'
 import { yawMoveStudy } from './yaw-moves.study.ts'
 import { neighboursStudy } from './neighbours.study.ts'
 
-/** Prints the tables of the studies: `npm run study`, or `npm run study -- honest 40`. */
-const [name = 'all', count = '24'] = process.argv.slice(2)
+/** Prints the tables of the studies: `npm run study`, or `npm run study -- honest 40`; what the number counts each study says. */
+const [name = 'all', given] = process.argv.slice(2)
+const count = given ?? (name === 'neighbours' ? '200' : '24')
 const print = (text: string): void => {
   process.stdout.write(`${text}\n`)
 }
-if (!/^\d+$/.test(count)) throw new Error(`farms: expected a whole number, got "${count}"`)
+if (!/^\d+$/.test(count)) throw new Error(`count: expected a whole number, got "${count}"`)
 if (name === 'all' || name === 'honest') honestAnemometers(Number(count), print)
 if (name === 'all' || name === 'neighbours') neighboursStudy(Number(count), print)
 if (name === 'all' || name === 'moves') yawMoveStudy(Number(count), print)

@@ -6,6 +6,7 @@ import { buildFrame, type Frame } from '../../src/frame/index.ts'
 import { simulateFarm, type FarmScenario, type SimulatedFarm } from '../../src/simulate/index.ts'
 import type { ScoringSettings } from '../../src/sheet/index.ts'
 
+/** Where made-up farms and worked-out results are kept; not committed. */
 export const CACHE = join(import.meta.dirname, '..', '..', '.cache', 'study')
 
 /** Settings of a study: the defaults of config.ts, the response taken as known, fewer resamples for speed. */
