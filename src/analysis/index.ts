@@ -32,3 +32,4 @@ export { examineDay, type HighRateDay, type HighRateRecord } from './high-rate/e
 export { vaneAndAnemometer } from './sensors/vane-and-anemometer.ts'
 export { joinReports, type SensorReport } from './sensors/sensor-report.ts'
 export { proveCorrections, type ProveQuestion } from './proof/prove-corrections.ts'
+export { attributions } from './sensors/attribution.ts'

@@ -1,4 +1,5 @@
 import {
+  attributions,
   clockLags,
   dayBlocks,
   headingSteps,
@@ -112,7 +113,9 @@ export async function scoreFarm(
         responses: rows.map((_, i) => neighbours?.response.turbines[i] ?? null),
         blocked: signs.map(({ block }) => block !== null),
       })
-  const [turbines, proofs] = await Promise.all([scored, proved])
+  const [sheets, proofs] = await Promise.all([scored, proved])
+  const weighed = attributions(sheets, settings.actionThresholdDeg)
+  const turbines = sheets.map((sheet, i) => ({ ...sheet, attribution: weighed[i]! }))
   for (const turbine of frame.turbines) {
     for (const note of turbine.notes) warnings.push(`${turbine.turbine}: ${note}`)
   }
