@@ -4,7 +4,10 @@ import type { TurbineSheet } from '../sheet/index.ts'
 type StaticOffset = TurbineSheet['staticOffset']
 
 /** Whether the sign and the kind of vane are known well enough to print a number that may be entered. */
-export function mayEnter(offset: StaticOffset, verdict: TurbineSheet['verdict']): boolean {
+export function mayEnter(
+  offset: Pick<StaticOffset, 'signChecked' | 'vaneLogged'>,
+  verdict: TurbineSheet['verdict'],
+): boolean {
   return verdict === 'offset' && offset.signChecked && offset.vaneLogged !== 'unknown'
 }
 

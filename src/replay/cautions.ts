@@ -1,3 +1,5 @@
+import type { TurbineSheet } from '../sheet/index.ts'
+
 /**
  * What every sheet and list carries that could lead to a climb or to a changed parameter.
  * The program recommends; it never controls.
@@ -10,6 +12,19 @@ export const CAUTIONS: readonly string[] = [
   'Work on the turbine is for authorised, licensed technicians with the manufacturer’s manual: turbine stopped, rotor locked, yaw drive isolated, locked out and tagged, cable twist checked, within the weather limits, with a fall-protection and rescue plan.',
   'No remote change while anybody is in the turbine. Mind the site permit, the warranty and the duties towards the grid operator. Local rules come first.',
 ]
+
+/** What is said of an offset that depends on wind speed; empty where it does not. */
+export function curveCaution({
+  byCondition: { curve },
+}: Pick<TurbineSheet['staticOffset'], 'byCondition'>): string[] {
+  const [first, last] = [curve?.at(0), curve?.at(-1)]
+  if (!first || !last) return []
+  const at = ({ windSpeedMs, standingMisalignmentDeg }: typeof first): string =>
+    `${(standingMisalignmentDeg ?? NaN).toFixed(1)} degrees at ${windSpeedMs} m/s`
+  return [
+    `The offset depends on wind speed, ${at(first)} to ${at(last)}: look for a damaged, loose or wrongly mounted vane first. One number is wrong at both ends; the sheet holds a table for the controller (staticOffset.byCondition.curve).`,
+  ]
+}
 
 /** The same in one line, for the end of a printed table. */
 export const CAUTION_IN_SHORT =

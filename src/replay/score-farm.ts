@@ -83,6 +83,7 @@ export async function scoreFarm(
         days,
         response: neighbours?.response.turbines[i] ?? null,
         farmEstimates: neighbours?.estimates[i] ?? [],
+        freeStream: neighbours?.freeStream[i] ?? null,
         sign: signs[i]!,
         heading: headings[i] ?? null,
         events: eventsOf(site, turbine),

@@ -26,7 +26,8 @@ import {
 import { correctSpeed, countReasons, reasonsSince, rowsSince, type TurbineFrame } from '../frame/index.ts'
 import { SET_ASIDE_REASONS, type LongTerm, type ScoringSettings, type TurbineSheet } from '../sheet/index.ts'
 import { adviceFor } from './advice.ts'
-import { CAUTIONS } from './cautions.ts'
+import { CAUTIONS, curveCaution } from './cautions.ts'
+import { entryOf } from './entry.ts'
 
 /** Everything that scoring one turbine needs; plain data, so that it can travel to a worker thread. */
 export interface ScoreTask {
@@ -37,6 +38,8 @@ export interface ScoreTask {
   /** What neighbours tell of this anemometer; null = nothing. */
   readonly response: TurbineResponse | null
   readonly farmEstimates: readonly FarmEstimate[]
+  /** Per row of the frame: 1 = free stream, 0 = in or beside a wake; null = not known. */
+  readonly freeStream: Uint8Array | null
   readonly sign: SignCheck
   /** Steps of this turbine's heading against the farm; null = none to be had. */
   readonly heading: HeadingRecord | null
@@ -76,10 +79,12 @@ export function scoreTurbine(task: ScoreTask): TurbineSheet {
         settings,
       )
   const { frame, standing } = answer
-  const offset = { ...answer.sheet, changes: segment.changes, signChecked: sign.checked }
   const whole = correctSpeed(task.frame, answer.responsePerDeg, settings.vaneMaxDeg)
   const counts = countReasons(reasonsSince(whole, segment.fromMs))
   const verdict = judge(block, answer, settings)
+  const shown = { ...answer.sheet, changes: segment.changes, signChecked: sign.checked }
+  const correctionDeg = frame.setup.vane?.correctionDeg
+  const offset = { ...shown, entry: entryOf(shown, { verdict: verdict.verdict, correctionDeg, standing }) }
   const settled = verdict.verdict === 'offset' || verdict.verdict === 'aligned'
   const scored = settled && standing ? score(frame, standing.offsetDeg) : null
   return {
@@ -122,7 +127,7 @@ export function scoreTurbine(task: ScoreTask): TurbineSheet {
     attribution: { text: '', evidence: [], wouldSettle: [] },
     yawActivity: {},
     advice: adviceFor(verdict, offset),
-    cautions: [...CAUTIONS],
+    cautions: [...curveCaution(offset), ...CAUTIONS],
   }
 }
 

@@ -3,6 +3,13 @@ import { Interval, IsoTime, Nullable, NullableIsoTime } from './common.ts'
 import { EnergyLoss } from './energy-loss.ts'
 import { CorrectionProof } from './correction.ts'
 import { Attribution, SensorFinding, SensorTest } from './findings.ts'
+import {
+  CaptureMatrix,
+  Entry,
+  FittedExponent,
+  OffsetByCondition,
+  PowerAgainstVane,
+} from './offset-conditions.ts'
 import { Receipt } from './receipt.ts'
 import { ScoringSettings } from './settings.ts'
 
@@ -155,6 +162,11 @@ const StaticOffset = Type.Object({
       relativePowerSd: Nullable('the same, standard deviation'),
     }),
   ),
+  fittedExponent: FittedExponent,
+  byCondition: OffsetByCondition,
+  powerAgainstVane: PowerAgainstVane,
+  captureMatrix: CaptureMatrix,
+  entry: Entry,
 })
 
 export const TurbineSheet = Type.Object(

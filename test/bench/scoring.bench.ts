@@ -24,6 +24,7 @@ export function benchScoring(print: (text: string) => void): void {
       days,
       response: null,
       farmEstimates: [],
+      freeStream: null,
       sign: signChecks(frame)[0]!,
       farmFindings: [],
       farmTests: [],

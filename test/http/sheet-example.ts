@@ -134,6 +134,17 @@ export function turbineExample(turbine: string, standingDeg: number | null = 6.1
       rows: 2110,
       days: 28,
       bins: [],
+      fittedExponent: { exponent: 2.4, interval95: [1.9, 2.9], note: 'a diagnostic' },
+      byCondition: { groups: [], sameness: [], windSpeedSlope: null, curve: null, note: '' },
+      powerAgainstVane: { ...emptyGrid(), relativePowerMean: [], relativePowerSd: [] },
+      captureMatrix: emptyGrid(),
+      entry: {
+        addToVaneDeg: null,
+        vaneOffsetAfterDeg: null,
+        turnMarkDeg: null,
+        text: 'not known whether before or after',
+        vaneGain: { assumed: 1, text: 'taken as 1', ifGain: [] },
+      },
     },
     energyLoss: {
       exponent: 3,
@@ -183,5 +194,17 @@ export function turbineExample(turbine: string, standingDeg: number | null = 6.1
     yawActivity: {},
     advice: standingDeg === null ? [] : ['add 6.1 degrees to the vane offset once its sign is checked'],
     cautions: ['whether the logged vane already contains a correction is not known'],
+  }
+}
+
+function emptyGrid() {
+  return {
+    speedFromMs: 0,
+    speedWidthMs: 1,
+    speedBins: 0,
+    vaneFromDeg: -1,
+    vaneWidthDeg: 2,
+    vaneBins: 0,
+    rows: [],
   }
 }

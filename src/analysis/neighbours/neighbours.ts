@@ -2,7 +2,7 @@ import type { DayWeights } from '../../kernel/stats/index.ts'
 import type { Frame } from '../../frame/index.ts'
 import type { ScoringSettings } from '../../sheet/index.ts'
 import { anemometerResponse, type FarmResponse } from './anemometer-response.ts'
-import { farmComparison } from './farm-comparison.ts'
+import { farmComparison, type FarmComparison } from './farm-comparison.ts'
 import { farmEstimates, type FarmEstimate } from './farm-estimates.ts'
 
 /** What turbines tell of each other. */
@@ -10,6 +10,8 @@ export interface Neighbours {
   readonly response: FarmResponse
   /** Per turbine, in the order of the farm. */
   readonly estimates: readonly (readonly FarmEstimate[])[]
+  /** Per turbine and row of its frame: 1 = free stream, 0 = in or beside a wake, or not known. */
+  readonly freeStream: readonly Uint8Array[]
 }
 
 /** The frame without its calendar, so that it can travel to a worker thread. */
@@ -31,5 +33,20 @@ export function compareNeighbours(
   const comparison = farmComparison(farm, days, settings)
   const response = anemometerResponse(comparison, dayWeights, settings)
   if (response.turbines.every((turbine) => turbine === null)) return null
-  return { response, estimates: farmEstimates(comparison, response, dayWeights, settings) }
+  return {
+    response,
+    estimates: farmEstimates(comparison, response, dayWeights, settings),
+    freeStream: byRow(comparison),
+  }
+}
+
+/** From the clock of the farm to the rows of each turbine. */
+function byRow({ grid, free }: FarmComparison): Uint8Array[] {
+  return grid.turbines.map((turbine, i) => {
+    const rows = new Uint8Array(turbine.time.length)
+    grid.row[i]!.forEach((row, t) => {
+      if (row >= 0) rows[row] = free[i]![t]!
+    })
+    return rows
+  })
 }

@@ -1,9 +1,16 @@
-import { DEG_PER_RAD, wrap180 } from '../../kernel/angle/index.ts'
-import { chiSquareUpperTail, resampledSlopes, type DayWeights } from '../../kernel/stats/index.ts'
+import { circularMean, DEG_PER_RAD, wrap180 } from '../../kernel/angle/index.ts'
+import {
+  chiSquareUpperTail,
+  dayCells,
+  dayCellSums,
+  groupSlopes,
+  type DayCellSums,
+  type DayWeights,
+} from '../../kernel/stats/index.ts'
 import type { TurbineFrame } from '../../frame/index.ts'
-import { fitOffset, type OffsetModel } from './offset-fit.ts'
-import { offsetRows, type OffsetRows } from './offset-rows.ts'
-import { NORMAL_95, resampledHalfWidth } from './resampled-spread.ts'
+import type { OffsetFit } from './offset-fit.ts'
+import type { OffsetRows } from './offset-rows.ts'
+import { fewResamples, NORMAL_95, resampledHalfWidth } from './resampled-spread.ts'
 
 /** Rows and days below which a group has no offset of its own. */
 const FEW_ROWS = 60
@@ -15,7 +22,7 @@ const QUESTIONS = 2
 
 export type Condition = 'wind-speed' | 'day-night' | 'turbulence' | 'wake'
 
-/** d of the rows of one condition; degrees. Level groups are those of all rows, the noise is the group's own. */
+/** d and m of the rows of one condition; degrees. Level groups, weights and noise are those of the fit to all rows. */
 export interface ConditionOffset {
   readonly condition: Condition
   readonly label: string
@@ -24,8 +31,10 @@ export interface ConditionOffset {
   readonly toMs: number | null
   readonly rows: number
   readonly days: number
-  /** NaN, both, where the group has too few rows or days, or the fit did not settle. */
+  /** NaN, all, where the group has too few rows or days. */
   readonly offsetDeg: number
+  /** m: d and the mean vane of these rows. */
+  readonly standingDeg: number
   /** At 95 %, from the scatter between days: what all groups share (response, exponent) is not in it. */
   readonly halfWidthDeg: number
 }
@@ -46,7 +55,12 @@ export interface OffsetCurve {
   readonly slopeInterval95: readonly [number, number]
   /** The smaller of the chances of "all alike" and of "no slope", times two. */
   readonly pValue: number
-  readonly points: readonly { windSpeedMs: number; offsetDeg: number; halfWidthDeg: number }[]
+  readonly points: readonly {
+    windSpeedMs: number
+    offsetDeg: number
+    standingDeg: number
+    halfWidthDeg: number
+  }[]
 }
 
 export interface OffsetByCondition {
@@ -59,11 +73,12 @@ export interface OffsetByCondition {
 }
 
 export interface OffsetByConditionRequest {
-  readonly model: OffsetModel
+  /** The used rows of the frame and the fit to all of them. */
+  readonly rows: OffsetRows
+  readonly fit: OffsetFit
   readonly dayWeights: readonly DayWeights[]
-  readonly days: number
-  /** Per row of the frame: 1 = free stream, 0 = in a wake; absent: not known. */
-  readonly freeStream?: Uint8Array
+  /** Per row of the frame: 1 = free stream, 0 = in or beside a wake; absent: not known. */
+  readonly freeStream?: Uint8Array | undefined
 }
 
 /**
@@ -71,14 +86,19 @@ export interface OffsetByConditionRequest {
  * interval, and whether the groups of a condition differ: a vane that sits in the swirl of the rotor reads off by an angle
  * that depends on wind speed, and one number for the controller is then wrong at both ends.
  *
- * @returns no groups where the vane does not vary or the fit to all rows does not settle.
+ * A group's offset is one more step of the fit to all rows, over the group's cells alone: its rows are weighted and
+ * filtered as in that fit.
+ *
+ * @returns no groups where the fit did not settle.
  */
 export function offsetByCondition(frame: TurbineFrame, request: OffsetByConditionRequest): OffsetByCondition {
-  const rows = offsetRows(frame, request.days)
-  if (!fitOffset(rows, request.model).converged) return { groups: [], sameness: [], slope: null, curve: null }
-  const groups = groupsOf(frame, rows, request.freeStream).map((group) =>
-    conditionOffset(rows, group, request),
-  )
+  const { rows, fit, dayWeights } = request
+  if (!fit.converged) return { groups: [], sameness: [], slope: null, curve: null }
+  const fewer = fewResamples(dayWeights)
+  const groups = [
+    ...offsetsOf(fit.sums, byCell(frame, rows), { rows, fit, dayWeights: fewer }),
+    ...byWake(frame, request, fewer),
+  ]
   const sameness = [...new Set(groups.map((group) => group.condition))].map((condition) =>
     samenessOf(
       condition,
@@ -101,6 +121,7 @@ export function offsetByCondition(frame: TurbineFrame, request: OffsetByConditio
             points: bySpeed.map((group) => ({
               windSpeedMs: (group.fromMs! + group.toMs!) / 2,
               offsetDeg: group.offsetDeg,
+              standingDeg: group.standingDeg,
               halfWidthDeg: group.halfWidthDeg,
             })),
           }
@@ -112,19 +133,12 @@ interface Group {
   readonly condition: Condition
   readonly label: string
   readonly fromMs?: number
-  /** Places in OffsetRows. */
-  readonly members: readonly number[]
+  /** Whether a cell of the sums is in it. */
+  readonly holds: (cell: number) => boolean
 }
 
-function groupsOf(frame: TurbineFrame, rows: OffsetRows, freeStream: Uint8Array | undefined): Group[] {
-  const members = (belongs: (k: number) => boolean): number[] => {
-    const list: number[] = []
-    for (let k = 0; k < rows.cell.length; k++) if (belongs(k)) list.push(k)
-    return list
-  }
-  // Cells of OffsetRows: band, then tercile of turbulence, then night.
-  const nightOf = (k: number): number => rows.cell[k]! % 2
-  const tercileOf = (k: number): number => (rows.cell[k]! >> 1) % 3
+/** Conditions that the cells of OffsetRows tell: band of wind speed, then tercile of turbulence, then night. */
+function byCell(frame: TurbineFrame, rows: OffsetRows): Group[] {
   const lowest = Math.floor(frame.windMinMs)
   const groups: Group[] = []
   for (let band = 0; band < rows.bands; band++) {
@@ -133,73 +147,75 @@ function groupsOf(frame: TurbineFrame, rows: OffsetRows, freeStream: Uint8Array 
       condition: 'wind-speed',
       label: `${fromMs} to ${fromMs + 1} m/s`,
       fromMs,
-      members: members((k) => rows.band[k] === band),
+      holds: (cell) => Math.floor(cell / 6) === band,
     })
   }
   for (const [night, label] of ['07 to 19 h', '19 to 07 h'].entries()) {
-    groups.push({ condition: 'day-night', label, members: members((k) => nightOf(k) === night) })
+    groups.push({ condition: 'day-night', label, holds: (cell) => cell % 2 === night })
   }
   if (frame.turbulence.some((value) => !Number.isNaN(value))) {
     for (const [tercile, label] of ['low turbulence', 'middle turbulence', 'high turbulence'].entries()) {
-      groups.push({ condition: 'turbulence', label, members: members((k) => tercileOf(k) === tercile) })
+      groups.push({ condition: 'turbulence', label, holds: (cell) => (cell >> 1) % 3 === tercile })
     }
   }
-  if (freeStream) {
-    const free = freeStream.filter((_, i) => frame.reason[i] === 0)
-    groups.push(
-      { condition: 'wake', label: 'free stream', members: members((k) => free[k] === 1) },
-      { condition: 'wake', label: 'in a wake', members: members((k) => free[k] !== 1) },
-    )
-  }
-  return groups.filter((group) => group.members.length > 0)
+  return groups
 }
 
-function conditionOffset(
-  rows: OffsetRows,
-  group: Group,
-  { model, dayWeights }: OffsetByConditionRequest,
-): ConditionOffset {
-  const own = membersOf(rows, group.members)
-  const days = new Set(own.day).size
-  const described = {
-    condition: group.condition,
-    label: group.label,
-    fromMs: group.fromMs ?? null,
-    toMs: group.fromMs === undefined ? null : group.fromMs + 1,
-    rows: group.members.length,
-    days,
-  }
-  const unknown = { ...described, offsetDeg: NaN, halfWidthDeg: NaN }
-  if (group.members.length < FEW_ROWS || days < FEW_DAYS) return unknown
-  const fit = fitOffset(own, model)
-  if (!fit.converged) return unknown
-  let half = NaN
-  for (const weights of dayWeights) {
-    const next = resampledHalfWidth(resampledSlopes(fit.sums, weights), weights, days)
-    if (!Number.isNaN(next) && !(half >= next)) half = next
-  }
-  return {
-    ...described,
-    offsetDeg: wrap180(fit.offset * DEG_PER_RAD - rows.centreDeg),
-    halfWidthDeg: half * fit.stretch * DEG_PER_RAD,
-  }
+/** Free stream or not is no part of the cells: the sums are made anew, with a level of its own for either. */
+function byWake(
+  frame: TurbineFrame,
+  { rows, fit, freeStream }: OffsetByConditionRequest,
+  dayWeights: readonly DayWeights[],
+): ConditionOffset[] {
+  if (!freeStream) return []
+  const free = freeStream.filter((_, i) => frame.reason[i] === 0)
+  const cell = rows.cell.map((own, k) => 2 * own + (free[k] === 1 ? 1 : 0))
+  const layout = dayCells(rows.day, cell, { days: rows.days, cells: 2 * rows.cells })
+  const groups: Group[] = [
+    { condition: 'wake', label: 'free stream', holds: (own) => own % 2 === 1 },
+    { condition: 'wake', label: 'in or beside a wake', holds: (own) => own % 2 === 0 },
+  ]
+  const sums = dayCellSums(layout, fit.whiteX, fit.whiteY, fit.weight)
+  return offsetsOf(sums, groups, { rows: { ...rows, cell, cells: layout.cells }, fit, dayWeights })
 }
 
-function membersOf(rows: OffsetRows, members: readonly number[]): OffsetRows {
-  const whole = (values: Int32Array): Int32Array => Int32Array.from(members, (k) => values[k]!)
-  const numbers = (values: Float64Array): Float64Array => Float64Array.from(members, (k) => values[k]!)
-  const day = whole(rows.day)
-  return {
-    ...rows,
-    day,
-    chain: day,
-    position: whole(rows.position),
-    cell: whole(rows.cell),
-    band: whole(rows.band),
-    vane: numbers(rows.vane),
-    steepness: numbers(rows.steepness),
-    logRatio: numbers(rows.logRatio),
-  }
+function offsetsOf(
+  sums: DayCellSums,
+  groups: readonly Group[],
+  { rows, fit, dayWeights }: { rows: OffsetRows; fit: OffsetFit; dayWeights: readonly DayWeights[] },
+): ConditionOffset[] {
+  const cellsOf = groups.map(({ holds }) => [...Array(rows.cells).keys()].filter(holds))
+  const slopes = dayWeights.map((weights) => groupSlopes(sums, cellsOf, weights))
+  return groups.flatMap((group, g) => {
+    const vanes: number[] = []
+    const seen = new Set<number>()
+    for (let k = 0; k < rows.cell.length; k++) {
+      if (!group.holds(rows.cell[k]!)) continue
+      vanes.push(rows.vane[k]! * DEG_PER_RAD)
+      seen.add(rows.day[k]!)
+    }
+    if (vanes.length === 0) return []
+    const days = seen.size
+    let half = NaN
+    dayWeights.forEach((weights, w) => {
+      const next = resampledHalfWidth(slopes[w]![g]!.resampled, weights, days)
+      if (!Number.isNaN(next) && !(half >= next)) half = next
+    })
+    const few = vanes.length < FEW_ROWS || days < FEW_DAYS
+    const step = few ? NaN : (slopes[0]?.[g]!.slope ?? NaN)
+    const offsetDeg = wrap180((fit.offset + step) * DEG_PER_RAD - rows.centreDeg)
+    return {
+      condition: group.condition,
+      label: group.label,
+      fromMs: group.fromMs ?? null,
+      toMs: group.fromMs === undefined ? null : group.fromMs + 1,
+      rows: vanes.length,
+      days,
+      offsetDeg,
+      standingDeg: wrap180(offsetDeg + rows.centreDeg + circularMean(vanes).direction),
+      halfWidthDeg: few ? NaN : half * fit.stretch * DEG_PER_RAD,
+    }
+  })
 }
 
 /** Cochran's Q: squared distances from the weighted mean in units of their standard errors. */

@@ -52,6 +52,9 @@ export interface OffsetFit {
   readonly converged: boolean
   /** Sums at the end: their slope is the last step of d, so resampled slopes are deviations of d. */
   readonly sums: DayCellSums
+  /** What the sums are made of, per row: levels of all rows taken out, over the scatter, filtered. */
+  readonly whiteX: Float64Array
+  readonly whiteY: Float64Array
   /** Resampled slopes times this are deviations of d as robust weights let it spread. */
   readonly stretch: number
   /** Change of d per unit of anemometer response (relative change of wind speed per degree of vane), radians. */
@@ -83,12 +86,12 @@ export function fitOffset(rows: OffsetRows, model: OffsetModel): OffsetFit {
   const weight = new Float64Array(n).fill(1)
   let converged = false
   let stretch = 1
-  let sums: DayCellSums | undefined
+  let last: NewtonStep | undefined
   const biweightFrom = SETTLING_ITERATIONS + HUBER_ITERATIONS
 
   for (let iteration = 0; iteration < MAX_ITERATIONS && !converged; iteration++) {
     const step = newtonStep(rows, model, terms, { offset, noise, weight })
-    sums = step.sums
+    last = step
     if (Number.isNaN(step.slope)) break
     offset = clamp(offset + step.slope, MAX_YAW_ERROR_RAD)
     if (iteration < SETTLING_ITERATIONS) {
@@ -104,7 +107,9 @@ export function fitOffset(rows: OffsetRows, model: OffsetModel): OffsetFit {
   return {
     offset: converged ? offset : NaN,
     converged,
-    sums: sums ?? dayCellSums(terms.layout, terms.x, terms.y, weight),
+    sums: last?.sums ?? dayCellSums(terms.layout, terms.x, terms.y, weight),
+    whiteX: last?.whiteX ?? terms.x,
+    whiteY: last?.whiteY ?? terms.y,
     stretch,
     perResponse: perResponseOf(rows, terms, noise, weight),
     noise,
@@ -136,6 +141,16 @@ export function offsetAtExponent(
     if (Math.abs(slope) < CONVERGED_RAD) return offset
   }
   return NaN
+}
+
+/** Row by row values as a fit looks at them: levels taken out, over the scatter, filtered by the noise's memory. */
+export function asFitted(
+  rows: OffsetRows,
+  fit: Pick<OffsetFit, 'noise' | 'weight'>,
+  values: readonly Float64Array[],
+): Float64Array[] {
+  const levelled = values.map((one) => withoutLevels(rows, one, fit.noise.scale, fit.weight))
+  return whiten(levelled, rows, fit.noise.serial)
 }
 
 /** Arrays that every iteration fills anew, and what does not change. */
@@ -204,8 +219,10 @@ function fillYawTerm(
 
 /** How d moves with the response: the same regression with the effect of a response in place of ln P. */
 function perResponseOf(rows: OffsetRows, terms: YawTerms, noise: OffsetNoise, weight: Float64Array): number {
-  const levelled = [terms.x, terms.bySpeed].map((values) => withoutLevels(rows, values, noise.scale, weight))
-  const [whiteX, whiteBySpeed] = whiten(levelled, rows, noise.serial) as [Float64Array, Float64Array]
+  const [whiteX, whiteBySpeed] = asFitted(rows, { noise, weight }, [terms.x, terms.bySpeed]) as [
+    Float64Array,
+    Float64Array,
+  ]
   return slopeWithinCells(dayCellSums(terms.layout, whiteX, whiteBySpeed, weight))
 }
 

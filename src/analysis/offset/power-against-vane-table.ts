@@ -16,15 +16,15 @@ export interface VaneGrid {
   readonly vaneFromDeg: number
   readonly vaneWidthDeg: number
   readonly vaneBins: number
-  readonly rows: readonly number[]
+  readonly rows: number[]
 }
 
 /** Power over the measured curve, of the rows used for the static offset. */
 export interface PowerAgainstVane extends VaneGrid {
   /** NaN in an empty entry. */
-  readonly relativePowerMean: readonly number[]
+  readonly relativePowerMean: number[]
   /** Of the rows, divisor n - 1; NaN with fewer than two. */
-  readonly relativePowerSd: readonly number[]
+  readonly relativePowerSd: number[]
 }
 
 /** Power by vane for each wind speed, rows used for the static offset: what a reader can check the estimate against. */

@@ -3,6 +3,7 @@ import type { ScoringSettings } from '../../sheet/index.ts'
 import { disagree } from '../neighbours/farm-estimates.ts'
 import { exponentDoubt, noDoubt } from './exponent-doubt.ts'
 import { furtherDays } from './further-days.ts'
+import { referenceConditions } from './offset-in-sheet.ts'
 import type { ReferenceOffset } from './reference-offset.ts'
 import type { StaticOffsetAnswer } from './static-offset.ts'
 
@@ -59,6 +60,7 @@ export function preferReference(
       standingInterval95Deg: standingInterval,
       standingInterval95GivenExponentDeg: standingInterval,
       endExponents: [settings.exponent, settings.exponent],
+      gainInEstimate: 1,
     },
     sheet: {
       ...answer.sheet,
@@ -93,6 +95,7 @@ export function preferReference(
         estimateDeg: offsetDeg,
         standingMisalignmentDeg: standingDeg,
       })),
+      byCondition: referenceConditions(answer.sheet.byCondition, reference),
       furtherDays: further.days,
       furtherNote: further.note,
       ...counts,

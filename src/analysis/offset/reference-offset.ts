@@ -48,7 +48,9 @@ export interface ReferenceOffset {
     readonly fromMs: number
     readonly toMs: number
     readonly rows: number
+    readonly days: number
     readonly offsetDeg: number
+    readonly standingDeg: number
     readonly halfWidthDeg: number
   }[]
   readonly method: string
@@ -106,7 +108,7 @@ export function referenceOffset(
     rows: rows.length,
     strayRows: known.length - rows.length,
     days,
-    byWindSpeed: bySpeed(frame, rows, dayWeights, (i) => yawErrorAt(i) - frame.vane[i]!),
+    byWindSpeed: bySpeed(frame, rows, dayWeights, yawErrorAt),
     ...methodOf(kind),
     failure: null,
   }
@@ -256,7 +258,7 @@ function bySpeed(
   frame: TurbineFrame,
   rows: readonly number[],
   dayWeights: readonly DayWeights[],
-  angleAt: (row: number) => number,
+  yawErrorAt: (row: number) => number,
 ): ReferenceOffset['byWindSpeed'] {
   const bins = new Map<number, number[]>()
   for (const i of rows) {
@@ -269,12 +271,19 @@ function bySpeed(
   return [...bins]
     .sort(([a], [b]) => a - b)
     .map(([bin, list]) => {
-      const { meanDeg, halfWidthDeg } = meanByDay(frame, list, dayWeights, angleAt)
+      const { meanDeg, halfWidthDeg } = meanByDay(
+        frame,
+        list,
+        dayWeights,
+        (i) => yawErrorAt(i) - frame.vane[i]!,
+      )
       return {
         fromMs: bin * BIN_MS,
         toMs: (bin + 1) * BIN_MS,
         rows: list.length,
+        days: new Set(list.map((i) => frame.day[i]!)).size,
         offsetDeg: meanDeg,
+        standingDeg: wrap180(circularMean(list.map(yawErrorAt)).direction),
         halfWidthDeg,
       }
     })

@@ -4,13 +4,17 @@ import { correctSpeed, type TurbineFrame } from '../../frame/index.ts'
 import type { ScoringSettings, TurbineSheet } from '../../sheet/index.ts'
 import type { TurbineResponse } from '../neighbours/anemometer-response.ts'
 import { exponentDoubt, withExponentDoubt } from './exponent-doubt.ts'
+import { fittedExponent } from './fitted-exponent.ts'
 import { furtherDays } from './further-days.ts'
 import { disagree, type FarmEstimate } from '../neighbours/farm-estimates.ts'
 import { fitOffset, offsetAtExponent } from './offset-fit.ts'
+import { offsetByCondition } from './offset-by-condition.ts'
 import { offsetSpread, vaneByDay } from './offset-interval.ts'
 import { offsetRows, type OffsetRows } from './offset-rows.ts'
+import { captureMatrix, powerAgainstVane } from './power-against-vane-table.ts'
 import { powerByVane } from './power-by-vane.ts'
 import type { Block } from '../sensors/readiness.ts'
+import { conditionsInSheet, exponentInSheet, NO_CONDITIONS } from './offset-in-sheet.ts'
 import { NORMAL_95 } from './resampled-spread.ts'
 
 /** Exponents shown side by side: a low field value, the disk rule, and the cos-cubed rule. */
@@ -30,11 +34,16 @@ export interface StaticOffsetRequest {
   readonly response?: TurbineResponse | null
   /** Estimates that lean on neighbours, to stand beside this one. */
   readonly farmEstimates?: readonly FarmEstimate[]
+  /** Per row of the frame: 1 = free stream, 0 = in or beside a wake; null or absent: not known. */
+  readonly freeStream?: Uint8Array | null
 }
+
+/** The static offset as the sheet shows it, but for what is said of entering it. */
+export type OffsetSheet = Omit<TurbineSheet['staticOffset'], 'entry'>
 
 /** The offset, and why there is none. */
 export interface StaticOffsetAnswer {
-  readonly sheet: TurbineSheet['staticOffset']
+  readonly sheet: OffsetSheet
   /** d and m for each exponent shown, and for the one in force. */
   readonly byExponent: readonly { exponent: number; offsetDeg: number; standingDeg: number }[]
   /** The frame with wind speeds corrected for the response in force, for the questions that build on it. */
@@ -52,6 +61,8 @@ export interface StaticOffsetAnswer {
     readonly standingInterval95GivenExponentDeg: readonly [number, number]
     /** Exponents that the ends of standingInterval95Deg go with. */
     readonly endExponents: readonly [number, number]
+    /** Of a vane that reads k degrees for each degree, d / k^2 (slope of power) or d / k (yaw moves, reference) is found. */
+    readonly gainInEstimate: 1 | 2
   } | null
   readonly failure: { code: string; text: string } | null
 }
@@ -146,6 +157,7 @@ export function staticOffset(
       standingInterval95Deg: doubted.interval,
       standingInterval95GivenExponentDeg: around(standingDeg, standingHalf),
       endExponents: doubted.endExponents,
+      gainInEstimate: 2,
     },
     sheet: {
       ...emptySheet(frame, counts),
@@ -192,6 +204,10 @@ export function staticOffset(
       furtherDays: further.days,
       furtherNote: further.note,
       bins: powerByVane(frame),
+      fittedExponent: exponentInSheet(fittedExponent(rows, fit, dayWeights, usedDays)),
+      byCondition: conditionsInSheet(
+        offsetByCondition(frame, { rows, fit, dayWeights, freeStream: request.freeStream ?? undefined }),
+      ),
     },
   }
 }
@@ -277,10 +293,7 @@ function tooLittle(
   return null
 }
 
-function emptySheet(
-  frame: TurbineFrame,
-  counts: { rows: number; days: number },
-): TurbineSheet['staticOffset'] {
+function emptySheet(frame: TurbineFrame, counts: { rows: number; days: number }): OffsetSheet {
   return {
     estimateDeg: null,
     interval95Deg: [null, null],
@@ -299,5 +312,9 @@ function emptySheet(
     furtherNote: '',
     ...counts,
     bins: [],
+    fittedExponent: null,
+    byCondition: NO_CONDITIONS,
+    powerAgainstVane: powerAgainstVane(frame),
+    captureMatrix: captureMatrix(frame),
   }
 }

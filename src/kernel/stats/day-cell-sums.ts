@@ -3,6 +3,8 @@ import type { DayWeights } from './day-weights.ts'
 
 /** Sums kept for a pair: of w, wx, wy, wxx, wxy. */
 const SUMS = 5
+/** Less variation of x than this is none. */
+const LEAST_SPREAD = 1e-12
 
 /**
  * Which pair of cell and day each row of a regression belongs to. Rows of one cell share a level; rows of one day are
@@ -107,7 +109,9 @@ export function dayCellSums(
  * @returns slope; NaN where x does not vary inside any cell.
  */
 export function slopeWithinCells(sums: DayCellSums): number {
-  return slopeOver(sums, new Float64Array(sums.layout.days).fill(1))
+  const moments = noMoments(sums)
+  withinCells(sums, new Float64Array(sums.layout.days).fill(1), moments)
+  return slopeOver(moments)
 }
 
 /**
@@ -117,16 +121,30 @@ export function slopeWithinCells(sums: DayCellSums): number {
  * @throws InputError LENGTH_MISMATCH when weights and sums are of different windows
  */
 export function resampledSlopes(sums: DayCellSums, weights: DayWeights): Float64Array {
-  const { days } = sums.layout
-  if (weights.days !== days) {
-    throw new InputError('LENGTH_MISMATCH', `weights: expected ${days} days, got ${weights.days}`)
-  }
   const slopes = new Float64Array(weights.resamples)
-  const times = new Float64Array(days)
-  for (let r = 0; r < weights.resamples; r++) {
-    for (let d = 0; d < days; d++) times[d] = weights.counts[r * days + d]!
-    slopes[r] = slopeOver(sums, times)
-  }
+  overResamples(sums, weights, (moments, r) => (slopes[r] = slopeOver(moments)))
+  return slopes
+}
+
+/**
+ * The same for groups of cells at once, at the cost of a single pass.
+ *
+ * @param groups  cells of each group; a cell may be in any number of groups.
+ * @returns in the order of the groups: slope with all days counted once, and in every resample.
+ * @throws InputError LENGTH_MISMATCH when weights and sums are of different windows
+ */
+export function groupSlopes(
+  sums: DayCellSums,
+  groups: readonly (readonly number[])[],
+  weights: DayWeights,
+): { slope: number; resampled: Float64Array }[] {
+  const slopes = groups.map(() => ({ slope: NaN, resampled: new Float64Array(weights.resamples) }))
+  overResamples(sums, weights, (moments, r) => {
+    groups.forEach((cells, g) => (slopes[g]!.resampled[r] = slopeOver(moments, cells)))
+  })
+  const moments = noMoments(sums)
+  withinCells(sums, new Float64Array(sums.layout.days).fill(1), moments)
+  groups.forEach((cells, g) => (slopes[g]!.slope = slopeOver(moments, cells)))
   return slopes
 }
 
@@ -149,11 +167,37 @@ export function cellLevels({ layout, sums }: DayCellSums, slope: number): Float6
   return level
 }
 
+/** Per cell: sums of squares of x, and of products of x and y, about the means of the cell. */
+interface Moments {
+  readonly spread: Float64Array
+  readonly joint: Float64Array
+}
+
+function noMoments({ layout }: DayCellSums): Moments {
+  return { spread: new Float64Array(layout.cells), joint: new Float64Array(layout.cells) }
+}
+
+function overResamples(
+  sums: DayCellSums,
+  weights: DayWeights,
+  take: (moments: Moments, resample: number) => void,
+): void {
+  const { days } = sums.layout
+  if (weights.days !== days) {
+    throw new InputError('LENGTH_MISMATCH', `weights: expected ${days} days, got ${weights.days}`)
+  }
+  const moments = noMoments(sums)
+  const times = new Float64Array(days)
+  for (let r = 0; r < weights.resamples; r++) {
+    for (let d = 0; d < days; d++) times[d] = weights.counts[r * days + d]!
+    withinCells(sums, times, moments)
+    take(moments, r)
+  }
+}
+
 /** @param times  how often each day counts. */
-function slopeOver({ layout, sums }: DayCellSums, times: Float64Array): number {
+function withinCells({ layout, sums }: DayCellSums, times: Float64Array, { spread, joint }: Moments): void {
   const { cells, cellStart, day } = layout
-  let spread = 0
-  let joint = 0
   for (let c = 0; c < cells; c++) {
     let n = 0
     let x = 0
@@ -170,10 +214,19 @@ function slopeOver({ layout, sums }: DayCellSums, times: Float64Array): number {
       xx += w * sums[at + 3]!
       xy += w * sums[at + 4]!
     }
-    if (n > 0) {
-      spread += xx - (x * x) / n
-      joint += xy - (x * y) / n
-    }
+    spread[c] = n > 0 ? xx - (x * x) / n : 0
+    joint[c] = n > 0 ? xy - (x * y) / n : 0
   }
-  return spread > 1e-12 ? joint / spread : NaN
+}
+
+/** Over some cells, or all. */
+function slopeOver({ spread, joint }: Moments, cells?: readonly number[]): number {
+  let [xx, xy] = [0, 0]
+  const count = cells?.length ?? spread.length
+  for (let k = 0; k < count; k++) {
+    const c = cells ? cells[k]! : k
+    xx += spread[c]!
+    xy += joint[c]!
+  }
+  return xx > LEAST_SPREAD ? xy / xx : NaN
 }
