@@ -70,7 +70,9 @@ export function scoreTurbine(task: ScoreTask): TurbineSheet {
     events: task.events,
   })
   // From here on the sheet speaks of the rows since the last change.
-  const byPower = staticOffset(rowsSince(task.frame, segment.fromMs), task, block)
+  const since = rowsSince(task.frame, segment.fromMs)
+  const freeStream = task.freeStream?.subarray(task.frame.time.length - since.time.length) ?? null
+  const byPower = staticOffset(since, { ...task, freeStream }, block)
   const answer = block
     ? byPower
     : preferReference(

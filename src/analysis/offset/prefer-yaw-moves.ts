@@ -112,6 +112,7 @@ export function preferYawMoves(
       standingInterval95Deg: doubted.interval,
       standingInterval95GivenExponentDeg: standingGiven,
       endExponents: doubted.endExponents,
+      gainInEstimate: 1,
     },
     sheet: {
       ...answer.sheet,
