@@ -1,12 +1,13 @@
 import Table from 'cli-table3'
 import { CAUTION_IN_SHORT, CAUTIONS } from '../replay/index.ts'
+import { correctionLines } from '../sheet/correction-lines.ts'
 import type { ScoreSheet, TurbineSheet } from '../sheet/index.ts'
 
 /** Widths without the gap between columns; with it a line takes 118 characters. */
 const WIDTHS = { turbine: 11, verdict: 14, standing: 21, loss: 8, annual: 20, advice: 44 } as const
 
 const LONGEST_CAUTION = 115
-const LINE_WIDTH = 118
+const LINE_WIDTH = 116
 
 /**
  * A score sheet as a person reads it in a terminal: plain text, at most 120 characters a line.
@@ -16,13 +17,14 @@ const LINE_WIDTH = 118
 export function sheetSummary(sheet: ScoreSheet, paths: readonly string[]): string {
   const lines = [
     `${sheet.site ?? 'log without a site file'}, ${day(sheet.window.from)} to ${day(sheet.window.to)}`,
+    ...correctionSection(sheet),
     '',
     turbineTable(sheet),
     '',
     'm: degrees that the nacelle must stand further clockwise, seen from above; it is added to the vane reading.',
     '',
     rowsLine(sheet),
-    ...section('Warnings', unique([...sheet.warnings, ...sheet.receipt.warnings])),
+    ...section('Warnings', warningsOf(sheet)),
     ...section('Cautions', cautionLines(sheet.turbines)),
     '',
     ...wrapped(CAUTION_IN_SHORT),
@@ -30,6 +32,24 @@ export function sheetSummary(sheet: ScoreSheet, paths: readonly string[]): strin
     ...paths.map((path) => `written: ${path}`),
   ]
   return `${lines.join('\n')}\n`
+}
+
+/** In full and before everything else: somebody may have to go back today. */
+function correctionSection({ corrections }: ScoreSheet): string[] {
+  if (corrections.length === 0) return []
+  return [
+    '',
+    'Corrections:',
+    ...correctionLines(corrections).flatMap((text) =>
+      wrapped(`- ${text}`).map((line, k) => (k > 0 ? `  ${line}` : line)),
+    ),
+  ]
+}
+
+/** Those of corrections stand above the table already. */
+function warningsOf({ warnings, receipt, corrections }: ScoreSheet): string[] {
+  const told = new Set(correctionLines(corrections))
+  return unique([...warnings, ...receipt.warnings]).filter((warning) => !told.has(warning))
 }
 
 function turbineTable(sheet: ScoreSheet): string {

@@ -1,21 +1,19 @@
+import { correctionHead, correctionLines, isAlarm } from '../sheet/correction-lines.ts'
 import type { CorrectionProof, ScoreSheet } from '../sheet/index.ts'
-
-/** Outcomes that somebody must hear of: what was entered is not in force, or turns the rotor away from the wind. */
-const ALARMS: readonly CorrectionProof['outcome'][] = ['wrong way', 'not taken hold']
-
-/** Whether the outcome of a correction calls for somebody at the controller. */
-export function isAlarm({ outcome }: CorrectionProof): boolean {
-  return ALARMS.includes(outcome)
-}
 
 /**
  * A sheet with what became of the corrections: those that call for somebody stand first among the warnings and first in
- * the advice of their turbine. Of two corrections of one turbine the later one gives the advice.
+ * the advice of their turbine. Of several corrections of one turbine the last one counts there.
  */
 export function withCorrections(sheet: ScoreSheet, corrections: readonly CorrectionProof[]): ScoreSheet {
   const last = new Map(corrections.map((proof) => [proof.turbine, proof]))
-  const alarms = corrections.filter(isAlarm).filter((proof) => last.get(proof.turbine) === proof)
-  const advised = new Map(alarms.map((proof) => [proof.turbine, adviceOf(proof)]))
+  const alarms = [...last.values()].filter(isAlarm)
+  const advised = new Map(
+    alarms.map((proof) => [
+      proof.turbine,
+      `${proof.urgent ? 'URGENT: ' : ''}${proof.outcome.toUpperCase()}, ${correctionHead(proof)}. ${proof.advice}`,
+    ]),
+  )
   return {
     ...sheet,
     corrections: [...corrections],
@@ -23,18 +21,6 @@ export function withCorrections(sheet: ScoreSheet, corrections: readonly Correct
       const advice = advised.get(turbine.turbine)
       return advice === undefined ? turbine : { ...turbine, advice: [advice, ...turbine.advice] }
     }),
-    warnings: [...alarms.map(warningOf), ...sheet.warnings],
+    warnings: [...correctionLines(alarms), ...sheet.warnings],
   }
-}
-
-function warningOf(proof: CorrectionProof): string {
-  return `${proof.urgent ? 'URGENT: ' : ''}${proof.turbine}: correction of ${headOf(proof)}: ${proof.outcome.toUpperCase()}. ${proof.advice} ${proof.reason}`
-}
-
-function adviceOf(proof: CorrectionProof): string {
-  return `${proof.outcome.toUpperCase()}: correction of ${headOf(proof)}. ${proof.advice}`
-}
-
-function headOf({ enteredDeg, at }: CorrectionProof): string {
-  return `${enteredDeg > 0 ? '+' : ''}${enteredDeg} degrees, ${at.slice(0, 16).replace('T', ' ')} UTC`
 }

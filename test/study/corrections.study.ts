@@ -34,7 +34,7 @@ const DAY = 45
 const DAY_MS = 86_400_000
 const ENTERED_DEG = 6
 /** Turbines of each farm that are corrected, one at a time. */
-const TARGETS = [0, 4, 8] as const
+const TARGETS = [0, 4, 8]
 const AFTER_DAYS = [1, 2, 5, 10, 45] as const
 /** True wind speeds over which the truth of a gain is taken, m/s: about those that are compared. */
 const BELOW_RATED_MS = [5, 10.8] as const
@@ -52,6 +52,7 @@ interface Line {
   readonly outcomes: Map<string, number>
   readonly errors: number[]
   readonly halves: number[]
+  readonly headings: number[]
   readonly predictions: number[]
   covered: number
   placebos: number
@@ -62,9 +63,9 @@ export function correctionStudy(farms: number, print: (text: string) => void): v
   const lines: Line[] = []
   for (let k = 0; k < farms; k++) farmCases(FIRST_SEED + k, lines)
   print(
-    '| entered | nacelle position | days after | outcomes | gain: RMSE, % | half-width, % | truth in the interval | predicted less true, % | placebos beyond chance |',
+    '| entered | nacelle position | days after | outcomes | heading half-width, degrees | gain: RMSE, % | half-width, % | truth in the interval | predicted less true, % | placebos beyond chance |',
   )
-  print('|---|---|---|---|---|---|---|---|---|')
+  print('|---|---|---|---|---|---|---|---|---|---|')
   for (const line of lines) print(lineText(line))
 }
 
@@ -73,9 +74,7 @@ function farmCases(seed: number, lines: Line[]): void {
     seed,
     turbines: TURBINES,
     days: DAYS,
-    offsetsDeg: Array.from({ length: TURBINES }, (_, i) =>
-      TARGETS.includes(i as 0) ? ENTERED_DEG : (i % 3) - 1,
-    ),
+    offsetsDeg: Array.from({ length: TURBINES }, (_, i) => (TARGETS.includes(i) ? ENTERED_DEG : (i % 3) - 1)),
     anemometerResponsePerDeg: -0.003,
     anemometerResponseSpread: 0.0003,
   })
@@ -98,6 +97,7 @@ function farmCases(seed: number, lines: Line[]): void {
               outcomes: new Map(),
               errors: [],
               halves: [],
+              headings: [],
               predictions: [],
               covered: 0,
               placebos: 0,
@@ -116,6 +116,8 @@ function note(line: Line, proof: CorrectionProof, truthPct: number): void {
   line.outcomes.set(proof.outcome, (line.outcomes.get(proof.outcome) ?? 0) + 1)
   line.placebos += proof.placebos.list.length
   line.beyond += proof.placebos.beyondChance
+  const [from, to] = proof.heading.interval95Deg
+  if (typeof from === 'number' && typeof to === 'number') line.headings.push((to - from) / 2)
   const [low, high] = proof.interval95Pct
   if (proof.gainPct === null || typeof low !== 'number' || typeof high !== 'number') return
   line.errors.push(proof.gainPct - truthPct)
@@ -135,6 +137,7 @@ function lineText(line: Line): string {
     line.position ? 'yes' : 'no',
     line.afterDays,
     outcomes.join(', '),
+    mean(line.headings).toFixed(1),
     rms(line.errors).toFixed(2),
     mean(line.halves).toFixed(2),
     `${line.covered} of ${line.errors.length}`,

@@ -46,6 +46,8 @@ function reasonOf(said: Said): string {
         'It took hold and power',
         said.heading.seenIn === null ? 'Power' : 'It took hold and power',
       )
+    case 'offset-smaller':
+      return `${said.heading.seenIn === null ? 'Power against vane' : 'The heading, and power against vane,'} put the misalignment at ${degrees(said.standing.before)} before and ${degrees(said.standing.after)} after; power against neighbours allows the gain and does not show it by itself: ${both}.`
     case 'power-same':
       return `Power did not change by what the correction should give: ${both}.`
     case 'power-too-fine':

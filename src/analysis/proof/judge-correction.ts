@@ -12,6 +12,12 @@ const ALARM = 1.5
 const PATIENCE_DAYS = 120
 /** Days after which the heading has told, as far as it can. */
 const HEADING_DAYS = 2
+/** Days after which the offset has been estimated anew, as far as it is worth waiting for. */
+const LOOK_AGAIN_DAYS = 14
+const NORMAL_95 = 1.959963984540054
+/** Squared standard deviations by which one account must fit better than the others: 99.5 and 97.5 of 100. */
+const SURE = 6.6
+const LIKELY = 3.84
 
 /** A number and its half-width at 95 %. */
 export interface Measured {
@@ -46,6 +52,7 @@ export interface Judgement {
     | 'power-higher'
     | 'vane-other-way'
     | 'power-same'
+    | 'offset-smaller'
     | 'power-too-fine'
     | 'waiting-for-heading'
     | 'waiting-for-power'
@@ -83,55 +90,75 @@ export function judgeCorrection(evidence: Evidence): Judgement {
 
 /** The heading stepped as entered: was that the right way, and does power show it? */
 function heldAsEntered(evidence: Evidence, headingDeg: Measured): Judgement {
-  const { power } = evidence
+  const { power, daysAfter } = evidence
   const expected = expectedGain(evidence, headingDeg.value)
   if (power && power.value + ALARM * power.half < 0) return settled('wrong way', 'power-lower')
   const isUp = power !== null && power.value - power.half > 0
   if (expected && expected.high < 0 && !isUp) return settled('wrong way', 'further-off')
   if (isUp) return settled('worked', 'power-higher')
-  if (!power || !expected) return waiting(evidence, expected)
-  const speaks = power.half < Math.abs(expected.value)
+  const speaks = power !== null && expected !== null && power.half < Math.abs(expected.value)
   if (speaks && power.value + power.half < expected.value) return settled('no effect seen', 'power-same')
-  if (speaks && expected.low > 0) return settled('worked', 'power-higher')
+  // Power allows the gain and cannot show it by itself: the heading, and the offset by power against vane, do.
+  if (daysAfter >= LOOK_AGAIN_DAYS && expected && expected.low > 0) return settled('worked', 'offset-smaller')
   return waiting(evidence, expected)
 }
 
+/**
+ * Without a heading three things may have happened: turned as entered, not turned, turned the other way. Each foretells a
+ * gain, by m before, and a change of m; what is seen says how much more likely one is than another.
+ */
 function byPowerAlone(evidence: Evidence): Judgement {
   const { power, changeDeg, enteredDeg } = evidence
-  const expected = expectedGain(evidence, enteredDeg)
-  if (power && power.value + ALARM * power.half < 0) return settled('wrong way', 'power-lower')
-  if (changeDeg) {
-    const turned = -changeDeg.value * Math.sign(enteredDeg)
-    if (turned + ALARM * changeDeg.half < -QUARTER * Math.abs(enteredDeg)) {
-      return settled('wrong way', 'vane-other-way')
-    }
-  }
-  if (power && power.value - power.half > 0) return settled('worked', 'power-higher')
   if (!power && !changeDeg) return { outcome: 'too early', code: 'no-evidence', furtherDays: NaN }
-  const speaks = power !== null && expected !== null && power.half < Math.abs(expected.value)
-  if (speaks && power.value + power.half < expected.value) return settled('no effect seen', 'power-same')
+  if (power && power.value + ALARM * power.half < 0) return settled('wrong way', 'power-lower')
+  const asEntered = misfit(evidence, enteredDeg)
+  const still = misfit(evidence, 0)
+  const otherWay = misfit(evidence, -enteredDeg)
+  if (Math.min(asEntered, still) - otherWay > SURE) return settled('wrong way', 'vane-other-way')
+  const expected = expectedGain(evidence, enteredDeg)
+  if (expected && expected.high < 0 && still - asEntered > SURE) return settled('wrong way', 'further-off')
+  if (power && power.value - power.half > 0) return settled('worked', 'power-higher')
+  if (expected && expected.low > 0 && Math.min(still, otherWay) - asEntered > LIKELY) {
+    return settled('worked', 'offset-smaller')
+  }
+  if (Math.min(asEntered, otherWay) - still > LIKELY) return settled('no effect seen', 'power-same')
   return waiting(evidence, expected)
+}
+
+/** Squared standard deviations between what is seen and what turning by so many degrees foretells. */
+function misfit(evidence: Evidence, turnedDeg: number): number {
+  const { power, changeDeg } = evidence
+  const expected = expectedGain(evidence, turnedDeg)
+  let sum = 0
+  if (power && expected) {
+    const half = Math.hypot(power.half, (expected.high - expected.low) / 2)
+    sum += ((power.value - expected.value) / (half / NORMAL_95)) ** 2
+  }
+  if (changeDeg) sum += ((changeDeg.value + turnedDeg) / (changeDeg.half / NORMAL_95)) ** 2
+  return sum
 }
 
 function settled(outcome: CorrectionOutcome, code: Judgement['code']): Judgement {
   return { outcome, code, furtherDays: NaN }
 }
 
-/** Too early, with the days until power could tell the expected gain from none; where it never will, the heading decides. */
+/** Too early, with the days until power could tell the expected gain from none. */
 function waiting(evidence: Evidence, expected: Expected | null): Judgement {
   const { power, daysAfter, daysBefore } = evidence
   const days =
     power && expected ? daysUntil(power.half, Math.abs(expected.value), { daysBefore, daysAfter }) : NaN
+  const lookAgain = LOOK_AGAIN_DAYS - daysAfter
+  if (evidence.headingDeg && lookAgain > 0) {
+    const sooner = days > 0 ? Math.min(days, lookAgain) : lookAgain
+    return { outcome: 'too early', code: 'waiting-for-power', furtherDays: Math.max(1, Math.ceil(sooner)) }
+  }
   if (days + daysAfter <= PATIENCE_DAYS) {
     return { outcome: 'too early', code: 'waiting-for-power', furtherDays: Math.max(1, Math.ceil(days)) }
   }
-  if (evidence.headingDeg && expected && expected.low > 0) return settled('worked', 'power-too-fine')
-  const isYoung = daysAfter < HEADING_DAYS * 5
-  return {
-    outcome: 'too early',
-    code: power ? 'power-too-fine' : 'no-evidence',
-    furtherDays: isYoung ? 10 : NaN,
+  if (lookAgain > 0) {
+    return { outcome: 'too early', code: 'waiting-for-power', furtherDays: Math.ceil(lookAgain) }
   }
+  return { outcome: 'too early', code: power ? 'power-too-fine' : 'no-evidence', furtherDays: NaN }
 }
 
 /** Half-width falls with 1 / days before + 1 / days after. */

@@ -3,7 +3,7 @@ import { farmDirection, type FarmDirection } from '../neighbours/farm-direction.
 import type { FarmRows } from '../neighbours/neighbours.ts'
 import type { Sides } from './judged-step.ts'
 
-/** Sectors of the wind's direction in which turbines have levels of their own against each other, degrees. */
+/** Sectors of the wind's direction in which headings have levels of their own against each other, degrees. */
 export const SECTOR_DEG = 30
 
 /** The farm as corrections are judged by. */
@@ -17,7 +17,7 @@ export interface ProofFarm {
   readonly positionDeg: GridChannel
   /** Whether the turbine has nacelle positions whose sign nothing speaks against. */
   readonly positionUsable: readonly boolean[]
-  /** Sector of the consensus direction; -1: not known. Sector 0 throughout where no direction is known at all. */
+  /** Sector of the consensus direction, see `sectorsOf`. */
   readonly sector: Int32Array
   readonly sectors: number
 }
@@ -41,8 +41,6 @@ export function proofFarm(farm: FarmRows, blocked: readonly boolean[]): ProofFar
   const positionDeg = onGrid(grid, (turbine, row) =>
     turbine.running[row] === 1 ? turbine.nacellePosition[row]! : NaN,
   )
-  const sectors = 360 / SECTOR_DEG
-  const isKnown = direction.consensusDeg.some((angle) => !Number.isNaN(angle))
   return {
     grid,
     clock: { fromMs: farm.fromMs, intervalMs: farm.intervalS * 1000 },
@@ -52,9 +50,15 @@ export function proofFarm(farm: FarmRows, blocked: readonly boolean[]): ProofFar
     positionUsable: positionDeg.map(
       (values, i) => !blocked[i] && values.some((value) => !Number.isNaN(value)),
     ),
-    sector: Int32Array.from(direction.consensusDeg, (angle) =>
-      Number.isNaN(angle) ? (isKnown ? -1 : 0) : Math.floor(angle / SECTOR_DEG) % sectors,
-    ),
-    sectors,
+    sector: sectorsOf(direction, SECTOR_DEG),
+    sectors: 360 / SECTOR_DEG,
   }
+}
+
+/** Sector of the consensus direction at each interval; -1: not known; 0 throughout where none is known at all. */
+export function sectorsOf({ consensusDeg }: FarmDirection, widthDeg: number): Int32Array {
+  const isKnown = consensusDeg.some((angle) => !Number.isNaN(angle))
+  return Int32Array.from(consensusDeg, (angle) =>
+    Number.isNaN(angle) ? (isKnown ? -1 : 0) : Math.floor(angle / widthDeg) % Math.round(360 / widthDeg),
+  )
 }
