@@ -32,4 +32,7 @@ export { examineDay, type HighRateDay, type HighRateRecord } from './high-rate/e
 export { vaneAndAnemometer } from './sensors/vane-and-anemometer.ts'
 export { joinReports, type SensorReport } from './sensors/sensor-report.ts'
 export { proveCorrections, type ProveQuestion } from './proof/prove-corrections.ts'
+export { nacelleRecords, type FarmNorth, type NacelleRecord } from './sensors/nacelle-records.ts'
+export { nacelleFindings } from './sensors/nacelle-findings.ts'
+export { nacelleNorth, nacelleTests, withTrueNorth, type TrueNorth } from './sensors/nacelle-north.ts'
 export { attributions } from './sensors/attribution.ts'

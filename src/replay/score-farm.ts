@@ -2,7 +2,7 @@ import {
   attributions,
   clockLags,
   dayBlocks,
-  headingSteps,
+  nacelleRecords,
   pricesOver,
   signChecks,
   type HighRateRecord,
@@ -55,7 +55,10 @@ export async function scoreFarm(
   const highRate = request.examine ? await request.examine(frame.turbines) : []
   const signs = signChecks(frame)
   const clocks = clockLags(frame)
-  const headings = headingSteps(frame)
+  const north = nacelleRecords(
+    frame,
+    signs.map(({ agrees, neighboursAgree }) => agrees === false || neighboursAgree === false),
+  )
   const sensors = vaneAndAnemometer(frame)
   const prices = pricesOver(site.value, {
     timezone: frame.calendar.timezone,
@@ -85,7 +88,7 @@ export async function scoreFarm(
         farmEstimates: neighbours?.estimates[i] ?? [],
         freeStream: neighbours?.freeStream[i] ?? null,
         sign: signs[i]!,
-        heading: headings[i] ?? null,
+        nacelle: north.turbines[i]!,
         events: eventsOf(site, turbine),
         longTerm: site.longTerm,
         prices,
@@ -110,7 +113,7 @@ export async function scoreFarm(
         settings,
         corrections: site.corrections,
         events: site.events ?? [],
-        headings,
+        headings: north.turbines.map(({ heading }) => heading),
         responses: rows.map((_, i) => neighbours?.response.turbines[i] ?? null),
         blocked: signs.map(({ block }) => block !== null),
       })

@@ -1,6 +1,9 @@
 import {
   energyLoss,
   lastSegment,
+  nacelleFindings,
+  nacelleNorth,
+  nacelleTests,
   powerCurveTable,
   preferReference,
   preferYawMoves,
@@ -14,9 +17,9 @@ import {
   type Block,
   type DayWeights,
   type FarmEstimate,
-  type HeadingRecord,
   type HighRateRecord,
   type Prices,
+  type NacelleRecord,
   type SignCheck,
   type StaticOffsetAnswer,
   type TurbineEvent,
@@ -41,8 +44,8 @@ export interface ScoreTask {
   /** Per row of the frame: 1 = free stream, 0 = in or beside a wake; null = not known. */
   readonly freeStream: Uint8Array | null
   readonly sign: SignCheck
-  /** Steps of this turbine's heading against the farm; null = none to be had. */
-  readonly heading: HeadingRecord | null
+  /** What the farm says of this turbine's nacelle position. */
+  readonly nacelle: NacelleRecord
   /** What was done to this turbine, from the site file. */
   readonly events: readonly TurbineEvent[]
   /** What the wind of a year is judged by, from the site file. */
@@ -66,7 +69,7 @@ export function scoreTurbine(task: ScoreTask): TurbineSheet {
     days: task.days,
     usedDays: countDays(task.frame),
     exponent: settings.exponent,
-    heading: task.heading,
+    heading: task.nacelle.heading,
     events: task.events,
   })
   // From here on the sheet speaks of the rows since the last change.
@@ -122,11 +125,12 @@ export function scoreTurbine(task: ScoreTask): TurbineSheet {
     sensors: [
       ...(notReady ? [notReady.finding] : []),
       ...sign.findings,
-      ...segment.findings,
+      ...nacelleFindings(task.frame, task.nacelle, segment),
       ...task.farmFindings,
     ],
-    sensorTests: [...task.farmTests],
+    sensorTests: [...nacelleTests(task.nacelle), ...task.farmTests],
     attribution: { text: '', evidence: [], wouldSettle: [] },
+    nacelle: nacelleNorth(task.nacelle, offset),
     yawActivity: {},
     advice: adviceFor(verdict, offset),
     cautions: [...curveCaution(offset), ...CAUTIONS],

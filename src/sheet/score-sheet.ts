@@ -10,6 +10,7 @@ import {
   OffsetByCondition,
   PowerAgainstVane,
 } from './offset-conditions.ts'
+import { NacelleNorth } from './nacelle.ts'
 import { Receipt } from './receipt.ts'
 import { ScoringSettings } from './settings.ts'
 
@@ -212,6 +213,7 @@ export const TurbineSheet = Type.Object(
     sensors: Type.Array(SensorFinding),
     sensorTests: Type.Array(SensorTest),
     attribution: Attribution,
+    nacelle: NacelleNorth,
     yawActivity: Type.Record(Type.String(), Type.Unknown()),
     advice: Type.Array(Type.String()),
     cautions: Type.Array(Type.String()),

@@ -2,7 +2,7 @@
  * Scoring a warm month of 10-minute rows of one turbine (4,464 rows), frame, 1000 resamples of each block length and all
  * questions included, in milliseconds and as a ratio to plain work in the same run: sorting a Float64Array of 1,000,000.
  */
-import { dayBlocks, signChecks } from '../../src/analysis/index.ts'
+import { dayBlocks, nacelleRecords, signChecks } from '../../src/analysis/index.ts'
 import { scoreTurbine } from '../../src/replay/score-turbine.ts'
 import { farmScenario } from '../../src/simulate/index.ts'
 import { cachedFarm, frameOf, STUDY_SETTINGS } from '../study/simulated-farms.ts'
@@ -28,7 +28,7 @@ export function benchScoring(print: (text: string) => void): void {
       sign: signChecks(frame)[0]!,
       farmFindings: [],
       farmTests: [],
-      heading: null,
+      nacelle: nacelleRecords(frame, []).turbines[0]!,
       events: [],
       highRate: null,
       longTerm: undefined,

@@ -2,6 +2,7 @@ import { changeStudy } from './change-points.study.ts'
 import { correctionStudy } from './corrections.study.ts'
 import { honestAnemometers } from './honest-anemometers.study.ts'
 import { yawMoveStudy } from './yaw-moves.study.ts'
+import { northStudy } from './north.study.ts'
 import { neighboursStudy } from './neighbours.study.ts'
 
 /** Prints the tables of the studies: `npm run study`, or `npm run study -- honest 40`; what the number counts each study says. */
@@ -16,3 +17,4 @@ if (name === 'all' || name === 'neighbours') neighboursStudy(Number(count), prin
 if (name === 'all' || name === 'moves') yawMoveStudy(Number(count), print)
 if (name === 'all' || name === 'changes') changeStudy(Number(count), print)
 if (name === 'all' || name === 'corrections') correctionStudy(Number(count), print)
+if (name === 'all' || name === 'north') northStudy(Number(count), print)

@@ -1,12 +1,10 @@
 import type { TurbineFrame } from '../../frame/index.ts'
 import type { TurbineSheet } from '../../sheet/index.ts'
-import type { HeadingRecord } from './offset-changes-heading.ts'
+import type { HeadingRecord, HeadingStep } from './offset-changes-heading.ts'
 import { offsetChanges, type OffsetChange, type OffsetHistory } from './offset-changes.ts'
 
 /** Without headings a change is dated from power alone, which takes this many days with rows. */
 const DAYS_FOR_POWER = 40
-const NORTH_FIRST =
-  'At the desk: look for work at the yaw sensor or a north parameter that was set at that time. Then read the position against a known bearing.'
 
 /** Something that was done to a turbine and may have changed its offset. */
 export interface TurbineEvent {
@@ -19,7 +17,10 @@ export interface LastSegment {
   /** First moment of the offset that holds at the end; -Infinity when it never changed. */
   readonly fromMs: number
   readonly changes: TurbineSheet['staticOffset']['changes']
-  readonly findings: TurbineSheet['sensors']
+  /** Steps of the heading that the position sensor made, by power. */
+  readonly positionSteps: readonly HeadingStep[]
+  /** Steps of the heading that power cannot lay to vane or position sensor. */
+  readonly undecided: readonly HeadingStep[]
 }
 
 /**
@@ -39,7 +40,7 @@ export function lastSegment(
   },
 ): LastSegment {
   const { heading, events, days, exponent } = question
-  const still: LastSegment = { fromMs: -Infinity, changes: [], findings: [] }
+  const still: LastSegment = { fromMs: -Infinity, changes: [], positionSteps: [], undecided: [] }
   const quiet = heading !== null && heading.whole && heading.steps.length === 0
   if (events.length === 0 && (quiet || (heading === null && question.usedDays < DAYS_FOR_POWER))) return still
 
@@ -63,11 +64,19 @@ export function lastSegment(
       sizeInterval95Deg: [...change.sizeInterval95Deg],
       seenIn: change.seenIn,
     })),
-    findings: [
-      ...positionSteps(history),
-      ...history.changes.filter(({ seenIn }) => seenIn === 'heading').map(undecided),
-    ],
+    positionSteps: history.positionSteps,
+    undecided: undecidedSteps(history, heading),
   }
+}
+
+/** Without a fit of the offset nothing is decided. */
+function undecidedSteps(history: OffsetHistory, heading: HeadingRecord | null): HeadingStep[] {
+  const steps = heading?.steps ?? []
+  if (history.segments.length === 0) return steps.filter((step) => !history.positionSteps.includes(step))
+  const moments = new Set(
+    history.changes.filter(({ seenIn }) => seenIn === 'heading').map(({ atMs }) => atMs),
+  )
+  return steps.filter(({ atMs }) => moments.has(atMs))
 }
 
 function changesOffset(change: OffsetChange, events: readonly TurbineEvent[]): boolean {
@@ -75,34 +84,6 @@ function changesOffset(change: OffsetChange, events: readonly TurbineEvent[]): b
   if (change.seenIn !== 'event') return true
   const [low, high] = change.sizeInterval95Deg
   return low > 0 || high < 0 || events.some(({ atMs, changesOffset: sure }) => sure && atMs === change.atMs)
-}
-
-function positionSteps(history: OffsetHistory): TurbineSheet['sensors'] {
-  return history.positionSteps.map((step) => ({
-    sensor: 'nacelle-position',
-    kind: 'position-step',
-    finding: `the reading stepped by ${step.sizeDeg.toFixed(1)} degrees against the farm, and power did not: the position sensor, not the vane`,
-    severity: 'warn',
-    howSure: 'likely',
-    checkFirst: NORTH_FIRST,
-    from: iso(step.intervalMs[0]),
-    to: iso(step.intervalMs[1]),
-    detail: { sizeDeg: step.sizeDeg, halfWidthDeg: step.halfWidthDeg },
-  }))
-}
-
-function undecided(change: OffsetChange): TurbineSheet['sensors'][number] {
-  return {
-    sensor: 'nacelle-position',
-    kind: 'unexplained-step',
-    finding: 'the heading stepped against the farm; power cannot tell whether vane or position sensor did it',
-    severity: 'warn',
-    howSure: 'possible',
-    checkFirst: NORTH_FIRST,
-    from: iso(change.interval[0]),
-    to: iso(change.interval[1]),
-    detail: { sizeByPowerDeg: change.sizeDeg, sizeInterval95Deg: [...change.sizeInterval95Deg] },
-  }
 }
 
 function iso(ms: number): string {

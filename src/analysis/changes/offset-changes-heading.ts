@@ -42,6 +42,23 @@ export interface HeadingRecord {
   readonly steps: readonly HeadingStep[]
   /** True: no step can have gone unseen for want of nacelle position or of neighbours. */
   readonly whole: boolean
+  /** n - d between the steps, against the farm's direction, which is itself known but for a constant; one more than steps. */
+  readonly levels: readonly HeadingLevel[]
+  /** What was searched: starts of the bins of six hours, epoch ms, and their n - d, continued over 180 degrees. */
+  readonly binMs: Float64Array
+  readonly binDeg: Float64Array
+  /** Variance of a bin as it counts over days, square degrees; NaN where bins are too few to tell. */
+  readonly binVariance: number
+}
+
+/** Time with one n - d. */
+export interface HeadingLevel {
+  readonly fromMs: number
+  readonly toMs: number
+  /** Degrees, [-180, 180). */
+  readonly deg: number
+  /** At 95 %; NaN where bins are too few to tell. */
+  readonly halfWidthDeg: number
 }
 
 /**
@@ -49,14 +66,18 @@ export interface HeadingRecord {
  * compared with the median of the others; the clearest steps are taken out first, so that they do not show in the
  * others. Angles are continued from bin to bin: a step may cross 180 degrees. What all turbines do at once is not seen.
  *
+ * @param indicated  N + v of each turbine where it is to be heard, on the farm's clock; default: while it runs.
  * @returns per turbine, in the order of the farm; null without nacelle position or with fewer than two others.
  */
-export function headingSteps(farm: FarmRows): (HeadingRecord | null)[] {
-  const grid = farmGrid(farm)
-  const { consensusDeg, constantDeg } = farmDirection(grid)
-  const local = onGrid(grid, (turbine, row) =>
-    turbine.running[row] === 1 ? turbine.indicatedDirection[row]! : NaN,
-  ).map((values, i) => values.map((value, t) => wrap180(value - consensusDeg[t]! - constantDeg[i]!)))
+export function headingSteps(
+  farm: FarmRows,
+  grid: FarmGrid = farmGrid(farm),
+  indicated: GridChannel = runningDirection(grid),
+): (HeadingRecord | null)[] {
+  const { consensusDeg, constantDeg } = farmDirection(grid, indicated)
+  const local = indicated.map((values, i) =>
+    values.map((value, t) => wrap180(value - consensusDeg[t]! - constantDeg[i]!)),
+  )
   const bins = binsOf(farm)
   const stepsOf = (cleaned: GridChannel): Found[] => {
     const reference = medianOfOthers(local, cleaned)
@@ -83,8 +104,17 @@ export function headingSteps(farm: FarmRows): (HeadingRecord | null)[] {
     return {
       steps: datedSteps(one, grid, bins),
       whole: one.values.length >= WHOLE_SHARE * runningBins(grid, i, bins),
+      levels: levelsIn(one, constantDeg[i]!, grid, bins),
+      binMs: Float64Array.from(one.bin, (b) => bins.fromMs + b * bins.rowsPerBin * bins.intervalMs),
+      binDeg: one.values.map((value) => value + constantDeg[i]!),
+      binVariance: one.noise,
     }
   })
+}
+
+/** N + v of every turbine while it runs, [i][t]. */
+export function runningDirection(grid: FarmGrid): GridChannel {
+  return onGrid(grid, (turbine, row) => (turbine.running[row] === 1 ? turbine.indicatedDirection[row]! : NaN))
 }
 
 interface Bins {
@@ -114,7 +144,7 @@ function binsOf(farm: FarmRows): Bins {
 }
 
 /** Median of what the other turbines show at the same time, [i][t]; NaN with fewer than two others. */
-function medianOfOthers(local: GridChannel, cleaned: GridChannel): GridChannel {
+export function medianOfOthers(local: GridChannel, cleaned: GridChannel): GridChannel {
   const k = local.length
   const out = local.map((values) => new Float64Array(values.length).fill(NaN))
   for (let t = 0; t < (local[0]?.length ?? 0); t++) {
@@ -222,6 +252,17 @@ function datedSteps(found: Found, grid: FarmGrid, bins: Bins): HeadingStep[] {
       halfWidthDeg: NORMAL_95 * Math.sqrt(found.noise * (1 / bins1 + 1 / bins2)),
     }
   })
+}
+
+function levelsIn(found: Found, constantDeg: number, grid: FarmGrid, bins: Bins): HeadingLevel[] {
+  const timeOf = (row: number): number => bins.fromMs + row * bins.intervalMs
+  const starts = found.levels.map((_, k) => (k === 0 ? 0 : dated(found, k, bins).at))
+  return found.levels.map(({ from, to, meanDeg }, k) => ({
+    fromMs: timeOf(starts[k]!),
+    toMs: timeOf(starts[k + 1] ?? grid.length),
+    deg: wrap180(meanDeg + constantDeg),
+    halfWidthDeg: NORMAL_95 * Math.sqrt(found.noise / (to - from)),
+  }))
 }
 
 /** The row at which segment k begins, and the ends of its interval: the last row before it, the first row after it. */

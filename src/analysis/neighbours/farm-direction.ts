@@ -22,9 +22,13 @@ export interface FarmDirection {
  * Each turbine indicates N + v, off by a constant of its own (north offset minus vane offset). The consensus is the mean
  * over turbines after these constants are taken out; they are medians, so that one bad turbine does not turn the farm.
  * The constant of the farm is set so that the median turbine has none.
+ *
+ * @param indicated  N + v of each turbine where it is to be heard, [i][t]; default: wherever it is known.
  */
-export function farmDirection(grid: FarmGrid): FarmDirection {
-  const indicated = onGrid(grid, (turbine, row) => turbine.indicatedDirection[row]!)
+export function farmDirection(
+  grid: FarmGrid,
+  indicated: GridChannel = onGrid(grid, (turbine, row) => turbine.indicatedDirection[row]!),
+): FarmDirection {
   const k = indicated.length
   const known = indicated.map((values) => values.reduce((n, value) => n + (Number.isNaN(value) ? 0 : 1), 0))
   const first = known.indexOf(Math.max(...known))
