@@ -121,7 +121,7 @@ export function northStudy(farms: number, print: (text: string) => void): void {
     const sorted = hours[f]!.sort((a, b) => a - b)
     const dates =
       sorted.length > 0 ? `${sorted[sorted.length >> 1]!.toFixed(1)}, ${sorted.at(-1)!.toFixed(1)}` : ''
-    print(`| ${name} | ${found[f]} of ${farms} | ${dates} | ${others[f]} of ${7 * farms} |`)
+    print(`| ${name} | ${found[f]!} of ${farms} | ${dates} | ${others[f]!} of ${7 * farms} |`)
   })
 }
 
