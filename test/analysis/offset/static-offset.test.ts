@@ -217,3 +217,35 @@ test('further days are told where days would settle it, and a reference where th
   expect(clear.sheet.furtherDays).toBeNull()
   expect(clear.sheet.furtherNote).toContain('no more days')
 })
+
+test('the sheet shows the offset by condition, a fitted exponent that is not to be used, and tables that count every row', () => {
+  const { sheet } = offsetOf(syntheticColumns({ offsetDeg: 4, days: 20, noise: 0.03 }))
+  const { groups, sameness, curve, note } = sheet.byCondition
+  const speeds = groups.filter(({ condition }) => condition === 'wind-speed')
+  expect(speeds.reduce((sum, group) => sum + group.rows, 0)).toBe(sheet.rows)
+  expect(sameness.map(({ condition }) => condition)).toEqual(['wind-speed', 'day-night'])
+  expect(curve).toBeNull()
+  expect(note).toContain('exponent move all groups alike')
+  expect(sheet.fittedExponent!.note).toContain('no estimate to be used')
+  expect(sheet.powerAgainstVane.rows.reduce((sum, rows) => sum + rows, 0)).toBe(sheet.rows)
+  expect(sheet.captureMatrix.rows.reduce((sum, rows) => sum + rows, 0)).toBe(20 * 144)
+})
+
+test('an offset that grows with wind speed is a table for the controller, with what to look for first', () => {
+  const columns = syntheticColumns({ offsetDeg: 0, days: 40, noise: 0.02 })
+  const { wind_speed: speed, vane } = columns.numbers as { wind_speed: Float64Array; vane: Float64Array }
+  const power = columns.numbers['power']!.map((kw, i) => {
+    const d = 2 * (speed[i]! - 8)
+    return kw * (Math.cos((vane[i]! + d) * RAD) / Math.cos(vane[i]! * RAD)) ** 3
+  })
+  const { byCondition } = offsetOf({ ...columns, numbers: { ...columns.numbers, power } }).sheet
+  expect(byCondition.note).toContain('damaged, loose or wrongly mounted')
+  expect(byCondition.curve!.length).toBeGreaterThan(4)
+  for (const { windSpeedMs, standingMisalignmentDeg, interval95Deg } of byCondition.curve!) {
+    // The vane averages 0 within 0.3 degrees in a bin; twice the half-width is left once in ten thousand.
+    const half = (interval95Deg[1]! - interval95Deg[0]!) / 2
+    expect(Math.abs(standingMisalignmentDeg! - 2 * (windSpeedMs - 8)), `${windSpeedMs} m/s`).toBeLessThan(
+      2 * half + 0.6,
+    )
+  }
+})

@@ -44,3 +44,14 @@ test('the sentence shows the angle with its sign and interval, and the code is s
   expect(verdictOf(0.5, [-10, 11], 3)).toMatchObject({ code: 'interval-too-wide' })
   expect(verdictOf(0.5, [-1, 2], 3).text).toContain('+0.5')
 })
+
+test('where only the exponent stands between the turbine and aligned, the sentence says so', () => {
+  const given = { exponent: 3, interval95Deg: [-2, 2.6] } as const
+  const open = verdictOf(0.3, [-2.5, 3.4], 3, given)
+  expect(open).toMatchObject({ verdict: 'undetermined', code: 'exponent-not-known' })
+  expect(open.text).toMatch(/were the exponent known to be 3.*-2\.0 to \+2\.6.*let it reach \+3\.4/)
+  expect(verdictOf(0.3, [-4, 4], 3, { exponent: 3, interval95Deg: [-3.5, 3.5] }).code).toBe(
+    'interval-too-wide',
+  )
+  expect(verdictOf(6, [5, 12], 3, { exponent: 3, interval95Deg: [5, 7] }).verdict).toBe('offset')
+})

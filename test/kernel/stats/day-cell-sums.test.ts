@@ -5,6 +5,7 @@ import {
   dayCells,
   dayCellSums,
   dayWeights,
+  groupSlopes,
   resampledSlopes,
   slopeWithinCells,
 } from '../../../src/kernel/stats/index.ts'
@@ -64,6 +65,30 @@ test('slope and levels are those of least squares with a dummy for each cell', (
     const levels = cellLevels(sums, slope)
     for (const [cell, level] of expected.levels) expect(Math.abs(levels[cell]! - level)).toBeLessThan(1e-9)
   }
+})
+
+test('slopes of groups are those of the rows of their cells alone, in every resample too', () => {
+  const rows = madeUp(5)
+  const weights = dayWeights({ days: rows.days, blockDays: 2, resamples: 30, seed: 3 })
+  const groups = [[0, 2], [1], [0, 1, 2, 3], []]
+  const answers = groupSlopes(sumsOf(rows), groups, weights)
+  groups.slice(0, 3).forEach((cells, g) => {
+    const own = sumsOf({
+      ...rows,
+      weight: rows.weight.map((w, i) => (cells.includes(rows.cell[i]!) ? w : 0)),
+    })
+    expect(Math.abs(answers[g]!.slope - slopeWithinCells(own))).toBeLessThan(1e-12)
+    resampledSlopes(own, weights).forEach((slope, r) => {
+      const got = answers[g]!.resampled[r]!
+      if (Number.isNaN(slope)) expect(got).toBe(NaN)
+      else expect(Math.abs(got - slope)).toBeLessThan(1e-12)
+    })
+  })
+  expect(answers[3]!.slope).toBe(NaN)
+  const other = dayWeights({ days: 3, blockDays: 1, resamples: 5, seed: 1 })
+  expect(() => groupSlopes(sumsOf(rows), groups, other)).toThrow(
+    expect.objectContaining({ code: 'LENGTH_MISMATCH' }) as Error,
+  )
 })
 
 test('a resampled slope is the slope of the rows repeated as often as their day was drawn', () => {
