@@ -22,6 +22,7 @@ export function sheetSummary(sheet: ScoreSheet, paths: readonly string[]): strin
     turbineTable(sheet),
     '',
     'm: degrees that the nacelle must stand further clockwise, seen from above; it is added to the vane reading.',
+    ...exponentLines(sheet),
     '',
     rowsLine(sheet),
     ...section('Warnings', warningsOf(sheet)),
@@ -32,6 +33,17 @@ export function sheetSummary(sheet: ScoreSheet, paths: readonly string[]): strin
     ...paths.map((path) => `written: ${path}`),
   ]
   return `${lines.join('\n')}\n`
+}
+
+/** Why an interval reaches further away from 0 than towards it. */
+function exponentLines({ provenance: { settings }, turbines }: ScoreSheet): string[] {
+  const widest = Math.max(...turbines.map((one) => one.staticOffset.intervalParts.exponent ?? 0))
+  if (!(widest >= 0.05)) return []
+  const { exponent, exponentLow, exponentHigh } = settings
+  return wrapped(
+    `Power shows exponent times m: read at ${exponent}, intervals hold what exponents of ${exponentLow} to ${exponentHigh} would make ` +
+      'of it. Where the exponent is known, state it as exponentLow and exponentHigh.',
+  )
 }
 
 /** In full and before everything else: somebody may have to go back today. */

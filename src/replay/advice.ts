@@ -22,8 +22,13 @@ export function adviceFor(verdict: Verdict, offset: StaticOffset): string[] {
     case 'offset': {
       if (standing === null) return []
       if (!mayEnter(offset, 'offset')) return [...whatIsMissing(offset, standing), DESK_CHECK]
+      const vaneFirst =
+        offset.byCondition.curve === null
+          ? []
+          : ['The offset depends on wind speed: look for a damaged, loose or wrongly mounted vane first.']
       const change = `${standing < 0 ? '-' : '+'}${Math.abs(standing).toFixed(1)}`
       return [
+        ...vaneFirst,
         `Confirm by measurement, then add ${change} degrees to the vane offset.`,
         DESK_CHECK,
         correctionInWords(standing),
@@ -34,6 +39,7 @@ export function adviceFor(verdict: Verdict, offset: StaticOffset): string[] {
     case 'blocked':
       return [`No estimate: ${verdict.text}. Mend the log or the sensor first.`]
     case 'undetermined':
+      if (verdict.code === 'exponent-not-known') return [`No sign of an offset; ${offset.furtherNote}`]
       return [offset.furtherNote || 'Post more days of this turbine: days, not rows, settle an offset.']
   }
 }
