@@ -1,5 +1,6 @@
 import { changeStudy } from './change-points.study.ts'
 import { correctionStudy } from './corrections.study.ts'
+import { faultStudy } from './faults.study.ts'
 import { honestAnemometers } from './honest-anemometers.study.ts'
 import { yawMoveStudy } from './yaw-moves.study.ts'
 import { northStudy } from './north.study.ts'
@@ -7,7 +8,7 @@ import { neighboursStudy } from './neighbours.study.ts'
 
 /** Prints the tables of the studies: `npm run study`, or `npm run study -- honest 40`; what the number counts each study says. */
 const [name = 'all', given] = process.argv.slice(2)
-const count = given ?? (name === 'neighbours' ? '200' : '24')
+const count = given ?? { neighbours: '200', faults: '4' }[name] ?? '24'
 const print = (text: string): void => {
   process.stdout.write(`${text}\n`)
 }
@@ -18,3 +19,4 @@ if (name === 'all' || name === 'moves') yawMoveStudy(Number(count), print)
 if (name === 'all' || name === 'changes') changeStudy(Number(count), print)
 if (name === 'all' || name === 'corrections') correctionStudy(Number(count), print)
 if (name === 'all' || name === 'north') northStudy(Number(count), print)
+if (name === 'all' || name === 'faults') await faultStudy(Number(count), print)

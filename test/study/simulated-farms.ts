@@ -30,18 +30,19 @@ export const STUDY_SETTINGS: ScoringSettings = {
 
 /** A simulated farm, from the cache on disk when the same scenario was made before by the same simulator. */
 export function cachedFarm(scenario: FarmScenario): SimulatedFarm {
-  const key = createHash('sha256')
-    .update(simulator())
-    .update(JSON.stringify(scenario))
-    .digest('hex')
-    .slice(0, 24)
-  const file = join(CACHE, `${key}.bin`)
-  if (existsSync(file)) return v8.deserialize(readFileSync(file)) as SimulatedFarm
-  const farm = simulateFarm(scenario)
+  return cached(JSON.stringify(scenario), () => simulateFarm(scenario))
+}
+
+/** What was made of the simulator before, from the cache on disk. */
+export function cached<T>(key: string, make: () => T): T {
+  const name = createHash('sha256').update(simulator()).update(key).digest('hex').slice(0, 24)
+  const file = join(CACHE, `${name}.bin`)
+  if (existsSync(file)) return v8.deserialize(readFileSync(file)) as T
+  const made = make()
   mkdirSync(CACHE, { recursive: true })
-  writeFileSync(`${file}.part`, v8.serialize(farm))
+  writeFileSync(`${file}.part`, v8.serialize(made))
   renameSync(`${file}.part`, file)
-  return farm
+  return made
 }
 
 /** The simulator's sources: a farm made by another simulator is another farm. */
