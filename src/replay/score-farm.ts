@@ -53,6 +53,7 @@ export async function scoreFarm(
   const dayWeights = dayBlocks(days, settings)
 
   const highRate = request.examine ? await request.examine(frame.turbines) : []
+  onTurbine(0, frame.turbines.length)
   const signs = signChecks(frame)
   const clocks = clockLags(frame)
   const north = nacelleRecords(
