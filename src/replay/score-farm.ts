@@ -60,7 +60,7 @@ export async function scoreFarm(
     frame,
     signs.map(({ agrees, neighboursAgree }) => agrees === false || neighboursAgree === false),
   )
-  const sensors = vaneAndAnemometer(frame)
+  const sensors = vaneAndAnemometer(frame, settings)
   const prices = pricesOver(site.value, {
     timezone: frame.calendar.timezone,
     fromMs: frame.fromMs,

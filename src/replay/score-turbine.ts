@@ -1,4 +1,5 @@
 import {
+  anemometerYawResponse,
   energyLoss,
   lastSegment,
   nacelleFindings,
@@ -64,6 +65,7 @@ export interface ScoreTask {
 export function scoreTurbine(task: ScoreTask): TurbineSheet {
   const { settings, sign } = task
   const notReady = readiness(task.frame)
+  const yawResponse = anemometerYawResponse(task.frame, task.response)
   const block = notReady ?? sign.block
   const segment = lastSegment(task.frame, {
     days: task.days,
@@ -127,8 +129,9 @@ export function scoreTurbine(task: ScoreTask): TurbineSheet {
       ...sign.findings,
       ...nacelleFindings(task.frame, task.nacelle, segment),
       ...task.farmFindings,
+      ...yawResponse.findings,
     ],
-    sensorTests: [...nacelleTests(task.nacelle), ...task.farmTests],
+    sensorTests: [...nacelleTests(task.nacelle), ...task.farmTests, ...yawResponse.tests],
     attribution: { text: '', evidence: [], wouldSettle: [] },
     nacelle: nacelleNorth(task.nacelle, offset),
     yawActivity: {},

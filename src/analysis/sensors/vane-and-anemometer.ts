@@ -1,4 +1,6 @@
 import type { Frame } from '../../frame/index.ts'
+import type { ScoringSettings } from '../../sheet/index.ts'
+import { anemometerGain } from './anemometer-gain.ts'
 import { anemometerStill } from './anemometer-still.ts'
 import { joinReports, type SensorReport } from './sensor-report.ts'
 import { vaneFrozen } from './vane-frozen.ts'
@@ -12,8 +14,9 @@ import { vaneSteps } from './vane-steps.ts'
  *
  * @returns one report per turbine, in order.
  */
-export function vaneAndAnemometer(frame: Frame): SensorReport[] {
+export function vaneAndAnemometer(frame: Frame, settings: ScoringSettings): SensorReport[] {
   const scatters = frame.turbines.map((turbine) => ({ frame: turbine, scatter: vaneScatter(turbine) }))
+  const gains = anemometerGain(frame, settings)
   const scatterOfFarm = farmScatter(scatters)
   return frame.turbines.map((turbine, i) => {
     return joinReports([
@@ -26,6 +29,7 @@ export function vaneAndAnemometer(frame: Frame): SensorReport[] {
       ...vaneSteps(turbine),
       vaneSecond(turbine),
       ...anemometerStill(turbine, frame.turbines.length),
+      gains[i]!,
     ])
   })
 }

@@ -37,7 +37,7 @@ function frameOf(columns: readonly TurbineColumns[]): Frame {
 }
 
 test('both frozen spells are named, the one near freezing as likely icing, each with its own times', () => {
-  const reports = vaneAndAnemometer(frameOf(farm))
+  const reports = vaneAndAnemometer(frameOf(farm), SETTINGS)
   const found = reports[1]!.findings.filter(({ kind }) => kind === 'frozen' || kind === 'icing')
   expect(found.map(({ sensor, kind }) => [sensor, kind])).toEqual([
     ['vane', 'icing'],
@@ -57,11 +57,11 @@ test('both frozen spells are named, the one near freezing as likely icing, each 
 })
 
 test('what a log does not allow is said, with what is missing', () => {
-  const alone = vaneAndAnemometer(frameOf(farm.slice(0, 1)))[0]!
+  const alone = vaneAndAnemometer(frameOf(farm.slice(0, 1)), SETTINGS)[0]!
   const iced = alone.tests.find(({ test: name }) => name.startsWith('iced'))
   expect(iced).toMatchObject({ sensor: 'anemometer', done: false, note: 'needs 3 turbines' })
   const { vane, ...rest } = farm[0]!.numbers
   expect(vane).toBeDefined()
-  const without = vaneAndAnemometer(frameOf([{ ...farm[0]!, numbers: rest }]))[0]!
+  const without = vaneAndAnemometer(frameOf([{ ...farm[0]!, numbers: rest }]), SETTINGS)[0]!
   expect(without.tests.filter(({ sensor, done }) => sensor === 'vane' && done)).toEqual([])
 })

@@ -34,7 +34,7 @@ function findings(change: (numbers: Numbers) => Numbers, columns = farm): readon
   const changed = columns.map((one, i) =>
     i === 0 ? { ...one, numbers: { ...one.numbers, ...change({ ...one.numbers }) } } : one,
   )
-  const reports = vaneAndAnemometer(frameOf(changed))
+  const reports = vaneAndAnemometer(frameOf(changed), SETTINGS)
   for (const { findings: others } of reports.slice(1)) {
     expect(others.filter(({ severity }) => severity !== 'info')).toEqual([])
   }
@@ -46,7 +46,7 @@ const later = (values: Float64Array, change: (value: number, i: number) => numbe
 
 test('nothing is found at healthy vanes, and the tests say what they lacked', () => {
   expect(findings((numbers) => numbers)).toEqual([])
-  const { tests } = vaneAndAnemometer(frameOf(farm))[0]!
+  const { tests } = vaneAndAnemometer(frameOf(farm), SETTINGS)[0]!
   const isDone = (name: string) => tests.find((one) => one.test.startsWith(name))
   expect(isDone('two vanes')?.done).toBe(true)
   expect(isDone('noise floor')?.done).toBe(true)
@@ -163,7 +163,7 @@ test('no finding about a vane changes when the nacelle position is noise', () =>
     },
   }))
   const ofVanes = (columns: readonly TurbineColumns[]) =>
-    vaneAndAnemometer(frameOf(columns)).map(({ findings: all, tests }) => ({
+    vaneAndAnemometer(frameOf(columns), SETTINGS).map(({ findings: all, tests }) => ({
       found: all.filter(({ sensor }) => sensor === 'vane'),
       tests: tests.filter(({ sensor }) => sensor === 'vane'),
     }))
