@@ -30,6 +30,7 @@ export {
 } from './high-rate/high-rate-rows.ts'
 export { examineDay, type HighRateDay, type HighRateRecord } from './high-rate/examine-day.ts'
 export { anemometerYawResponse } from './sensors/anemometer-yaw-response.ts'
+export { vaneHighRate } from './sensors/vane-high-rate.ts'
 export { vaneAndAnemometer } from './sensors/vane-and-anemometer.ts'
 export { joinReports, type SensorReport } from './sensors/sensor-report.ts'
 export { proveCorrections, type ProveQuestion } from './proof/prove-corrections.ts'

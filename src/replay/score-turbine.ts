@@ -12,6 +12,7 @@ import {
   referenceOffset,
   score,
   staticOffset,
+  vaneHighRate,
   vaneStatistics,
   verdictOf,
   yawError,
@@ -66,6 +67,7 @@ export function scoreTurbine(task: ScoreTask): TurbineSheet {
   const { settings, sign } = task
   const notReady = readiness(task.frame)
   const yawResponse = anemometerYawResponse(task.frame, task.response)
+  const byTheSecond = vaneHighRate(task.frame, task.highRate?.days ?? null)
   const block = notReady ?? sign.block
   const segment = lastSegment(task.frame, {
     days: task.days,
@@ -130,8 +132,14 @@ export function scoreTurbine(task: ScoreTask): TurbineSheet {
       ...nacelleFindings(task.frame, task.nacelle, segment),
       ...task.farmFindings,
       ...yawResponse.findings,
+      ...byTheSecond.findings,
     ],
-    sensorTests: [...nacelleTests(task.nacelle), ...task.farmTests, ...yawResponse.tests],
+    sensorTests: [
+      ...nacelleTests(task.nacelle),
+      ...task.farmTests,
+      ...yawResponse.tests,
+      ...byTheSecond.tests,
+    ],
     attribution: { text: '', evidence: [], wouldSettle: [] },
     nacelle: nacelleNorth(task.nacelle, offset),
     yawActivity: {},

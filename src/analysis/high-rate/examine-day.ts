@@ -1,4 +1,5 @@
 import { YawMoveWindows, type YawMoveRows } from '../offset/yaw-move-windows.ts'
+import { vaneDay, type VaneDay } from '../sensors/vane-day.ts'
 import { DAY_MS, type HighRateRows } from './high-rate-rows.ts'
 
 /** Rows further apart than this show no yaw moves, s. */
@@ -17,6 +18,8 @@ export interface HighRateDay {
   readonly sampleS: number
   /** The minutes around yaw moves, and around rests, that begin on this day. */
   readonly moves: YawMoveRows
+  /** What the readings of the vane show of the sensor itself. */
+  readonly vane: VaneDay
 }
 
 /** Everything that one turbine's high-rate rows told, day by day in order of time. */
@@ -32,6 +35,7 @@ export function examineDay(rows: HighRateRows): HighRateDay {
     rows: rows.end - rows.first,
     sampleS: rows.sampleS,
     moves: movesOf(rows),
+    vane: vaneDay(rows),
   }
 }
 
