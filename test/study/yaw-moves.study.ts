@@ -5,11 +5,21 @@
  *
  *   npm run study -- moves [turbines]
  */
-import { steepnessByPower, yawMoveOffset } from '../../src/analysis/offset/yaw-move-offset.ts'
-import { YawMoveWindows } from '../../src/analysis/offset/yaw-move-windows.ts'
-import { dayBlocks } from '../../src/analysis/index.ts'
-import { measuredPowerCurve, type MeasuredCurve } from '../../src/kernel/wind/index.ts'
-import { simulateFarm, STATES, type SimulatedTurbine } from '../../src/simulate/index.ts'
+import {
+  DAY_MARGIN_MS,
+  DAY_MS,
+  dayBlocks,
+  examineDay,
+  HIGH_RATE_CHANNELS,
+  highRateRows,
+  preferYawMoves,
+  staticOffset,
+  type HighRateRecord,
+} from '../../src/analysis/index.ts'
+import { buildFrame, type TurbineColumns, type TurbineFrame } from '../../src/frame/index.ts'
+import { circularMean } from '../../src/kernel/angle/index.ts'
+import { simulateFarm, STATES, type RowColumn, type SimulatedTurbine } from '../../src/simulate/index.ts'
+import { STUDY_SETTINGS } from './simulated-farms.ts'
 
 const FIRST_SEED = 8000
 const DAYS = 30
@@ -77,55 +87,73 @@ function caseOf(k: number): Case {
     anemometerResponsePerDeg: responsePerDeg,
   })
   const turbine = turbines[0]!
-  const answer = yawMoveOffset(windowsOf(turbine).rows, {
+  const settings = {
+    ...STUDY_SETTINGS,
     exponent: scenario.exponent,
-    ratedPowerKw: scenario.ratedPowerKw,
-    steepnessAtPower: steepnessByPower(curveOf(turbine)),
-    dayWeights: dayBlocks(DAYS, { resamples: 500, seed: 1 }),
-    minimumDays: 5,
+    exponentLow: scenario.exponent,
+    exponentHigh: scenario.exponent,
+    resamples: 500,
+  }
+  const frame = buildFrame([intervalsOf(turbine)], {
+    site: { turbines: [{ turbine: turbine.turbine, ratedPowerKw: scenario.ratedPowerKw }] },
+    settings,
+    intervalS: INTERVAL_S,
   })
+  const dayWeights = dayBlocks(frame.calendar.days, settings)
+  const { sheet } = preferYawMoves(
+    staticOffset(frame.turbines[0]!, { settings, dayWeights, days: frame.calendar.days }),
+    recordOf(turbine, frame.turbines[0]!),
+    { settings, dayWeights, days: frame.calendar.days, hasNeighbours: false },
+  )
+  const [low, high] = sheet.interval95GivenExponentDeg
   return {
     link,
     offsetDeg,
     responsePerDeg,
-    errorDeg: answer.offsetDeg - offsetDeg,
-    halfWidthDeg: answer.halfWidthDeg,
-    moves: answer.moves,
+    errorDeg: sheet.estimateDeg! - offsetDeg,
+    halfWidthDeg: (high! - low!) / 2,
+    moves: sheet.rows,
   }
 }
 
-function windowsOf({ timeMs, columns, state }: SimulatedTurbine): YawMoveWindows {
-  const windows = new YawMoveWindows()
-  for (let day = 0; day < DAYS; day++) {
-    const [from, to] = [day * DAY_S, (day + 1) * DAY_S]
-    windows.add({
-      timeMs: timeMs.subarray(from, to),
-      vane: columns.vane.subarray(from, to),
-      power: columns.power.subarray(from, to),
-      nacellePosition: columns.nacelle_position.subarray(from, to),
-      day: new Int32Array(DAY_S).fill(day),
-      usable: state.slice(from, to).map((code) => (STATES[code] === 'run' ? 1 : 0)),
-    })
-  }
-  return windows
+/** The rows themselves, as a replay looks at them. */
+function recordOf({ turbine, timeMs, columns }: SimulatedTurbine, frame: TurbineFrame): HighRateRecord {
+  const days = Array.from({ length: DAYS }, (_, day) => {
+    const from = Math.max(0, day * DAY_S - DAY_MARGIN_MS / 1000)
+    const to = (day + 1) * DAY_S + DAY_MARGIN_MS / 1000
+    const numbers = Object.fromEntries(
+      HIGH_RATE_CHANNELS.flatMap((name) =>
+        name in columns ? [[name, columns[name as RowColumn].slice(from, to)]] : [],
+      ),
+    )
+    const span = { time: timeMs.slice(from, to), numbers }
+    return examineDay(highRateRows(frame, timeMs[0]! + day * DAY_MS, span))
+  })
+  return { turbine, days }
 }
 
-/** The curve as the frame would measure it, from 10-minute means of the turbine's own anemometer. */
-function curveOf({ columns, state }: SimulatedTurbine): MeasuredCurve {
-  const speeds: number[] = []
-  const powers: number[] = []
-  for (let from = 0; from + INTERVAL_S <= state.length; from += INTERVAL_S) {
-    let speed = 0
-    let power = 0
-    let runs = true
-    for (let i = from; i < from + INTERVAL_S; i++) {
-      speed += columns.wind_speed[i]!
-      power += columns.power[i]!
-      runs &&= STATES[state[i]!] === 'run'
-    }
-    if (!runs) continue
-    speeds.push(speed / INTERVAL_S)
-    powers.push(power / INTERVAL_S)
+/** Ten-minute means of the channels that matter, as a replay reduces them. */
+function intervalsOf({ turbine, timeMs, columns, state }: SimulatedTurbine): TurbineColumns {
+  const n = Math.floor(timeMs.length / INTERVAL_S)
+  const over = (values: Float64Array, mean: (part: Float64Array) => number): Float64Array =>
+    Float64Array.from({ length: n }, (_, i) => mean(values.subarray(i * INTERVAL_S, (i + 1) * INTERVAL_S)))
+  const plain = (part: Float64Array): number => part.reduce((sum, value) => sum + value, 0) / part.length
+  const turned = (part: Float64Array): number => circularMean(part).direction
+  const { wind_speed, power, pitch, rotor_speed, power_limit, vane, nacelle_position } = columns
+  return {
+    turbine,
+    time: Float64Array.from({ length: n }, (_, i) => timeMs[i * INTERVAL_S]!),
+    numbers: {
+      ...Object.fromEntries(
+        Object.entries({ wind_speed, power, pitch, rotor_speed, power_limit }).map(([name, values]) => [
+          name,
+          over(values, plain),
+        ]),
+      ),
+      vane: over(vane, turned),
+      nacelle_position: over(nacelle_position, turned),
+      power_min: over(power, (part) => part.reduce((least, value) => Math.min(least, value), Infinity)),
+    },
+    texts: { status: Array.from({ length: n }, (_, i) => STATES[state[i * INTERVAL_S]!]!) },
   }
-  return measuredPowerCurve(speeds, powers)
 }
