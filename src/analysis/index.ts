@@ -38,3 +38,4 @@ export { nacelleRecords, type FarmNorth, type NacelleRecord } from './sensors/na
 export { nacelleFindings } from './sensors/nacelle-findings.ts'
 export { nacelleNorth, nacelleTests, withTrueNorth, type TrueNorth } from './sensors/nacelle-north.ts'
 export { attributions } from './sensors/attribution.ts'
+export { costAt, probabilityBeyond, shrunkOffsets, type ShrunkOffsets } from './energy/shrunk-offsets.ts'

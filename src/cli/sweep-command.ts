@@ -1,7 +1,7 @@
 import { DateTime } from 'luxon'
 import { InputError } from '../errors.ts'
 import type { ScoreSheet, SiteFile } from '../sheet/index.ts'
-import { unsettledTurbines, workOrder } from '../sheet/work-order.ts'
+import { fleetRanking, unsettledTurbines, workOrder, type WorkOrderSource } from '../sheet/work-order.ts'
 import type { Archive, CommandParts, SettingFlags } from './parts.ts'
 import { progressLine } from './progress-line.ts'
 import { report } from './report.ts'
@@ -20,8 +20,8 @@ const SOMEONE_SHOULD_CLIMB = 10
 const SITES_A_PAGE = 200
 
 /**
- * Scores the stored logs of whole sites, one after the other, and prints the worklist of each. A site that fails is said on
- * standard error and does not stop the others.
+ * Scores the stored logs of whole sites, one after the other, and prints the worklist of each; after them, of several sites,
+ * who comes first over all. A site that fails is said on standard error and does not stop the others.
  *
  * @returns exit status: 1 when a site failed, else 10 when a worklist holds somebody, else 0.
  */
@@ -35,6 +35,7 @@ export async function sweepCommand(
   const progress = progressLine(parts.stderr)
   let failed = false
   let climbs = false
+  const orders: WorkOrderSource[] = []
   try {
     for (const site of flags.site ?? (await allSites(archive))) {
       try {
@@ -46,7 +47,9 @@ export async function sweepCommand(
         progress.clear()
         const { replay, window, worklist } = sheet
         const unsettled = unsettledTurbines(sheet, file)
-        parts.stdout.write(`${workOrder({ replay, site, window, worklist, unsettled })}\n`)
+        const order = { replay, site, window, worklist, unsettled }
+        parts.stdout.write(`${workOrder(order)}\n`)
+        orders.push({ ...order, unsettled: [] })
         climbs ||= worklist.length > 0
       } catch (error) {
         progress.clear()
@@ -58,6 +61,7 @@ export async function sweepCommand(
   } finally {
     await archive.close()
   }
+  if (orders.length > 1) parts.stdout.write(fleetRanking(orders))
   if (failed) return FAILED
   return climbs ? SOMEONE_SHOULD_CLIMB : NOTHING_TO_DO
 }

@@ -1,27 +1,16 @@
 import type { FastifyReply, FastifyRequest } from 'fastify'
 import { Type, type TSchema } from 'typebox'
-import { InputError, type ErrorCode } from '../errors.ts'
-import type { Setup } from '../setup/index.ts'
-import { ScoreSheet, TurbineSheet, WorklistEntry } from '../sheet/index.ts'
-import { flatRow, toCsv, worklistRows, type TableRow } from '../sheet/tables.ts'
-import { unsettledTurbines, workOrder } from '../sheet/work-order.ts'
+import type { ErrorCode } from '../errors.ts'
+import { ScoreSheet, TurbineSheet } from '../sheet/index.ts'
+import { flatRow, toCsv, type TableRow } from '../sheet/tables.ts'
 import { acceptedType } from './accept.ts'
-import {
-  ETAG,
-  IfNoneMatch,
-  NOT_MODIFIED,
-  sendTagged,
-  SERVICE_CODES,
-  SiteParams,
-  TurbineParams,
-} from './answers.ts'
+import { ETAG, IfNoneMatch, NOT_MODIFIED, sendTagged, SERVICE_CODES, TurbineParams } from './answers.ts'
 import type { LatestSheets } from './latest-sheet.ts'
 import { problemResponses } from './problem.ts'
 import type { TypedServer } from './typed-server.ts'
 
 export interface AnswerRouteParts {
   readonly latest: LatestSheets
-  readonly setup: Setup
 }
 
 type Part = keyof TurbineSheet
@@ -63,14 +52,18 @@ const QUESTIONS: readonly Question[] = [
     path: 'energy-loss',
     operationId: 'energyLoss',
     summary: 'What the misalignment costs',
-    parts: ['energyLoss'],
-    tables: { band: ({ energyLoss }) => energyLoss.band },
+    parts: ['energyLoss', 'outlook', 'cautions'],
+    tables: {
+      band: ({ energyLoss }) => energyLoss.band,
+      byMeanWindSpeed: ({ energyLoss }) => energyLoss.yearAhead.byMeanWindSpeed,
+      byMisalignment: ({ energyLoss }) => energyLoss.static.byMisalignment,
+    },
   },
   {
     path: 'sensors',
     operationId: 'sensors',
     summary: 'What was found at the sensors',
-    parts: ['sensors'],
+    parts: ['sensors', 'cautions'],
     tables: { sensors: ({ sensors }) => sensors },
   },
   {
@@ -99,7 +92,6 @@ const CSV_CONTENT = { 'text/csv': { schema: { type: 'string' } } }
 /** The latest answers of a site, for dashboards. */
 export function answerRoutes(app: TypedServer, parts: AnswerRouteParts): void {
   for (const question of QUESTIONS) questionRoute(app, parts, question)
-  worklistRoute(app, parts)
 }
 
 function questionRoute(app: TypedServer, { latest }: AnswerRouteParts, question: Question): void {
@@ -169,68 +161,6 @@ function questionRoute(app: TypedServer, { latest }: AnswerRouteParts, question:
       return sendTagged(request, reply, JSON.stringify(answer))
     },
   )
-}
-
-const Unsettled = Type.Object({ turbine: Type.String(), reason: Type.String() })
-
-function worklistRoute(app: TypedServer, { latest, setup }: AnswerRouteParts): void {
-  app.get(
-    '/v1/sites/:site/worklist',
-    {
-      schema: {
-        operationId: 'worklist',
-        tags: ['answers'],
-        summary: 'Who to climb first',
-        description:
-          'From the newest finished replay of the site. `unsettled` names the turbines that came to no verdict or were not in that replay: they are not on the list, and not aligned either. `text/plain` is a work order with every caution.',
-        params: SiteParams,
-        headers: IfNoneMatch,
-        response: {
-          200: {
-            description: 'The worklist, first rank first',
-            headers: ETAG,
-            content: {
-              'application/json': {
-                schema: Type.Object({
-                  replay: Type.String(),
-                  site: Type.String(),
-                  window: ScoreSheet.properties.window,
-                  worklist: Type.Array(WorklistEntry),
-                  unsettled: Type.Array(Unsettled),
-                }),
-              },
-              ...CSV_CONTENT,
-              'text/plain': { schema: { type: 'string' } },
-            },
-          },
-          ...NOT_MODIFIED,
-          ...problemResponses(CODES),
-        },
-      },
-    },
-    async (request, reply) => {
-      const type = acceptedType(request, ['application/json', 'text/csv', 'text/plain'])
-      const { site } = request.params
-      const sheet = await latest.ofSite(site)
-      reply.header('vary', 'accept')
-      const { replay, window, worklist } = sheet
-      if (type === 'text/csv') return sendCsv(request, reply, worklistRows(worklist), ['rank', 'turbine'])
-      const answer = { replay, site, window, worklist, unsettled: await unsettledOf(site, sheet, setup) }
-      return type === 'text/plain'
-        ? sendTagged(request, reply, workOrder(answer), 'text/plain; charset=utf-8')
-        : sendTagged(request, reply, JSON.stringify(answer))
-    },
-  )
-}
-
-/** Turbines of the sheet without a verdict, and turbines of the site that the sheet does not hold. */
-async function unsettledOf(site: string, sheet: ScoreSheet, setup: Setup) {
-  // A log that was posted by itself may name a site that was never set up.
-  const file = await setup.getSite(site).catch((error: unknown) => {
-    if (error instanceof InputError && error.code === 'SITE_NOT_FOUND') return {}
-    throw error
-  })
-  return unsettledTurbines(sheet, file)
 }
 
 function sendCsv(

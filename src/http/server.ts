@@ -12,6 +12,7 @@ import { Problem, ScoreSheet, SiteFile, type ScoringSettings } from '../sheet/in
 import { healthRoutes, type ReadyCheck } from './health-routes.ts'
 import { KnownAddresses } from './known-addresses.ts'
 import { answerRoutes } from './answer-routes.ts'
+import { worklistRoutes } from './worklist-routes.ts'
 import { entryRoutes } from './entry-routes.ts'
 import { latestSheets } from './latest-sheet.ts'
 import { DryRun } from './log-description.ts'
@@ -149,7 +150,9 @@ export async function buildServer(parts: ServerParts): Promise<TypedServer> {
   siteRoutes(app, { setup, idleMs: upload.idleMs })
   entryRoutes(app, { setup, idleMs: upload.idleMs })
   logRoutes(app, { intake, setup, upload, gate, metrics })
-  answerRoutes(app, { latest: latestSheets(replays, setup), setup })
+  const latest = latestSheets(replays, setup)
+  answerRoutes(app, { latest })
+  worklistRoutes(app, { latest, setup })
   healthRoutes(app, parts.ready)
   metricsRoute(app, metrics)
   app.get('/openapi.json', { schema: { hide: true } }, (_request, reply) =>

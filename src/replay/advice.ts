@@ -3,6 +3,10 @@ import type { TurbineSheet } from '../sheet/index.ts'
 
 type StaticOffset = TurbineSheet['staticOffset']
 
+/** The most that is changed at once, degrees, and as a share of the whole. */
+const LARGEST_STEP_DEG = 5
+const STEP_SHARE = 0.5
+
 /** Whether the sign and the kind of vane are known well enough to print a number that may be entered. */
 export function mayEnter(
   offset: Pick<StaticOffset, 'signChecked' | 'vaneLogged'>,
@@ -26,10 +30,9 @@ export function adviceFor(verdict: Verdict, offset: StaticOffset): string[] {
         offset.byCondition.curve === null
           ? []
           : ['The offset depends on wind speed: look for a damaged, loose or wrongly mounted vane first.']
-      const change = `${standing < 0 ? '-' : '+'}${Math.abs(standing).toFixed(1)}`
       return [
         ...vaneFirst,
-        `Confirm by measurement, then add ${change} degrees to the vane offset.`,
+        `Confirm by measurement, then add ${signedDeg(standing)} degrees to the vane offset.`,
         DESK_CHECK,
         correctionInWords(standing),
       ]
@@ -44,19 +47,25 @@ export function adviceFor(verdict: Verdict, offset: StaticOffset): string[] {
   }
 }
 
+/** Half of the change and 5 degrees at most, to a tenth of a degree. */
+export function firstStepDeg(standingDeg: number): number {
+  const size = Math.min(STEP_SHARE * Math.abs(standingDeg), LARGEST_STEP_DEG)
+  return Math.sign(standingDeg) * (Math.round(10 * size) / 10)
+}
+
 /** The correction both ways, at the controller and at the vane. */
 export function correctionInWords(standingDeg: number): string {
   const size = Math.abs(standingDeg).toFixed(1)
-  const sign = standingDeg < 0 ? '-' : '+'
-  const heading = standingDeg < 0 ? 'counter-clockwise' : 'clockwise'
   const mark = standingDeg < 0 ? 'clockwise' : 'counter-clockwise'
   return (
-    `After confirmation: add ${sign}${size} degrees to the vane offset of the controller, in steps; the nacelle will stand ${size} degrees further ${heading}. ` +
-    `Or mechanically: turn the zero mark of the vane ${size} degrees ${mark}, seen from above.`
+    `After confirmation, enter ${signedDeg(standingDeg)} degrees more vane offset at the controller: the nacelle will stand ${size} degrees further ${sideOf(standingDeg)}. ` +
+    `Or mechanically, and not both: turn the zero mark of the vane ${size} degrees ${mark}, seen from above. ` +
+    `In steps: ${signedDeg(firstStepDeg(standingDeg))} first, the rest when the step in heading has been seen.`
   )
 }
 
-function whatIsMissing(offset: StaticOffset, standingDeg: number): string[] {
+/** What must be known before a number may be entered, and which way it would be. */
+export function whatIsMissing(offset: StaticOffset, standingDeg: number): string[] {
   const lines: string[] = []
   if (!offset.signChecked)
     lines.push('Check the sign of the vane (site file, vane.sign): no number to enter yet.')
@@ -65,9 +74,17 @@ function whatIsMissing(offset: StaticOffset, standingDeg: number): string[] {
       'Find out whether the logged vane already contains the correction (site file, vane.logged): no number to enter yet.',
     )
   }
-  const side = standingDeg < 0 ? 'counter-clockwise' : 'clockwise'
   lines.push(
-    `By the sign of the log, the nacelle would have to stand ${Math.abs(standingDeg).toFixed(1)} degrees further ${side}.`,
+    `By the sign of the log, the nacelle would have to stand ${Math.abs(standingDeg).toFixed(1)} degrees further ${sideOf(standingDeg)}.`,
   )
   return lines
+}
+
+/** +6.1, -0.4. */
+export function signedDeg(value: number): string {
+  return `${value < 0 ? '-' : '+'}${Math.abs(value).toFixed(1)}`
+}
+
+function sideOf(standingDeg: number): string {
+  return standingDeg < 0 ? 'counter-clockwise' : 'clockwise'
 }

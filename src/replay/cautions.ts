@@ -6,11 +6,13 @@ import type { TurbineSheet } from '../sheet/index.ts'
  */
 export const CAUTIONS: readonly string[] = [
   'This is an estimate from operating data. Confirm it by an independent measurement, or by the alignment procedure of the manufacturer, before anything is changed.',
-  'Check on the controller which sign a larger vane offset has, and whether the logged vane already contains the correction: enter a small trial step first and see which way the nacelle turns.',
-  'Change no more than half of the value or 5 degrees at once. Keep the as-found value. Watch yaw activity, loads and alarms; look for the step in heading after a day or two, and for power later.',
-  'Beyond 10 degrees, or where the offset depends on wind speed: look for a damaged, loose or wrongly mounted vane first, and tell the manufacturer or certifier, because a rotor that stands off the wind carries added loads.',
-  'Work on the turbine is for authorised, licensed technicians with the manufacturer’s manual: turbine stopped, rotor locked, yaw drive isolated, locked out and tagged, cable twist checked, within the weather limits, with a fall-protection and rescue plan.',
-  'No remote change while anybody is in the turbine. Mind the site permit, the warranty and the duties towards the grid operator. Local rules come first.',
+  'Find out on the controller itself which way a larger vane offset turns the nacelle, and whether the logged vane already contains the correction: enter a small trial step first and watch the nacelle.',
+  'Change no more than half of the value, and no more than 5 degrees, at once. Write down the value as found and keep it. Afterwards watch yaw activity, loads and alarms; look for the step in heading after a day or two, and for the power some weeks later.',
+  'Beyond 10 degrees, or where the offset depends on wind speed: look for a damaged, loose or wrongly mounted vane first, and tell the manufacturer or the certifier, because a rotor that runs off the wind carries added loads.',
+  'Work on the turbine is for competent, authorised persons with the manual of the manufacturer: turbine stopped, rotor locked, yaw drive isolated, locked out and tagged, cable twist checked, within the weather limits, with fall protection and a rescue plan, and with the permit of the site.',
+  'No remote change of a parameter, and no remote start, while anybody is in the turbine.',
+  'Mind the warranty and the duties towards the grid operator before a parameter is changed.',
+  'Local rules come first, whatever this list says.',
 ]
 
 /** What is said of an offset that depends on wind speed; empty where it does not. */

@@ -14,6 +14,7 @@ import { buildFrame, type TurbineColumns, type TurbineFrame } from '../frame/ind
 import type { Receipt, ScoreSheet, ScoringSettings, SiteFile, TurbineSheet } from '../sheet/index.ts'
 import { withCorrections } from './corrections.ts'
 import type { Scorers } from './scorers.ts'
+import { outlooks } from './outlook.ts'
 import { worklistOf } from './worklist.ts'
 
 const NORMAL_95 = 1.959963984540054
@@ -79,6 +80,7 @@ export async function scoreFarm(
 
   let done = 0
   const scored = Promise.all(
+  const alone = await Promise.all(
     frame.turbines.map(async (turbine, i): Promise<TurbineSheet> => {
       const sheet = await scorers.score({
         frame: turbine,
@@ -121,6 +123,8 @@ export async function scoreFarm(
   const [sheets, proofs] = await Promise.all([scored, proved])
   const weighed = attributions(sheets, settings.actionThresholdDeg)
   const turbines = sheets.map((sheet, i) => ({ ...sheet, attribution: weighed[i]! }))
+  const expected = outlooks(alone, settings.actionThresholdDeg)
+  const turbines = alone.map((turbine, i): TurbineSheet => ({ ...turbine, outlook: expected[i] ?? null }))
   for (const turbine of frame.turbines) {
     for (const note of turbine.notes) warnings.push(`${turbine.turbine}: ${note}`)
   }
@@ -156,7 +160,7 @@ export async function scoreFarm(
       ),
     },
     turbines,
-    worklist: worklistOf(turbines),
+    worklist: worklistOf(turbines, site, settings.actionThresholdDeg),
     corrections: [],
     warnings,
   }

@@ -125,6 +125,7 @@ export function scoreTurbine(task: ScoreTask): TurbineSheet {
       longTerm: task.longTerm,
       prices: task.prices,
     }),
+    outlook: null, // the farm tells it
     powerCurve: powerCurveTable(frame),
     sensors: [
       ...(notReady ? [notReady.finding] : []),

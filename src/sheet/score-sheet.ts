@@ -13,6 +13,7 @@ import {
 import { NacelleNorth } from './nacelle.ts'
 import { Receipt } from './receipt.ts'
 import { ScoringSettings } from './settings.ts'
+import { Outlook, WorklistEntry } from './worklist.ts'
 
 /** Why a row is not used for the static offset, in the order the reasons are tested. A row has one reason or none. */
 export const SET_ASIDE_REASONS = [
@@ -202,6 +203,7 @@ export const TurbineSheet = Type.Object(
     yawError: YawError,
     staticOffset: StaticOffset,
     energyLoss: EnergyLoss,
+    outlook: Type.Union([Outlook, Type.Null()]),
     powerCurve: Type.Array(
       Type.Object({
         windSpeedMs: Type.Number({ description: 'mean of the bin, normalised to 1.225 kg/m3' }),
@@ -221,18 +223,6 @@ export const TurbineSheet = Type.Object(
   { description: 'One turbine of a score sheet' },
 )
 export type TurbineSheet = Static<typeof TurbineSheet>
-
-export const WorklistEntry = Type.Object({
-  turbine: Type.String(),
-  standingMisalignmentDeg: Nullable('m'),
-  addToVaneDeg: Nullable('degrees to enter; null until sign and vaneLogged are known'),
-  expectedAnnualMwh: Nullable('expected gain of a year'),
-  interval95Mwh: Interval('of it'),
-  why: Type.String(),
-  checkFirst: Type.String(),
-  cautions: Type.Array(Type.String()),
-})
-export type WorklistEntry = Static<typeof WorklistEntry>
 
 export const ScoreSheet = Type.Object(
   {

@@ -1,5 +1,6 @@
 import { table } from 'arquero'
-import type { ScoreSheet, TurbineSheet, WorklistEntry } from './score-sheet.ts'
+import type { ScoreSheet, TurbineSheet } from './score-sheet.ts'
+import type { WorklistEntry } from './worklist.ts'
 
 // Not listed in index.ts: whoever wants the shapes alone shall not load a table library, and worker threads least of all.
 
@@ -36,7 +37,7 @@ export function flatRow(row: object): TableRow {
   return Object.fromEntries(cells)
 }
 
-/** The worklist, first rank first. */
+/** The worklist, first rank first; the last fields are blank, for whoever makes the change. */
 export function worklistRows(worklist: readonly WorklistEntry[]): TableRow[] {
   return worklist.map((one, index) => ({
     rank: index + 1,
@@ -49,6 +50,33 @@ export function worklistRows(worklist: readonly WorklistEntry[]): TableRow[] {
     why: one.why,
     checkFirst: one.checkFirst,
     cautions: one.cautions.join('; '),
+    kind: one.kind,
+    turbines: one.turbines.join(' '),
+    standingLowerDeg: one.standingInterval95Deg[0] ?? null,
+    standingUpperDeg: one.standingInterval95Deg[1] ?? null,
+    shrunkStandingDeg: one.shrunkStandingDeg,
+    probabilityBeyondThreshold: one.probabilityBeyondThreshold,
+    firstStepDeg: one.firstStepDeg,
+    parameterNowDeg: one.parameter?.currentDeg ?? null,
+    parameterNewDeg: one.parameter?.newDeg ?? null,
+    currency: one.value?.currency ?? null,
+    annualValue: one.value?.annual ?? null,
+    visitCost: one.value?.visitCost ?? null,
+    firstYearNet: one.value?.firstYearNet ?? null,
+    firstYearNetLower: one.value?.firstYearNetInterval95[0] ?? null,
+    firstYearNetUpper: one.value?.firstYearNetInterval95[1] ?? null,
+    paybackMonths: one.value?.paybackMonths ?? null,
+    whatToDo: one.whatToDo,
+    reasons: one.reasons.join('; '),
+    deskChecks: one.deskChecks.join('; '),
+    findings: one.findings.map(({ sensor, finding }) => `${sensor}: ${finding}`).join('; '),
+    watchAfter: one.watchAfter.join('; '),
+    firmUp: one.firmUp.join('; '),
+    asFoundDeg: null,
+    asLeftDeg: null,
+    changedAt: null,
+    by: null,
+    note: null,
   }))
 }
 

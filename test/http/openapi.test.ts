@@ -145,6 +145,7 @@ const CALLS: [string, string, string, number, RequestInit?][] = [
   ['get', '/v1/sites/{site}/turbines/{turbine}/yaw-activity', 'quern-hill Q77', 404],
   ['get', '/v1/sites/{site}/worklist', 'quern-hill', 200],
   ['get', '/v1/sites/{site}/worklist', 'none', 404],
+  ['get', '/v1/worklist', '', 200],
   ['get', '/health/live', '', 200],
   ['get', '/health/ready', '', 200],
   ...['corrections', 'events', 'exclude'].flatMap(

@@ -44,18 +44,7 @@ export function sheetExample(replay: string, turbines: Turbine[] = [turbineExamp
     },
     fleet: { anemometerResponsePerDeg: {} },
     turbines,
-    worklist: [
-      {
-        turbine: 'Q01',
-        standingMisalignmentDeg: 6.1,
-        addToVaneDeg: null,
-        expectedAnnualMwh: 81.2,
-        interval95Mwh: [40.1, 120.9],
-        why: 'stands off by 6.1 degrees',
-        checkFirst: 'the sign of the vane',
-        cautions: [],
-      },
-    ],
+    worklist: [worklistExample()],
     corrections: [],
     warnings: ['no time zone is known: stamps are taken as UTC'],
   }
@@ -187,6 +176,16 @@ export function turbineExample(turbine: string, standingDeg: number | null = 6.1
       rows: 3900,
       note: '',
     },
+    outlook:
+      standingDeg === null
+        ? null
+        : {
+            shrunkStandingDeg: standingDeg * 0.9,
+            shrunkInterval95Deg: [standingDeg * 0.9 - 1.3, standingDeg * 0.9 + 1.3],
+            probabilityBeyondThreshold: 0.98,
+            expectedAnnualMwh: 66.1,
+            interval95Mwh: [33.1, 110.9],
+          },
     powerCurve: [],
     sensors: [],
     sensorTests: [],
@@ -224,5 +223,30 @@ function emptyGrid() {
     vaneWidthDeg: 2,
     vaneBins: 0,
     rows: [],
+export function worklistExample(turbine = 'Q01'): ScoreSheet['worklist'][number] {
+  return {
+    turbine,
+    turbines: [turbine],
+    kind: 'offset',
+    standingMisalignmentDeg: 6.1,
+    standingInterval95Deg: [4.7, 7.5],
+    shrunkStandingDeg: 5.5,
+    probabilityBeyondThreshold: 0.98,
+    addToVaneDeg: null,
+    firstStepDeg: null,
+    parameter: null,
+    whatToDo: 'Check the sign of the vane.',
+    expectedAnnualMwh: 81.2,
+    interval95Mwh: [40.1, 120.9],
+    value: null,
+    why: 'stands off by 6.1 degrees',
+    reasons: ['from 2110 rows on 28 days'],
+    findings: [],
+    checkFirst: 'the sign of the vane',
+    deskChecks: ['the sign of the vane'],
+    watchAfter: ['the heading after a day or two'],
+    firmUp: ['a reference instrument'],
+    record: { asFoundDeg: null, asLeftDeg: null, changedAt: null, by: null, note: null },
+    cautions: [],
   }
 }

@@ -1,6 +1,7 @@
 import { changeStudy } from './change-points.study.ts'
 import { correctionStudy } from './corrections.study.ts'
 import { faultStudy } from './faults.study.ts'
+import { energyStudy } from './energy.study.ts'
 import { honestAnemometers } from './honest-anemometers.study.ts'
 import { yawMoveStudy } from './yaw-moves.study.ts'
 import { northStudy } from './north.study.ts'
@@ -20,3 +21,4 @@ if (name === 'all' || name === 'changes') changeStudy(Number(count), print)
 if (name === 'all' || name === 'corrections') correctionStudy(Number(count), print)
 if (name === 'all' || name === 'north') northStudy(Number(count), print)
 if (name === 'all' || name === 'faults') await faultStudy(Number(count), print)
+if (name === 'all' || name === 'energy') energyStudy(Number(count), print)
