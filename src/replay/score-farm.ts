@@ -80,7 +80,6 @@ export async function scoreFarm(
 
   let done = 0
   const scored = Promise.all(
-  const alone = await Promise.all(
     frame.turbines.map(async (turbine, i): Promise<TurbineSheet> => {
       const sheet = await scorers.score({
         frame: turbine,
@@ -122,9 +121,12 @@ export async function scoreFarm(
       })
   const [sheets, proofs] = await Promise.all([scored, proved])
   const weighed = attributions(sheets, settings.actionThresholdDeg)
-  const turbines = sheets.map((sheet, i) => ({ ...sheet, attribution: weighed[i]! }))
-  const expected = outlooks(alone, settings.actionThresholdDeg)
-  const turbines = alone.map((turbine, i): TurbineSheet => ({ ...turbine, outlook: expected[i] ?? null }))
+  const expected = outlooks(sheets, settings.actionThresholdDeg)
+  const turbines = sheets.map((sheet, i) => ({
+    ...sheet,
+    attribution: weighed[i]!,
+    outlook: expected[i] ?? null,
+  }))
   for (const turbine of frame.turbines) {
     for (const note of turbine.notes) warnings.push(`${turbine.turbine}: ${note}`)
   }

@@ -223,6 +223,9 @@ function emptyGrid() {
     vaneWidthDeg: 2,
     vaneBins: 0,
     rows: [],
+  }
+}
+
 export function worklistExample(turbine = 'Q01'): ScoreSheet['worklist'][number] {
   return {
     turbine,
