@@ -77,10 +77,8 @@ function offsetEntry(
   const { staticOffset, outlook } = sheet
   const standing = staticOffset.standingMisalignmentDeg ?? NaN
   const enters = mayEnter(staticOffset, sheet.verdict) && shared === undefined
-  const isLarge = Math.abs(standing) > LARGE_DEG
   const found = sheet.sensors.filter(({ severity }) => severity !== 'info')
-  const lookForDamage =
-    'Beyond 10 degrees a damaged, loose or wrongly mounted vane is likelier than a wrong parameter: look at it before a number is entered, and tell the manufacturer or certifier.'
+  const damage = lookForDamage(standing, staticOffset.byCondition.curve !== null)
   return {
     turbine: sheet.turbine,
     turbines: [sheet.turbine],
@@ -103,17 +101,21 @@ function offsetEntry(
     why: sheet.reason,
     reasons: reasonsOf(sheet),
     findings: found,
-    checkFirst: isLarge ? `${lookForDamage} ${DESK_CHECK}` : DESK_CHECK,
-    deskChecks: [
-      ...(isLarge ? [lookForDamage] : []),
-      ...deskChecks(setup),
-      ...found.map(({ checkFirst }) => checkFirst),
-    ].filter(isNew),
+    checkFirst: [...damage, DESK_CHECK].join(' '),
+    deskChecks: [...damage, ...deskChecks(setup), ...found.map(({ checkFirst }) => checkFirst)].filter(isNew),
     watchAfter: watchAfter(enters ? firstStepDeg(standing) : null),
     firmUp: firmUp(sheet),
     record: BLANK,
     cautions: [...CAUTIONS],
   }
+}
+
+/** A vane is looked at before its number is believed, where the number is unlikely or not one number. */
+function lookForDamage(standingDeg: number, dependsOnWind: boolean): string[] {
+  const then =
+    'look for a damaged, loose or wrongly mounted vane before a number is entered, and tell the manufacturer or certifier.'
+  if (dependsOnWind) return [`The offset depends on wind speed: ${then}`]
+  return Math.abs(standingDeg) > LARGE_DEG ? [`It is more than ${LARGE_DEG} degrees: ${then}`] : []
 }
 
 function sensorEntry(sheet: TurbineSheet): WorklistEntry {

@@ -135,12 +135,13 @@ function farmOf(k: number, settings: ScoringSettings, overrides: Partial<FarmSce
       farmEstimates: neighbours?.estimates[i] ?? [],
     })
     const { standing } = answer
+    const example = turbineExample(turbine.turbine)
     return {
-      ...turbineExample(turbine.turbine),
+      ...example,
       verdict: standing
         ? verdictOf(standing.standingDeg, standing.standingInterval95Deg, settings.actionThresholdDeg).verdict
         : 'undetermined',
-      staticOffset: answer.sheet,
+      staticOffset: { ...example.staticOffset, ...answer.sheet },
       energyLoss: energyLoss(answer.frame, {
         exponent: settings.exponent,
         offset: standing,
