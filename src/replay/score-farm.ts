@@ -7,17 +7,15 @@ import {
   signChecks,
   type HighRateRecord,
   vaneAndAnemometer,
-  type Neighbours,
   type TurbineEvent,
 } from '../analysis/index.ts'
 import { buildFrame, type TurbineColumns, type TurbineFrame } from '../frame/index.ts'
 import type { Receipt, ScoreSheet, ScoringSettings, SiteFile, TurbineSheet } from '../sheet/index.ts'
 import { withCorrections } from './corrections.ts'
+import { fleetResponse, responseWarnings } from './fleet-response.ts'
 import type { Scorers } from './scorers.ts'
 import { outlooks } from './outlook.ts'
 import { worklistOf } from './worklist.ts'
-
-const NORMAL_95 = 1.959963984540054
 
 export interface FarmRequest {
   readonly replay: string
@@ -127,6 +125,12 @@ export async function scoreFarm(
     attribution: weighed[i]!,
     outlook: expected[i] ?? null,
   }))
+  const response = fleetResponse(
+    frame.turbines.map(({ model }) => model),
+    settings,
+    neighbours,
+  )
+  warnings.push(...responseWarnings(response))
   for (const turbine of frame.turbines) {
     for (const note of turbine.notes) warnings.push(`${turbine.turbine}: ${note}`)
   }
@@ -154,13 +158,7 @@ export async function scoreFarm(
       inputs: receipt.inputs,
       seed: settings.seed,
     },
-    fleet: {
-      anemometerResponsePerDeg: responseByModel(
-        frame.turbines.map(({ model }) => model),
-        settings,
-        neighbours,
-      ),
-    },
+    fleet: { anemometerResponsePerDeg: response },
     turbines,
     worklist: worklistOf(turbines, site, settings.actionThresholdDeg),
     corrections: [],
@@ -181,49 +179,6 @@ function eventsOf(site: SiteFile, turbine: TurbineFrame): TurbineEvent[] {
     .filter((event) => event.turbine === undefined || event.turbine === turbine.turbine)
     .map(({ at, kind }) => ({ atMs: Date.parse(at), changesOffset: /\bvane\b/i.test(kind) }))
   return [...corrections, ...events]
-}
-
-function responseByModel(
-  models: readonly string[],
-  settings: ScoringSettings,
-  neighbours: Neighbours | null,
-): ScoreSheet['fleet']['anemometerResponsePerDeg'] {
-  const known = settings.assumedResponsePctPerDeg
-  const entries = [...new Set(models)].map((model) => {
-    const turbines = models.filter((other) => other === model).length
-    const measured = neighbours?.response.models.find((other) => other.model === model)
-    if (measured) {
-      const half = NORMAL_95 * measured.sdPerDeg
-      return [
-        model,
-        {
-          estimate: measured.perDeg,
-          interval95: [measured.perDeg - half, measured.perDeg + half],
-          spread: measured.spreadPerDeg,
-          turbines: measured.turbines,
-          source: 'wind speed against neighbours at the same time',
-        },
-      ] as const
-    }
-    const half = known === null ? (NORMAL_95 * settings.responseSpreadPctPerDeg) / 100 : 0
-    const centre = (known ?? 0) / 100
-    return [
-      model,
-      {
-        estimate: known === null ? null : centre,
-        interval95: [centre - half, centre + half],
-        spread: known === null ? null : 0,
-        turbines,
-        source:
-          known === null
-            ? 'not measured: the setting responseSpreadPctPerDeg says how large it may be'
-            : 'taken as known: the setting assumedResponsePctPerDeg',
-      },
-    ] as const
-  })
-  return Object.fromEntries(
-    entries.map(([model, entry]) => [model, { ...entry, interval95: [...entry.interval95] }]),
-  )
 }
 
 function iso(ms: number): string {

@@ -39,6 +39,17 @@ const SetAside = Type.Object({
   rows: Count,
 })
 
+/** A departure from a response that is one number. */
+const Departure = (description: string) =>
+  Type.Object(
+    {
+      size: Nullable('null: not tested'),
+      interval95: Interval('of it'),
+      beyondChance: Type.Union([Type.Boolean(), Type.Null()]),
+    },
+    { description },
+  )
+
 const VaneStatistics = Type.Object({
   meanDeg: Nullable('circular mean, [-180, 180)'),
   medianDeg: Nullable('circular median, [-180, 180)'),
@@ -254,6 +265,12 @@ export const ScoreSheet = Type.Object(
           spread: Nullable('between turbines'),
           turbines: Count,
           source: Type.String(),
+          changeWithSpeed: Departure(
+            'by how much the response is larger at 10 m/s than at 6 m/s, relative change per degree',
+          ),
+          square: Departure(
+            'part of the reading that is alike on both sides of the vane, relative change per square degree',
+          ),
         }),
       ),
     }),

@@ -171,6 +171,9 @@ test('where the response is not known neighbours tell it, and every interval is 
   expect(response.interval95[0]).toBeLessThan(0) // the made-up anemometers are honest
   expect(response.interval95[1]).toBeGreaterThan(0)
   expect(response.interval95[1]! - response.interval95[0]!).toBeLessThan(2 * 1.96 * 0.0015) // less than the setting leaves open
+  expect(response.changeWithSpeed.beyondChance).toBe(false)
+  expect(response.square.beyondChance).toBe(false)
+  expect(response.square.interval95[1]).toBeGreaterThan(response.square.interval95[0]!)
   for (const { turbine, verdict, staticOffset } of unsure.turbines) {
     const [low, high] = staticOffset.interval95Deg as [number, number]
     const known = turbineOf(sheet, turbine).staticOffset.interval95Deg as [number, number]
@@ -204,7 +207,11 @@ test('a lone turbine whose response is not known is undetermined, and the sheet 
   expect(response.estimate).toBeNull()
   // 1.96 x 0.15 % per degree, the setting.
   expect(response.interval95[1]).toBeCloseTo(1.96 * 0.0015, 5)
-  expect(sheet.fleet.anemometerResponsePerDeg['M1']).toMatchObject({ estimate: 0, interval95: [0, 0] })
+  expect(sheet.fleet.anemometerResponsePerDeg['M1']).toMatchObject({
+    estimate: 0,
+    interval95: [0, 0],
+    square: { size: null, interval95: [null, null], beyondChance: null },
+  })
 })
 
 test('the sheet fits its schema once it has been through JSON', () => {

@@ -4,10 +4,13 @@ import type { ScoringSettings } from '../../sheet/index.ts'
 import { anemometerResponse, type FarmResponse } from './anemometer-response.ts'
 import { farmComparison, type FarmComparison } from './farm-comparison.ts'
 import { farmEstimates, type FarmEstimate } from './farm-estimates.ts'
+import { responseShape, type ResponseShape } from './response-shape.ts'
 
 /** What turbines tell of each other. */
 export interface Neighbours {
   readonly response: FarmResponse
+  /** Whether it is one number, per model. */
+  readonly shapes: readonly ResponseShape[]
   /** Per turbine, in the order of the farm. */
   readonly estimates: readonly (readonly FarmEstimate[])[]
   /** Per turbine and row of its frame: 1 = free stream, 0 = in or beside a wake, or not known. */
@@ -35,6 +38,7 @@ export function compareNeighbours(
   if (response.turbines.every((turbine) => turbine === null)) return null
   return {
     response,
+    shapes: responseShape(comparison, response, dayWeights),
     estimates: farmEstimates(comparison, response, dayWeights, settings),
     freeStream: byRow(comparison),
   }
