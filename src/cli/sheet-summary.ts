@@ -25,6 +25,7 @@ export function sheetSummary(sheet: ScoreSheet, paths: readonly string[]): strin
     ...exponentLines(sheet),
     '',
     rowsLine(sheet),
+    ...findingSection(sheet.turbines),
     ...section('Warnings', warningsOf(sheet)),
     ...section('Cautions', cautionLines(sheet.turbines)),
     '',
@@ -46,16 +47,25 @@ function exponentLines({ provenance: { settings }, turbines }: ScoreSheet): stri
   )
 }
 
+/** What is wrong with sensors, drives and controllers, in full; what is only information stands in the sheet. */
+function findingSection(turbines: readonly TurbineSheet[]): string[] {
+  const lines = turbines.flatMap(({ turbine, sensors }) =>
+    sensors
+      .filter(({ severity }) => severity !== 'info')
+      .map(({ severity, finding }) => `- ${turbine} (${severity}): ${finding}`),
+  )
+  if (lines.length === 0) return []
+  return ['', 'Sensors, drives, controllers:', ...lines.flatMap(hanging)]
+}
+
+function hanging(text: string): string[] {
+  return wrapped(text).map((line, k) => (k > 0 ? `  ${line}` : line))
+}
+
 /** In full and before everything else: somebody may have to go back today. */
 function correctionSection({ corrections }: ScoreSheet): string[] {
   if (corrections.length === 0) return []
-  return [
-    '',
-    'Corrections:',
-    ...correctionLines(corrections).flatMap((text) =>
-      wrapped(`- ${text}`).map((line, k) => (k > 0 ? `  ${line}` : line)),
-    ),
-  ]
+  return ['', 'Corrections:', ...correctionLines(corrections).flatMap((text) => hanging(`- ${text}`))]
 }
 
 /** Those of corrections stand above the table already. */

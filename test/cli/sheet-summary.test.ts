@@ -39,6 +39,28 @@ test('long names, reasons and warnings stay within 120 columns, and cautions are
   expect(text).toContain('a turbine')
 })
 
+test('what is wrong with a sensor is told in full, what is only information is not', () => {
+  const one = turbineExample('Q01', 0.2)
+  const frozen = {
+    sensor: 'vane',
+    kind: 'frozen',
+    finding: `the vane stood still ${'and still '.repeat(20)}for 14 hours`,
+    severity: 'warn',
+    howSure: 'certain',
+    checkFirst: '',
+    from: null,
+    to: null,
+    detail: {},
+  } as const
+  one.sensors = [frozen, { ...frozen, kind: 'north-offset', severity: 'info', finding: 'another north' }]
+  const text = sheetSummary(sheetExample('r', [one]), [])
+  expect(text).toContain('Sensors, drives, controllers:\n- Q01 (warn): the vane stood still')
+  expect(text).toContain('for 14 hours')
+  expect(text).not.toContain('another north')
+  expect(Math.max(...text.split('\n').map((line) => line.length))).toBeLessThanOrEqual(120)
+  expect(sheetSummary(sheetExample('r', [turbineExample('Q01', 0.2)]), [])).not.toContain('Sensors, drives')
+})
+
 test('csv quotes what would break a row, and leaves the unknown empty', () => {
   const one = turbineExample('Q"1, north', null)
   one.reason = 'two\nlines'

@@ -19,43 +19,61 @@ const TURBINES = 8
 const AT_ONCE = 3
 const YEAR_DAYS = 365.25
 
-interface Tally {
-  tried: number
-  found: number
-  warned: number
-  errorsH: number[]
+export const TABLE_HEAD =
+  '| fault, 8 turbines, 60 days, rows of 10 minutes | size | tried | found | at warn or fault | start dated to, hours: median, largest |'
+
+/** What came of the trials of one case. */
+export class Tally {
+  tried = 0
+  found = 0
+  warned = 0
+  readonly errorsH: number[] = []
+
+  add(found: Found | null): void {
+    this.tried++
+    if (!found) return
+    this.found++
+    if (found.warned) this.warned++
+    if (found.errorH !== null) this.errorsH.push(found.errorH)
+  }
+}
+
+export function newTally(): Tally {
+  return new Tally()
+}
+
+/** Findings that ask for attention, as text. */
+export function warningsOf(sheet: ScoreSheet): { turbine: string; name: string; text: string }[] {
+  return sheet.turbines.flatMap(({ turbine, sensors }) =>
+    sensors
+      .filter(({ severity }) => severity !== 'info')
+      .map(({ sensor, kind, severity, finding }) => ({
+        turbine,
+        name: `${sensor}: ${kind}`,
+        text: `${severity}, ${sensor}: ${kind}: ${finding}`,
+      })),
+  )
 }
 
 export async function faultStudy(farms: number, print: (text: string) => void): Promise<void> {
-  const tallies = FAULT_CASES.map((): Tally => ({ tried: 0, found: 0, warned: 0, errorsH: [] }))
+  const tallies = FAULT_CASES.map(newTally)
   const alarms = new Map<string, number>()
   let soundDays = 0
   for (let k = 0; k < farms; k++) {
     const sound = cachedFarm(randomScenario(FIRST_SEED + k, { turbines: TURBINES, days: DAYS }))
-    for (const turbine of (await sheetOf(sound)).turbines) {
-      soundDays += DAYS
-      for (const { sensor, kind, severity, finding } of turbine.sensors) {
-        if (severity === 'info') continue
-        const name = `${sensor}: ${kind}`
-        alarms.set(name, (alarms.get(name) ?? 0) + 1)
-        print(`<!-- false alarm: farm ${k}, ${turbine.turbine}, ${severity}, ${name}: ${finding} -->`)
-      }
+    soundDays += TURBINES * DAYS
+    for (const { turbine, name, text } of warningsOf(await sheetOf(sound))) {
+      alarms.set(name, (alarms.get(name) ?? 0) + 1)
+      print(`<!-- false alarm: farm ${k}, ${turbine}, ${text} -->`)
     }
     for (const cases of inGroups(FAULT_CASES, k)) {
       await tryCases(sound, k, cases, (fault, i, found) => {
-        const tally = tallies[i]!
-        tally.tried++
-        if (found) {
-          tally.found++
-          if (found.warned) tally.warned++
-          if (found.errorH !== null) tally.errorsH.push(found.errorH)
-        } else print(`<!-- missed: farm ${k}, turbine ${fault.turbine + 1}, ${fault.kind} -->`)
+        tallies[i]!.add(found)
+        if (!found) print(`<!-- missed: farm ${k}, turbine ${fault.turbine + 1}, ${fault.kind} -->`)
       })
     }
   }
-  print(
-    `| fault, 8 turbines, 60 days, rows of 10 minutes | size | tried | found | at warn or fault | start dated to, hours: median, largest |`,
-  )
+  print(TABLE_HEAD)
   print('|---|---|---|---|---|---|')
   FAULT_CASES.forEach((one, i) => {
     print(lineOf(one, tallies[i]!))
@@ -118,12 +136,14 @@ function faultOf(one: FaultCase, turbine: number, farm: number): Fault {
   }
 }
 
-interface Found {
+/** A fault was found: whether at warn or fault, and how far off its start, hours; null: not dated. */
+export interface Found {
   readonly warned: boolean
   readonly errorH: number | null
 }
 
-function foundIn(sheet: ScoreSheet, fault: Fault, one: FaultCase, startMs: number): Found | null {
+/** What the sheet has of a fault; null: nothing that fits. */
+export function foundIn(sheet: ScoreSheet, fault: Fault, one: FaultCase, startMs: number): Found | null {
   const turbine = sheet.turbines[fault.turbine]!
   const fromMs = startMs + fault.fromS * 1000
   const toMs = startMs + fault.toS * 1000
@@ -160,7 +180,8 @@ function endOf({ to }: SensorFinding): number {
   return to === null ? Infinity : Date.parse(to)
 }
 
-function lineOf(one: FaultCase, { tried, found, warned, errorsH }: Tally): string {
+/** A line of the table. */
+export function lineOf(one: FaultCase, { tried, found, warned, errorsH }: Tally): string {
   const described: { does: string; size?: { is: string; usual: number } } = FAULTS[one.kind]
   const size = described.size ? `${one.size ?? described.size.usual} ${described.size.is}` : ''
   const lasts = one.days === Infinity ? (one.fromDay === 0 ? '' : 'from then on') : `${24 * one.days} h`

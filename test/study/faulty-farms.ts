@@ -1,6 +1,15 @@
+import {
+  DAY_MARGIN_MS,
+  DAY_MS,
+  examineDay,
+  HIGH_RATE_CHANNELS,
+  highRateRows,
+  type HighRateRecord,
+} from '../../src/analysis/index.ts'
+import type { TurbineFrame } from '../../src/frame/index.ts'
 import { scoreFarm } from '../../src/replay/score-farm.ts'
 import { openScorers } from '../../src/replay/scorers.ts'
-import type { ScoreSheet, SiteFile } from '../../src/sheet/index.ts'
+import type { Receipt, ScoreSheet } from '../../src/sheet/index.ts'
 import { faultsOf } from '../../src/simulate/faults.ts'
 import { turbineInflow } from '../../src/simulate/inflow.ts'
 import { emptyRows, STATES } from '../../src/simulate/rows.ts'
@@ -26,21 +35,23 @@ const SETTINGS = { ...STUDY_SETTINGS, resamples: 60, assumedResponsePctPerDeg: 0
 /**
  * A farm that was made before, with faults at one of its turbines: only that one is made anew, since turbines do not hear
  * of one another's sensors. Not for faults that change the weather of the farm.
+ *
+ * @param keep  in the cache on disk: not for rows of a second
  */
 export function withFaults(
   farm: SimulatedFarm,
   index: number,
   faults: readonly Fault[],
   changes: Partial<FarmScenario> = {},
+  keep = true,
 ): SimulatedFarm {
   const scenario = farmScenario({
     ...farm.scenario,
     ...changes,
     faults: [...farm.scenario.faults, ...faults],
   })
-  const turbine = cached(`${JSON.stringify(scenario)} ${index}`, () =>
-    madeAnew(scenario, farm.turbines[index]!, index),
-  )
+  const make = () => madeAnew(scenario, farm.turbines[index]!, index)
+  const turbine = keep ? cached(`${JSON.stringify(scenario)} ${index}`, make) : make()
   return {
     scenario,
     turbines: farm.turbines.map((one, i) => (i === index ? turbine : one)),
@@ -73,25 +84,46 @@ function madeAnew(scenario: FarmScenario, sound: SimulatedTurbine, index: number
   }
 }
 
-/** The score sheet of a farm, from the digits that its log holds. */
-export async function sheetOf(farm: SimulatedFarm, site: SiteFile = siteFileOf(farm)): Promise<ScoreSheet> {
-  const columns = farm.turbines.map((turbine) => loggedColumns(farm, turbine))
+/**
+ * The score sheet of a farm, from the digits that its log holds.
+ *
+ * @param fine  the same farm in rows of a second; without it the log has the farm's own rows alone.
+ */
+export async function sheetOf(farm: SimulatedFarm, fine?: SimulatedFarm): Promise<ScoreSheet> {
+  const request = {
+    replay: 'study',
+    version: 'study',
+    site: siteFileOf(farm),
+    settings: SETTINGS,
+    receipt: { warnings: [], intervalS: farm.scenario.rateS, inputs: [] } as unknown as Receipt,
+    reading: {},
+    ...(fine === undefined
+      ? {}
+      : { examine: (frames: readonly TurbineFrame[]) => Promise.resolve(examined(frames, fine)) }),
+  }
   return scoreFarm(
-    columns,
-    {
-      replay: 'study',
-      version: 'study',
-      site,
-      settings: SETTINGS,
-      receipt: {
-        warnings: [],
-        intervalS: farm.scenario.rateS,
-        inputs: [],
-      } as unknown as ScoreSheet['receipt'],
-      reading: {},
-    },
+    farm.turbines.map((turbine) => loggedColumns(farm, turbine)),
+    request,
     openScorers(0),
   )
+}
+
+function examined(frames: readonly TurbineFrame[], fine: SimulatedFarm): HighRateRecord[] {
+  return frames.map((frame, i) => {
+    const { turbine, time, numbers } = loggedColumns(fine, fine.turbines[i]!)
+    const channels = HIGH_RATE_CHANNELS.filter((name) => name in numbers)
+    const days: HighRateRecord['days'][number][] = []
+    for (let dayMs = Math.floor(time[0]! / DAY_MS) * DAY_MS; dayMs < time.at(-1)!; dayMs += DAY_MS) {
+      const inside = (_: number, row: number) =>
+        time[row]! >= dayMs - DAY_MARGIN_MS && time[row]! < dayMs + DAY_MS + DAY_MARGIN_MS
+      const span = {
+        time: time.filter(inside),
+        numbers: Object.fromEntries(channels.map((name) => [name, numbers[name]!.filter(inside)])),
+      }
+      days.push(examineDay(highRateRows(frame, dayMs, span)))
+    }
+    return { turbine, days }
+  })
 }
 
 /** What is read of the log of one turbine: its columns as numbers with the decimals that the log has. */
