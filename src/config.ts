@@ -1,6 +1,6 @@
 import { availableParallelism } from 'node:os'
 import { InputError } from './errors.ts'
-import { ScoringSettings } from './sheet/index.ts'
+import { crossedSettings, ScoringSettings } from './sheet/index.ts'
 
 /**
  * libuv shares four threads among all file I/O, compression and native queries of a process. Four running DuckDB queries
@@ -287,7 +287,10 @@ export function readConfig(
   const unknownNames = Object.keys(environment).filter(
     (name) => name.startsWith('YAWLEDGER_') && !known.has(name),
   )
-  return { config: values as unknown as Config, unknownNames: unknownNames.sort() }
+  const config = values as unknown as Config
+  const crossed = crossedSettings(config)
+  if (crossed !== null) throw new InputError('BAD_CONFIG', `config ${crossed}`)
+  return { config, unknownNames: unknownNames.sort() }
 }
 
 /** The part of the settings that the estimation takes and every score sheet prints. */

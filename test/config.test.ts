@@ -34,6 +34,12 @@ test('a flag wins over the environment, and the environment over the default', (
   expect(config.bodyLimitMb).toBe(5)
 })
 
+test('a range whose ends are crossed stops the start with its name', () => {
+  expect(() => readConfig({ YAWLEDGER_EXPONENT_LOW: '2.5', YAWLEDGER_EXPONENT_HIGH: '2' })).toThrow(
+    wrong('BAD_CONFIG', 'config exponentLow: expected at most exponentHigh (2), got 2.5'),
+  )
+})
+
 test('an empty variable counts as not given', () => {
   expect(readConfig({ YAWLEDGER_PORT: '' }).config.port).toBe(8080)
 })

@@ -4,7 +4,13 @@ import PQueue from 'p-queue'
 import { InputError } from '../errors.ts'
 import { decodingPlan } from '../frame/index.ts'
 import { stageLog, type LogLimits, type StagedLog } from '../log/index.ts'
-import type { Receipt, ScoreSheet, SiteFile } from '../sheet/index.ts'
+import {
+  crossedSettings,
+  type Receipt,
+  type ScoreSheet,
+  type ScoringSettings,
+  type SiteFile,
+} from '../sheet/index.ts'
 import type { Store, StoredReplay } from '../store/index.ts'
 import type { OneShotRequest, Progress, ReplayRecord, Replays, StoredRequest } from './contract.ts'
 import { frameRows, type KeptRequest } from './frame-rows.ts'
@@ -82,6 +88,7 @@ export function createReplays(parts: ReplayParts): Replays {
   return {
     oneShot: (request, onProgress) =>
       inForeground(async (id, run, folder) => {
+        checkSettings(request.settings)
         run.onProgress({ stage: 'reading', share: 0 })
         const staged = await stage(parts, folder, request)
         run.signal.throwIfAborted()
@@ -106,11 +113,13 @@ export function createReplays(parts: ReplayParts): Replays {
       }, onProgress),
     stored: (request, onProgress) =>
       inForeground(async (id, run, folder) => {
+        checkSettings(request.settings)
         await checkStored(store, request)
         await store.replays.begin({ id, site: request.site, createdMs: clock() })
         return scoreStored(id, request, run, folder)
       }, onProgress),
     async start(request) {
+      checkSettings(request.settings)
       await checkStored(store, request)
       const id = parts.newId()
       const run = running.enter(id)
@@ -245,4 +254,9 @@ function problemOf(error: unknown): { code: string; detail: string } {
 
 function notFound(id: string, expected = 'the id of a kept replay'): InputError {
   return new InputError('REPLAY_NOT_FOUND', `replay: expected ${expected}, got "${id.slice(0, 100)}"`)
+}
+
+function checkSettings(settings: ScoringSettings): void {
+  const crossed = crossedSettings(settings)
+  if (crossed !== null) throw new InputError('BAD_OPTION', crossed)
 }

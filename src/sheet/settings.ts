@@ -79,3 +79,13 @@ export const ScoringSettings = Type.Object(
   { additionalProperties: false, description: 'Settings in force' },
 )
 export type ScoringSettings = Static<typeof ScoringSettings>
+
+/** Settings that contradict each other, in words; null = none. */
+export function crossedSettings(
+  settings: Pick<ScoringSettings, 'exponentLow' | 'exponentHigh'>,
+): string | null {
+  const { exponentLow, exponentHigh } = settings
+  return exponentLow <= exponentHigh
+    ? null
+    : `exponentLow: expected at most exponentHigh (${exponentHigh}), got ${exponentLow}`
+}

@@ -35,6 +35,15 @@ afterAll(async () => {
   await removeFolder(folder)
 })
 
+test('exponents whose range is crossed are refused before anything is read', async () => {
+  await expect(
+    service.replays.oneShot(demoRequest({ exponentLow: 3, exponentHigh: 2 })),
+  ).rejects.toMatchObject({
+    code: 'BAD_OPTION',
+    message: 'exponentLow: expected at most exponentHigh (2), got 3',
+  })
+})
+
 test('the three turbines that stand off the wind are found, the others are aligned', () => {
   expect(sheet.turbines.map(({ turbine, verdict }) => `${turbine} ${verdict}`)).toEqual([
     'Q01 aligned',
