@@ -78,7 +78,7 @@ export const CorrectionProof = Type.Object({
   gainPct: Nullable('power after against before, relative to unchanged neighbours, % of energy below rated'),
   interval95Pct: Interval('of the gain; its width is at least what placebos show'),
   predictedPct: Nullable('gain by the cosine law from m before and the degrees entered'),
-  predictedInterval95Pct: Interval('of the prediction, from that of m'),
+  predictedInterval95Pct: Interval('of the prediction, from that of m at the exponent in force'),
   power: Type.Object({
     neighbours: Type.Array(Type.String({ description: 'turbines at which nothing was changed' })),
     rowsBefore: Count,

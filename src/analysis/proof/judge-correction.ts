@@ -1,10 +1,12 @@
 import { RAD_PER_DEG } from '../../kernel/angle/index.ts'
 import type { CorrectionOutcome } from '../../sheet/index.ts'
+import { NORMAL_95 } from '../offset/resampled-spread.ts'
 
 /** Shares of the degrees entered that part "as entered", "in part", "not at all" and "the other way". */
 const AS_ENTERED = 0.8
 const IN_PART = 0.2
 const HALF = 0.5
+const STILL = 0.6
 const QUARTER = 0.25
 /** An alarm from power alone takes this many half-widths at 95 %: 99.7 %. */
 const ALARM = 1.5
@@ -14,7 +16,6 @@ const PATIENCE_DAYS = 120
 const HEADING_DAYS = 2
 /** Days after which the offset has been estimated anew, as far as it is worth waiting for. */
 const LOOK_AGAIN_DAYS = 14
-const NORMAL_95 = 1.959963984540054
 /** Squared standard deviations by which one account must fit better than the others: 99.5 and 97.5 of 100. */
 const SURE = 6.6
 const LIKELY = 3.84
@@ -23,6 +24,13 @@ const LIKELY = 3.84
 export interface Measured {
   readonly value: number
   readonly half: number
+}
+
+/** A number and the ends of its interval at 95 %. */
+export interface Ends {
+  readonly value: number
+  readonly low: number
+  readonly high: number
 }
 
 export interface Evidence {
@@ -34,7 +42,7 @@ export interface Evidence {
   /** ln of the wind speed that power stands for, after less before; null: no neighbours, or too few rows. */
   readonly power: Measured | null
   /** m before; null: not to be had. */
-  readonly beforeDeg: Measured | null
+  readonly beforeDeg: Ends | null
   /** m after less m before, by power against vane; null: not to be had. */
   readonly changeDeg: Measured | null
   readonly exponent: number
@@ -83,7 +91,10 @@ export function judgeCorrection(evidence: Evidence): Judgement {
   if (high < -QUARTER * entered) return settled('wrong way', 'heading-other-way')
   if (high >= AS_ENTERED * entered && low > HALF * entered) return heldAsEntered(evidence, headingDeg)
   if (low > IN_PART * entered && high < AS_ENTERED * entered) return settled('partly', 'heading-in-part')
-  if (high < HALF * entered && low > -HALF * entered) return settled('not taken hold', 'heading-still')
+  const isStill = low <= 0 || turned < IN_PART * entered
+  if (isStill && high < STILL * entered && low > -STILL * entered) {
+    return settled('not taken hold', 'heading-still')
+  }
   const enough = Math.max(1, HEADING_DAYS - evidence.daysAfter)
   return { outcome: 'too early', code: 'waiting-for-heading', furtherDays: enough }
 }
@@ -143,7 +154,7 @@ function settled(outcome: CorrectionOutcome, code: Judgement['code']): Judgement
 }
 
 /** Too early, with the days until power could tell the expected gain from none. */
-function waiting(evidence: Evidence, expected: Expected | null): Judgement {
+function waiting(evidence: Evidence, expected: Ends | null): Judgement {
   const { power, daysAfter, daysBefore } = evidence
   const days =
     power && expected ? daysUntil(power.half, Math.abs(expected.value), { daysBefore, daysAfter }) : NaN
@@ -173,19 +184,13 @@ function daysUntil(
   return inverse > 0 ? Math.max(0, 1 / inverse - daysAfter) : Infinity
 }
 
-interface Expected {
-  readonly value: number
-  readonly low: number
-  readonly high: number
-}
-
 /** Gain of turning by so many degrees, over the interval of m before. */
 export function expectedGain(
   { beforeDeg, exponent }: Pick<Evidence, 'beforeDeg' | 'exponent'>,
   turnedDeg: number,
-): Expected | null {
+): Ends | null {
   if (!beforeDeg) return null
   const at = (deg: number): number => gainOfTurning(deg, turnedDeg, exponent)
-  const ends = [at(beforeDeg.value - beforeDeg.half), at(beforeDeg.value + beforeDeg.half)]
+  const ends = [at(beforeDeg.low), at(beforeDeg.high)]
   return { value: at(beforeDeg.value), low: Math.min(...ends), high: Math.max(...ends) }
 }

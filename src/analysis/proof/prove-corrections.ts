@@ -6,7 +6,7 @@ import type { TurbineResponse } from '../neighbours/anemometer-response.ts'
 import type { FarmRows } from '../neighbours/neighbours.ts'
 import { correctionText } from './correction-text.ts'
 import { headingAfterCorrection, type HeadingAnswer } from './heading-after-correction.ts'
-import { expectedGain, judgeCorrection, type Measured } from './judge-correction.ts'
+import { expectedGain, judgeCorrection, type Ends, type Measured } from './judge-correction.ts'
 import type { Sides } from './judged-step.ts'
 import { powerAfterCorrection, type PowerAnswer } from './power-after-correction.ts'
 import { proofFarm, type ProofFarm, type ProofQuestion } from './proof-farm.ts'
@@ -115,9 +115,7 @@ function proveOne(
       daysAfter: answer?.step.daysAfter ?? 0,
     },
     gainPct: power ? pct(power.step.step) : null,
-    interval95Pct: power
-      ? pctInterval(power.step.step, power.step.halfWidth)
-      : ([null, null] as const).slice(),
+    interval95Pct: power ? pctInterval(power.step.step, power.step.halfWidth) : [null, null],
     predictedPct: predicted ? pct(predicted.value) : null,
     predictedInterval95Pct: predicted ? [pct(predicted.low), pct(predicted.high)] : [null, null],
   }
@@ -144,9 +142,9 @@ function proveOne(
     vaneLoggedSeen,
     standing: {
       beforeDeg: known(standing.before.deg),
-      beforeInterval95Deg: around(standing.before.deg, standing.before.halfWidthDeg),
+      beforeInterval95Deg: standing.before.interval95Deg.map(known),
       afterDeg: known(standing.after.deg),
-      afterInterval95Deg: around(standing.after.deg, standing.after.halfWidthDeg),
+      afterInterval95Deg: standing.after.interval95Deg.map(known),
       changeDeg: change ? change.value : null,
       changeInterval95Deg: change ? around(change.value, change.half) : [null, null],
     },
@@ -236,26 +234,30 @@ function changeOf({ before, after }: StandingEachSide): Measured | null {
   )
 }
 
-/** m before: from the rows before, and where the heading tells how far the rotor was turned, from those after as well. */
-function beforeDeg({ before, after }: StandingEachSide, heading: HeadingAnswer | null): Measured | null {
-  const own = measuredOrNull(before.deg, before.halfWidthDeg)
-  const later =
-    heading && !Number.isNaN(after.deg)
-      ? measuredOrNull(
-          wrap180(after.deg + heading.step.step),
-          Math.hypot(after.halfWidthDeg, heading.step.halfWidth),
-        )
-      : null
-  if (!own || !later) return own ?? later
-  const apart = [before.ownHalfWidthDeg, Math.hypot(after.ownHalfWidthDeg, heading!.step.halfWidth)].map(
-    (half) => 1 / half ** 2,
-  ) as [number, number]
-  const shared = Math.sqrt(Math.max(0, before.halfWidthDeg ** 2 - before.ownHalfWidthDeg ** 2))
-  const share = apart[1] / (apart[0] + apart[1])
-  return measuredOrNull(
-    own.value + share * wrap180(later.value - own.value),
-    Math.hypot(1 / Math.sqrt(apart[0] + apart[1]), shared),
-  )
+/**
+ * m before, at the exponent in force: from the rows before, and where the heading tells how far the rotor was turned, from
+ * those after as well.
+ */
+function beforeDeg({ before, after }: StandingEachSide, heading: HeadingAnswer | null): Ends | null {
+  const own = measuredOrNull(before.deg, before.ownHalfWidthDeg)
+  const later = heading
+    ? measuredOrNull(
+        wrap180(after.deg + heading.step.step),
+        Math.hypot(after.ownHalfWidthDeg, heading.step.halfWidth),
+      )
+    : null
+  const one = own && later ? weighted(own, later) : (own ?? later)
+  if (!one) return null
+  // Response and dilution err alike on both sides: that part stays as wide as it was.
+  const half = Math.hypot(one.half, own ? before.sharedHalfWidthDeg : after.sharedHalfWidthDeg)
+  return { value: one.value, low: one.value - half, high: one.value + half }
+}
+
+/** Mean of two angles, weighted by what each tells. */
+function weighted(first: Measured, second: Measured): Measured {
+  const [a, b] = [1 / first.half ** 2, 1 / second.half ** 2]
+  const value = first.value + (b / (a + b)) * wrap180(second.value - first.value)
+  return { value, half: 1 / Math.sqrt(a + b) }
 }
 
 function placebosOf(

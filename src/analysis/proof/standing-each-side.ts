@@ -7,9 +7,12 @@ import type { Sides } from './judged-step.ts'
 /** m on one side of a correction; degrees. NaN: not to be had. */
 export interface StandingSide {
   readonly deg: number
-  readonly halfWidthDeg: number
-  /** The part of the half-width that the two sides do not share. */
+  /** At 95 %; the ends need not lie alike to either side. */
+  readonly interval95Deg: readonly [number, number]
+  /** Half-width that the two sides do not share: scatter alone. */
   readonly ownHalfWidthDeg: number
+  /** Half-width that they do share, at the exponent in force: response, instrument, dilution. */
+  readonly sharedHalfWidthDeg: number
 }
 
 export interface StandingEachSide {
@@ -31,12 +34,14 @@ export function standingEachSide(
       request.settings,
     )
     const { standing } = answer
-    if (!standing) return { deg: NaN, halfWidthDeg: NaN, ownHalfWidthDeg: NaN }
-    const [low, high] = standing.standingInterval95Deg
+    if (!standing)
+      return { deg: NaN, interval95Deg: [NaN, NaN], ownHalfWidthDeg: NaN, sharedHalfWidthDeg: NaN }
+    const { statistical, response, instrument, dilution } = answer.sheet.intervalParts
     return {
       deg: standing.standingDeg,
-      halfWidthDeg: (high - low) / 2,
-      ownHalfWidthDeg: answer.sheet.intervalParts.statistical ?? NaN,
+      interval95Deg: standing.standingInterval95Deg,
+      ownHalfWidthDeg: statistical ?? NaN,
+      sharedHalfWidthDeg: Math.hypot(response ?? 0, instrument ?? 0, dilution ?? 0),
     }
   }
   return {

@@ -11,7 +11,7 @@ const EVIDENCE: Evidence = {
   daysBefore: 45,
   daysAfter: 45,
   power: { value: 0.0055, half: 0.003 },
-  beforeDeg: { value: 6, half: 1.5 },
+  beforeDeg: { value: 6, low: 4.5, high: 7.5 },
   changeDeg: { value: -5.5, half: 2 },
   exponent: 3,
 }
@@ -29,7 +29,7 @@ test('a heading that stepped as entered and power that rose: worked, for either 
   const mirrored = judge({
     enteredDeg: -6,
     headingDeg: { value: -5.9, half: 0.6 },
-    beforeDeg: { value: -6, half: 1.5 },
+    beforeDeg: { value: -6, low: -7.5, high: -4.5 },
     changeDeg: { value: 5.5, half: 2 },
   })
   expect(mirrored.outcome).toBe('worked')
@@ -41,7 +41,12 @@ test('a heading that stepped against what was entered is the wrong way, before p
 })
 
 test('what was entered as written down can still turn a rotor away from the wind: wrong way by the misalignment before', () => {
-  const answer = judge({ beforeDeg: { value: -6, half: 1.5 }, daysAfter: 2, power: null, changeDeg: null })
+  const answer = judge({
+    beforeDeg: { value: -6, low: -7.5, high: -4.5 },
+    daysAfter: 2,
+    power: null,
+    changeDeg: null,
+  })
   expect(answer).toMatchObject({ outcome: 'wrong way', code: 'further-off' })
 })
 
