@@ -35,7 +35,7 @@ const DAY_MS = 86_400_000
 const ENTERED_DEG = 6
 /** Turbines of each farm that are corrected, one at a time. */
 const TARGETS = [0, 4, 8]
-const AFTER_DAYS = [1, 2, 5, 10, 45] as const
+const AFTER_DAYS = [1, 2, 10, 45] as const
 /** True wind speeds over which the truth of a gain is taken, m/s: about those that are compared. */
 const BELOW_RATED_MS = [5, 10.8] as const
 
@@ -202,7 +202,7 @@ function proofOf(
   { position, afterDays }: { position: boolean; afterDays: number },
 ): CorrectionProof {
   const whole = afterDays + DAY >= DAYS
-  const settings = { ...STUDY_SETTINGS, resamples: 200, assumedResponsePctPerDeg: whole ? null : -0.3 }
+  const settings = { ...STUDY_SETTINGS, resamples: 200, assumedResponsePctPerDeg: whole && position ? null : -0.3 }
   const rows = ((DAY + afterDays) * 86_400) / farm.scenario.rateS
   const cut: SimulatedFarm = {
     ...farm,
@@ -221,7 +221,7 @@ function proofOf(
   const frame = frameOf(cut, settings)
   const days = frame.calendar.days
   const dayWeights = dayBlocks(days, settings)
-  const neighbours = whole ? compareNeighbours(frame, days, dayWeights, settings) : null
+  const neighbours = whole && position ? compareNeighbours(frame, days, dayWeights, settings) : null
   const [proof] = proveCorrections({
     farm: frame,
     days,
