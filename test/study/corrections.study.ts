@@ -202,7 +202,11 @@ function proofOf(
   { position, afterDays }: { position: boolean; afterDays: number },
 ): CorrectionProof {
   const whole = afterDays + DAY >= DAYS
-  const settings = { ...STUDY_SETTINGS, resamples: 200, assumedResponsePctPerDeg: whole && position ? null : -0.3 }
+  const settings = {
+    ...STUDY_SETTINGS,
+    resamples: 200,
+    assumedResponsePctPerDeg: whole && position ? null : -0.3,
+  }
   const rows = ((DAY + afterDays) * 86_400) / farm.scenario.rateS
   const cut: SimulatedFarm = {
     ...farm,
