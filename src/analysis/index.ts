@@ -38,5 +38,6 @@ export { proveCorrections, type ProveQuestion } from './proof/prove-corrections.
 export { nacelleRecords, type FarmNorth, type NacelleRecord } from './sensors/nacelle-records.ts'
 export { nacelleFindings } from './sensors/nacelle-findings.ts'
 export { nacelleNorth, nacelleTests, withTrueNorth, type TrueNorth } from './sensors/nacelle-north.ts'
+export { trendLine, type TrendValue } from './proof/trend-line.ts'
 export { attributions } from './sensors/attribution.ts'
 export { costAt, probabilityBeyond, shrunkOffsets, type ShrunkOffsets } from './energy/shrunk-offsets.ts'

@@ -2,6 +2,9 @@ import { DateTime } from 'luxon'
 import { InputError } from '../errors.ts'
 import type { ScoreSheet, SiteFile } from '../sheet/index.ts'
 import { fleetRanking, unsettledTurbines, workOrder, type WorkOrderSource } from '../sheet/work-order.ts'
+import { correctionLines, isAlarm } from '../sheet/correction-lines.ts'
+import { newsLines } from '../sheet/news-lines.ts'
+import { unsettledTurbines, workOrder } from '../sheet/work-order.ts'
 import type { Archive, CommandParts, SettingFlags } from './parts.ts'
 import { progressLine } from './progress-line.ts'
 import { report } from './report.ts'
@@ -23,7 +26,7 @@ const SITES_A_PAGE = 200
  * Scores the stored logs of whole sites, one after the other, and prints the worklist of each; after them, of several sites,
  * who comes first over all. A site that fails is said on standard error and does not stop the others.
  *
- * @returns exit status: 1 when a site failed, else 10 when a worklist holds somebody, else 0.
+ * @returns exit status: 1 when a site failed, else 10 when a worklist holds somebody or a correction went wrong, else 0.
  */
 export async function sweepCommand(
   flags: SweepFlags,
@@ -51,6 +54,10 @@ export async function sweepCommand(
         parts.stdout.write(`${workOrder(order)}\n`)
         orders.push({ ...order, unsettled: [] })
         climbs ||= worklist.length > 0
+        parts.stdout.write(listText('Corrections:', correctionLines(sheet.corrections)))
+        parts.stdout.write(`${workOrder({ replay, site, window, worklist, unsettled })}\n`)
+        parts.stdout.write(await newsText(archive, sheet))
+        climbs ||= worklist.length > 0 || sheet.corrections.some(isAlarm)
       } catch (error) {
         progress.clear()
         failed = true
@@ -64,6 +71,19 @@ export async function sweepCommand(
   if (orders.length > 1) parts.stdout.write(fleetRanking(orders))
   if (failed) return FAILED
   return climbs ? SOMEONE_SHOULD_CLIMB : NOTHING_TO_DO
+}
+
+/** What the sheet says that the one before it did not. */
+async function newsText({ replays }: Archive, sheet: ScoreSheet): Promise<string> {
+  const news = await replays.news(sheet.replay)
+  if (news?.since == null) return ''
+  const lines = newsLines(news)
+  const title = `New since replay ${news.since}:`
+  return lines.length === 0 ? `${title} nothing\n\n` : listText(title, lines)
+}
+
+function listText(title: string, lines: readonly string[]): string {
+  return lines.length === 0 ? '' : `${title}\n${lines.map((line) => `- ${line}`).join('\n')}\n\n`
 }
 
 function checkFlags({ site, all, month, from, to }: SweepFlags): void {

@@ -1,7 +1,8 @@
 import type { FastifyReply } from 'fastify'
 import { Type, type TSchema } from 'typebox'
-import type { EntryList } from '../setup/index.ts'
-import { SiteFile } from '../sheet/index.ts'
+import type { EntryList, SiteEntry } from '../setup/index.ts'
+import type { Replays } from '../replay/contract.ts'
+import { CorrectionProof, SiteFile } from '../sheet/index.ts'
 import {
   addressOf,
   ETAG,
@@ -19,6 +20,10 @@ import { jsonBody } from './log-bodies.ts'
 import { problemResponses } from './problem.ts'
 import type { SiteRouteParts } from './site-routes.ts'
 import type { TypedServer } from './typed-server.ts'
+
+export interface EntryRouteParts extends SiteRouteParts {
+  readonly replays: Pick<Replays, 'proofs'>
+}
 
 const LISTS: Readonly<Record<EntryList, { one: string; Name: string; meaning: string }>> = {
   corrections: {
@@ -39,17 +44,22 @@ const LISTS: Readonly<Record<EntryList, { one: string; Name: string; meaning: st
 }
 
 /** The lists of a site file that grow entry by entry: corrections, events, times that are left out. */
-export function entryRoutes(app: TypedServer, parts: SiteRouteParts): void {
+export function entryRoutes(app: TypedServer, parts: EntryRouteParts): void {
   for (const list of Object.keys(LISTS) as EntryList[]) listRoutes(app, parts, list)
 }
 
-function listRoutes(app: TypedServer, { setup, idleMs }: SiteRouteParts, list: EntryList): void {
+const Proof = Type.Union([CorrectionProof, Type.Null()], {
+  description: 'what became of it, by the newest replay that could judge it; null: no replay holds its time',
+})
+
+function listRoutes(app: TypedServer, { setup, idleMs, replays }: EntryRouteParts, list: EntryList): void {
   const { one, Name: upper, meaning } = LISTS[list]
   const Bare = SiteFile.properties[list].items as TSchema & { properties: Record<string, TSchema> }
   const Entry = Type.Object({
     id: Type.String({ description: 'follows from what the entry says: the same entry, the same id' }),
     ...Bare.properties,
   })
+  const Listed = list === 'corrections' ? Type.Object({ ...Entry.properties, proof: Proof }) : Entry
   const path = `/v1/sites/:site/${list}`
   app.post(
     path,
@@ -93,19 +103,24 @@ function listRoutes(app: TypedServer, { setup, idleMs }: SiteRouteParts, list: E
         operationId: `list${upper}s`,
         tags: ['sites'],
         summary: `List \`${list}\` of a site`,
-        description: 'All of them, in the order of time.',
+        description:
+          list === 'corrections'
+            ? 'All of them, in the order of time, with what became of each: `proof` is that of the newest replay that could judge it.'
+            : 'All of them, in the order of time.',
         params: SiteParams,
         headers: IfNoneMatch,
         response: {
-          200: jsonResponse('The list', Type.Object({ [list]: Type.Array(Entry) }), ETAG),
+          200: jsonResponse('The list', Type.Object({ [list]: Type.Array(Listed) }), ETAG),
           ...NOT_MODIFIED,
           ...problemResponses(['BAD_OPTION', 'SITE_NOT_FOUND', ...SERVICE_CODES]),
         },
       },
     },
     async (request, reply) => {
-      const entries = await setup.listEntries(request.params.site, list)
-      return sendTagged(request, reply, JSON.stringify({ [list]: entries }))
+      const { site } = request.params
+      const entries = await setup.listEntries(site, list)
+      const listed = list === 'corrections' ? await withProofs(site, entries, replays) : entries
+      return sendTagged(request, reply, JSON.stringify({ [list]: listed }))
     },
   )
   app.delete(
@@ -127,4 +142,22 @@ function listRoutes(app: TypedServer, { setup, idleMs }: SiteRouteParts, list: E
       return await (reply as FastifyReply).code(204).send()
     },
   )
+}
+
+async function withProofs(
+  site: string,
+  entries: readonly SiteEntry<EntryList>[],
+  replays: EntryRouteParts['replays'],
+): Promise<object[]> {
+  const proofs = entries.length === 0 ? [] : await replays.proofs(site)
+  return (entries as SiteEntry<'corrections'>[]).map((entry) => ({
+    ...entry,
+    proof:
+      proofs.find(
+        ({ turbine, at, enteredDeg }) =>
+          turbine === entry.turbine &&
+          enteredDeg === entry.enteredDeg &&
+          Date.parse(at) === Date.parse(entry.at),
+      ) ?? null,
+  }))
 }

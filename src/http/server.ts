@@ -26,6 +26,7 @@ import { ReplaySummary } from './replay-summary.ts'
 import { rowsRoute } from './rows-route.ts'
 import { ScoringGate, SenderGone, type GateLimits } from './scoring-gate.ts'
 import { siteRoutes } from './site-routes.ts'
+import { trendRoute } from './trend-route.ts'
 import type { TypedServer } from './typed-server.ts'
 import { FORM_LIMITS, type UploadLimits } from './upload.ts'
 
@@ -148,11 +149,13 @@ export async function buildServer(parts: ServerParts): Promise<TypedServer> {
   replayRoutes(app, { replays, intake, settings, upload, gate, metrics })
   rowsRoute(app, { replays })
   siteRoutes(app, { setup, idleMs: upload.idleMs })
-  entryRoutes(app, { setup, idleMs: upload.idleMs })
+  entryRoutes(app, { setup, replays, idleMs: upload.idleMs })
   logRoutes(app, { intake, setup, upload, gate, metrics })
   const latest = latestSheets(replays, setup)
   answerRoutes(app, { latest })
   worklistRoutes(app, { latest, setup })
+  answerRoutes(app, { latest: latestSheets(replays, setup), setup })
+  trendRoute(app, { replays, setup })
   healthRoutes(app, parts.ready)
   metricsRoute(app, metrics)
   app.get('/openapi.json', { schema: { hide: true } }, (_request, reply) =>

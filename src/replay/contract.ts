@@ -1,5 +1,13 @@
 import type { Readable } from 'node:stream'
-import type { ReadingOptions, ScoreSheet, ScoringSettings, SiteFile } from '../sheet/index.ts'
+import type {
+  CorrectionProof,
+  ReadingOptions,
+  ScoreSheet,
+  ScoringSettings,
+  SiteFile,
+  Trend,
+  WhatIsNew,
+} from '../sheet/index.ts'
 
 /** A log on this machine's disk, as it was sent. */
 export interface LogFile {
@@ -101,6 +109,19 @@ export interface Replays {
     site?: string
     state?: ReplayStateName
   }): Promise<{ replays: ReplayRecord[]; next: string | null }>
+  /**
+   * Months compared over the newest finished replays of a site.
+   * @param page.replays  1 to 200: how many of them at most
+   */
+  trend(site: string, page: { replays: number }): Promise<Trend>
+  /** What became of the corrections of a site, each by the newest sheet that could judge it, in the order of time. */
+  proofs(site: string): Promise<CorrectionProof[]>
+  /**
+   * What the sheet of a finished replay says that the one made before it for the same site does not; null for a sheet
+   * without a site.
+   * @throws InputError REPLAY_NOT_FOUND
+   */
+  news(id: string): Promise<WhatIsNew | null>
   /**
    * Cancels a replay that waits or runs: its state becomes `cancelled` and stays to be read. Removes any other one with
    * its rows.

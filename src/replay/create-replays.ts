@@ -20,6 +20,13 @@ import { RunningReplays, type Run } from './running-replays.ts'
 import { scoreRows, type RowsToScore } from './score-rows.ts'
 import type { Scorers } from './scorers.ts'
 import { checkStored, readStored } from './stored-window.ts'
+import { newestProofs } from './trend/newest-proofs.ts'
+import { sheetBefore, sheetsOf } from './trend/stored-sheets.ts'
+import { trendOf } from './trend/trend.ts'
+import { whatIsNew } from './trend/what-is-new.ts'
+
+/** Newest sheets that are looked through for what became of corrections. */
+const SHEETS_FOR_PROOFS = 24
 
 export interface ReplayParts {
   readonly store: Store
@@ -166,6 +173,17 @@ export function createReplays(parts: ReplayParts): Replays {
     async list(page) {
       const { replays, next } = await store.replays.list({ ...page, sheets: false })
       return { replays: replays.map((record) => withProgress(record, running)), next }
+    },
+    async trend(site, page) {
+      return trendOf(site, await sheetsOf(store, site, page.replays))
+    },
+    proofs: async (site) => newestProofs(await sheetsOf(store, site, SHEETS_FOR_PROOFS)),
+    async news(id) {
+      const record = await store.replays.get(id)
+      if (!record?.sheet) throw notFound(id, 'the id of a replay with a sheet')
+      if (record.site === null) return null
+      const sheet = JSON.parse(record.sheet) as ScoreSheet
+      return whatIsNew(sheet, await sheetBefore(store, record.site, id))
     },
     async remove(id) {
       if (running.has(id) && (await cancelled(store, id, clock()))) {

@@ -9,6 +9,10 @@ import type {
   RowsFormat,
   StoredRequest,
 } from '../../src/replay/contract.ts'
+import { newestProofs } from '../../src/replay/trend/newest-proofs.ts'
+import { trendOf } from '../../src/replay/trend/trend.ts'
+import { whatIsNew } from '../../src/replay/trend/what-is-new.ts'
+import type { ScoreSheet } from '../../src/sheet/index.ts'
 import { sheetExample } from './sheet-example.ts'
 
 /** Keeps what it is asked, reads the logs, and answers a made-up sheet: what is tested is the way there and back. */
@@ -62,6 +66,29 @@ export class ReplaysInMemory implements Replays {
       throw new InputError('REPLAY_NOT_FOUND', `replay: expected a finished one, got "${id}"`)
     const mediaType = { csv: 'text/csv', parquet: 'application/vnd.apache.parquet', arrow: 'x' }[format]
     return { stream: Readable.from([Buffer.from(`rows of ${id} as ${format}\n`)]), mediaType }
+  }
+
+  trend(site: string, page: { replays: number }) {
+    return Promise.resolve(trendOf(site, this.#sheets(site).slice(0, page.replays)))
+  }
+
+  async news(id: string) {
+    const { site } = await this.get(id)
+    const sheets = this.#sheets(site)
+    const at = sheets.findIndex(({ replay }) => replay === id)
+    return at < 0 ? null : whatIsNew(sheets[at]!, sheets[at + 1] ?? null)
+  }
+
+  proofs(site: string) {
+    return Promise.resolve(newestProofs(this.#sheets(site)))
+  }
+
+  /** Those added last first. */
+  #sheets(site: string | null): ScoreSheet[] {
+    return [...this.records.values()]
+      .filter((record) => record.site === site && record.sheet !== null)
+      .map((record) => JSON.parse(record.sheet ?? '') as ScoreSheet)
+      .reverse()
   }
 
   close() {
