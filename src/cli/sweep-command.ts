@@ -55,6 +55,7 @@ export async function sweepCommand(
         orders.push({ ...order, unsettled: [] })
         climbs ||= worklist.length > 0
         parts.stdout.write(listText('Corrections:', correctionLines(sheet.corrections)))
+        parts.stdout.write(listText(`Corrections at ${site}:`, correctionLines(sheet.corrections)))
         parts.stdout.write(`${workOrder({ replay, site, window, worklist, unsettled })}\n`)
         parts.stdout.write(await newsText(archive, sheet))
         climbs ||= worklist.length > 0 || sheet.corrections.some(isAlarm)
@@ -76,9 +77,9 @@ export async function sweepCommand(
 /** What the sheet says that the one before it did not. */
 async function newsText({ replays }: Archive, sheet: ScoreSheet): Promise<string> {
   const news = await replays.news(sheet.replay)
-  if (news?.since == null) return ''
+  if (!news || news.since === null) return ''
   const lines = newsLines(news)
-  const title = `New since replay ${news.since}:`
+  const title = `New at ${sheet.site ?? 'the site'} since replay ${news.since}:`
   return lines.length === 0 ? `${title} nothing\n\n` : listText(title, lines)
 }
 
