@@ -4,7 +4,6 @@ import type { ScoreSheet, SiteFile } from '../sheet/index.ts'
 import { fleetRanking, unsettledTurbines, workOrder, type WorkOrderSource } from '../sheet/work-order.ts'
 import { correctionLines, isAlarm } from '../sheet/correction-lines.ts'
 import { newsLines } from '../sheet/news-lines.ts'
-import { unsettledTurbines, workOrder } from '../sheet/work-order.ts'
 import type { Archive, CommandParts, SettingFlags } from './parts.ts'
 import { progressLine } from './progress-line.ts'
 import { report } from './report.ts'
@@ -51,12 +50,9 @@ export async function sweepCommand(
         const { replay, window, worklist } = sheet
         const unsettled = unsettledTurbines(sheet, file)
         const order = { replay, site, window, worklist, unsettled }
+        parts.stdout.write(listText(`Corrections at ${site}:`, correctionLines(sheet.corrections)))
         parts.stdout.write(`${workOrder(order)}\n`)
         orders.push({ ...order, unsettled: [] })
-        climbs ||= worklist.length > 0
-        parts.stdout.write(listText('Corrections:', correctionLines(sheet.corrections)))
-        parts.stdout.write(listText(`Corrections at ${site}:`, correctionLines(sheet.corrections)))
-        parts.stdout.write(`${workOrder({ replay, site, window, worklist, unsettled })}\n`)
         parts.stdout.write(await newsText(archive, sheet))
         climbs ||= worklist.length > 0 || sheet.corrections.some(isAlarm)
       } catch (error) {

@@ -154,7 +154,6 @@ export async function buildServer(parts: ServerParts): Promise<TypedServer> {
   const latest = latestSheets(replays, setup)
   answerRoutes(app, { latest })
   worklistRoutes(app, { latest, setup })
-  answerRoutes(app, { latest: latestSheets(replays, setup), setup })
   trendRoute(app, { replays, setup })
   healthRoutes(app, parts.ready)
   metricsRoute(app, metrics)
