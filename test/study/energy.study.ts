@@ -32,10 +32,10 @@ const LEAST_DEG = 4
 const KNOWN = { exponentLow: 3, exponentHigh: 3 } satisfies Partial<ScoringSettings>
 const STRATA: readonly [string, number, Partial<ScoringSettings>, Partial<FarmScenario>][] = [
   ['30 days, response and exponent known', 30, { ...KNOWN, assumedResponsePctPerDeg: 0 }, {}],
-  ['90 days, response and exponent known', 90, { ...KNOWN, assumedResponsePctPerDeg: 0 }, {}],
   ['30 days, response by neighbours', 30, KNOWN, {}],
+  ['30 days, response by neighbours, exponent doubted', 30, {}, {}],
+  ['90 days, response and exponent known', 90, { ...KNOWN, assumedResponsePctPerDeg: 0 }, {}],
   ['90 days, response by neighbours', 90, KNOWN, {}],
-  ['90 days, response by neighbours, exponent doubted', 90, {}, {}],
 ]
 
 export function energyStudy(farms: number, print: (text: string) => void): void {
