@@ -29,11 +29,37 @@ export function sheetSummary(sheet: ScoreSheet, paths: readonly string[]): strin
     ...section('Warnings', warningsOf(sheet)),
     ...section('Cautions', cautionLines(sheet.turbines)),
     '',
-    ...wrapped(CAUTION_IN_SHORT),
-    '',
+    ...visitLines(sheet),
     ...paths.map((path) => `written: ${path}`),
   ]
   return `${lines.join('\n')}\n`
+}
+
+/** Who to visit first, and with it every caution: the list may be all that somebody reads. */
+function visitLines({ worklist }: ScoreSheet): string[] {
+  if (worklist.length === 0) return [...wrapped(CAUTION_IN_SHORT), '']
+  const lines = worklist.map((one, rank) => {
+    const gain = withInterval(one.expectedAnnualMwh, one.interval95Mwh, whole)
+    const net = one.value?.firstYearNet ?? null
+    const money =
+      one.value !== null && net !== null && Number.isFinite(net)
+        ? `, ${whole(net)} ${one.value.currency} net in the first year`
+        : ''
+    const what = one.kind === 'sensor' ? one.why : `${gain} MWh a year expected${money}`
+    return `${rank + 1}. ${one.turbine}: ${what}`
+  })
+  return [
+    'Who to visit first, by what it is expected to bring (the largest estimates drawn in):',
+    ...lines.flatMap(indented),
+    '',
+    'Cautions, to be read before anybody is sent:',
+    ...CAUTIONS.flatMap((one) => indented(`- ${one}`)),
+    '',
+  ]
+}
+
+function indented(text: string): string[] {
+  return wrapped(text).map((line, k) => (k > 0 ? `  ${line}` : line))
 }
 
 /** Why an interval reaches further away from 0 than towards it. */
