@@ -41,3 +41,8 @@ export { nacelleNorth, nacelleTests, withTrueNorth, type TrueNorth } from './sen
 export { trendLine, type TrendValue } from './proof/trend-line.ts'
 export { attributions } from './sensors/attribution.ts'
 export { costAt, probabilityBeyond, shrunkOffsets, type ShrunkOffsets } from './energy/shrunk-offsets.ts'
+export { northByWakes, type WakeNorth } from './sensors/north-wakes.ts'
+export { surveyedNorth } from './sensors/north-surveyed.ts'
+export { yawDay, type YawDay } from './yaw-activity/yaw-day.ts'
+export { yawActivity } from './yaw-activity/yaw-activity.ts'
+export { yawFindings, yawTests } from './yaw-activity/yaw-findings.ts'

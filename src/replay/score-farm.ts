@@ -3,10 +3,13 @@ import {
   clockLags,
   dayBlocks,
   nacelleRecords,
+  northByWakes,
   pricesOver,
   signChecks,
+  surveyedNorth,
   type HighRateRecord,
   vaneAndAnemometer,
+  withTrueNorth,
   type TurbineEvent,
 } from '../analysis/index.ts'
 import { buildFrame, type TurbineColumns, type TurbineFrame } from '../frame/index.ts'
@@ -59,6 +62,7 @@ export async function scoreFarm(
     frame,
     signs.map(({ agrees, neighboursAgree }) => agrees === false || neighboursAgree === false),
   )
+  const wakes = northByWakes(frame, north.consensusDeg, dayWeights)
   const sensors = vaneAndAnemometer(frame, settings)
   const prices = pricesOver(site.value, {
     timezone: frame.calendar.timezone,
@@ -120,8 +124,11 @@ export async function scoreFarm(
   const [sheets, proofs] = await Promise.all([scored, proved])
   const weighed = attributions(sheets, settings.actionThresholdDeg)
   const expected = outlooks(sheets, settings.actionThresholdDeg)
+  const ties = [wakes, surveyedNorth(frame.turbines, sheets)].filter((one) => one !== null)
+  const tie = ties.sort((x, y) => x.halfWidthDeg - y.halfWidthDeg)[0] ?? null
   const turbines = sheets.map((sheet, i) => ({
     ...sheet,
+    nacelle: withTrueNorth(sheet, tie),
     attribution: weighed[i]!,
     outlook: expected[i] ?? null,
   }))
@@ -158,7 +165,15 @@ export async function scoreFarm(
       inputs: receipt.inputs,
       seed: settings.seed,
     },
-    fleet: { anemometerResponsePerDeg: response },
+    fleet: {
+      north: tie && {
+        source: tie.source,
+        shiftDeg: tie.shiftDeg,
+        interval95Deg: [tie.shiftDeg - tie.halfWidthDeg, tie.shiftDeg + tie.halfWidthDeg],
+        note: tie.note,
+      },
+      anemometerResponsePerDeg: response,
+    },
     turbines,
     worklist: worklistOf(turbines, site, settings.actionThresholdDeg),
     corrections: [],

@@ -15,7 +15,10 @@ import {
   vaneHighRate,
   vaneStatistics,
   verdictOf,
+  yawActivity,
   yawError,
+  yawFindings,
+  yawTests,
   type Block,
   type DayWeights,
   type FarmEstimate,
@@ -76,6 +79,8 @@ export function scoreTurbine(task: ScoreTask): TurbineSheet {
     heading: task.nacelle.heading,
     events: task.events,
   })
+  const yawDays = (task.highRate?.days ?? []).flatMap(({ yaw: day }) => (day ? [day] : []))
+  const yaw = yawActivity(task.frame, yawDays)
   // From here on the sheet speaks of the rows since the last change.
   const since = rowsSince(task.frame, segment.fromMs)
   const freeStream = task.freeStream?.subarray(task.frame.time.length - since.time.length) ?? null
@@ -131,19 +136,21 @@ export function scoreTurbine(task: ScoreTask): TurbineSheet {
       ...(notReady ? [notReady.finding] : []),
       ...sign.findings,
       ...nacelleFindings(task.frame, task.nacelle, segment),
+      ...yawFindings(task.frame, yaw, yawDays),
       ...task.farmFindings,
       ...yawResponse.findings,
       ...byTheSecond.findings,
     ],
     sensorTests: [
       ...nacelleTests(task.nacelle),
+      ...yawTests(yaw),
       ...task.farmTests,
       ...yawResponse.tests,
       ...byTheSecond.tests,
     ],
     attribution: { text: '', evidence: [], wouldSettle: [] },
-    nacelle: nacelleNorth(task.nacelle, offset),
-    yawActivity: {},
+    nacelle: nacelleNorth(task.nacelle, offset, yawDays),
+    yawActivity: yaw,
     advice: adviceFor(verdict, offset),
     cautions: [...curveCaution(offset), ...CAUTIONS],
   }

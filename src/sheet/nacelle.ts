@@ -54,3 +54,14 @@ export const NacelleNorth = Type.Object({
   note: Type.String(),
 })
 export type NacelleNorth = Static<typeof NacelleNorth>
+
+/** What ties the farm's consensus direction to true north. */
+export const FarmNorthTie = Type.Object({
+  source: Type.Union([Type.Literal('wakes'), Type.Literal('surveyed')]),
+  shiftDeg: Type.Number({
+    description: 'added to n - d against the consensus it gives n - d against true north',
+  }),
+  interval95Deg: Interval('of it'),
+  note: Type.String(),
+})
+export type FarmNorthTie = Static<typeof FarmNorthTie>

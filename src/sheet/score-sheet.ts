@@ -10,10 +10,11 @@ import {
   OffsetByCondition,
   PowerAgainstVane,
 } from './offset-conditions.ts'
-import { NacelleNorth } from './nacelle.ts'
+import { FarmNorthTie, NacelleNorth } from './nacelle.ts'
 import { Receipt } from './receipt.ts'
 import { ScoringSettings } from './settings.ts'
 import { Outlook, WorklistEntry } from './worklist.ts'
+import { YawActivity } from './yaw-activity.ts'
 
 /** Why a row is not used for the static offset, in the order the reasons are tested. A row has one reason or none. */
 export const SET_ASIDE_REASONS = [
@@ -227,7 +228,7 @@ export const TurbineSheet = Type.Object(
     sensorTests: Type.Array(SensorTest),
     attribution: Attribution,
     nacelle: NacelleNorth,
-    yawActivity: Type.Record(Type.String(), Type.Unknown()),
+    yawActivity: YawActivity,
     advice: Type.Array(Type.String()),
     cautions: Type.Array(Type.String()),
   },
@@ -257,6 +258,9 @@ export const ScoreSheet = Type.Object(
       seed: Type.Integer(),
     }),
     fleet: Type.Object({
+      north: Type.Union([FarmNorthTie, Type.Null()], {
+        description: 'what ties the consensus direction of the farm to true north; null: nothing does',
+      }),
       anemometerResponsePerDeg: Type.Record(
         Type.String(),
         Type.Object({

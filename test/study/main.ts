@@ -7,6 +7,7 @@ import { honestAnemometers } from './honest-anemometers.study.ts'
 import { slippedAndFrozen } from './slipped-and-frozen.study.ts'
 import { yawMoveStudy } from './yaw-moves.study.ts'
 import { northStudy } from './north.study.ts'
+import { wakeNorthStudy } from './wake-north.study.ts'
 import { neighboursStudy } from './neighbours.study.ts'
 
 /** Prints the tables of the studies: `npm run study`, or `npm run study -- honest 40`; what the number counts each study says. */
@@ -24,5 +25,6 @@ if (name === 'all' || name === 'corrections') correctionStudy(Number(count), pri
 if (name === 'all' || name === 'north') northStudy(Number(count), print)
 if (name === 'all' || name === 'faults') await faultStudy(Number(count), print)
 if (name === 'all' || name === 'energy') energyStudy(Number(count), print)
+if (['all', 'north', 'wakes'].includes(name)) wakeNorthStudy(Number(count), print)
 if (name === 'all' || name === 'slipped') await slippedAndFrozen(Number(count), print)
 if (name === 'all' || name === 'faults-1hz') await highRateFaults(Number(count), print)

@@ -1,5 +1,6 @@
 import { YawMoveWindows, type YawMoveRows } from '../offset/yaw-move-windows.ts'
 import { vaneDay, type VaneDay } from '../sensors/vane-day.ts'
+import { yawDay, type YawDay } from '../yaw-activity/yaw-day.ts'
 import { DAY_MS, type HighRateRows } from './high-rate-rows.ts'
 
 /** Rows further apart than this show no yaw moves, s. */
@@ -20,6 +21,8 @@ export interface HighRateDay {
   readonly moves: YawMoveRows
   /** What the readings of the vane show of the sensor itself. */
   readonly vane: VaneDay
+  /** What the yaw drive did; null where rows are too far apart or hold no position. */
+  readonly yaw: YawDay | null
 }
 
 /** Everything that one turbine's high-rate rows told, day by day in order of time. */
@@ -36,6 +39,7 @@ export function examineDay(rows: HighRateRows): HighRateDay {
     sampleS: rows.sampleS,
     moves: movesOf(rows),
     vane: vaneDay(rows),
+    yaw: yawDay(rows),
   }
 }
 

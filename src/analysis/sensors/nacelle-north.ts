@@ -1,5 +1,7 @@
 import { wrap180 } from '../../kernel/angle/index.ts'
+import { medianOf } from '../../kernel/stats/index.ts'
 import type { NacelleNorth, SensorTest, TurbineSheet } from '../../sheet/index.ts'
+import type { YawDay } from '../yaw-activity/yaw-day.ts'
 import type { NacelleRecord } from './nacelle-records.ts'
 
 /** What ties the farm's consensus to true north. */
@@ -26,6 +28,7 @@ const NOTES = {
 export function nacelleNorth(
   record: NacelleRecord,
   offset: Pick<TurbineSheet['staticOffset'], 'estimateDeg' | 'interval95Deg'>,
+  days: readonly YawDay[] = [],
 ): NacelleNorth {
   const last = record.levels.at(-1)
   const level = last ? { deg: last.deg, halfWidthDeg: last.halfWidthDeg } : null
@@ -43,7 +46,7 @@ export function nacelleNorth(
       interval95Deg: about(deg, halfWidthDeg),
     })),
     absolute: null,
-    resolutionDeg: Number.isNaN(record.resolutionDeg) ? null : record.resolutionDeg,
+    resolutionDeg: resolutionOf(record, days),
     note: NOTES[record.state],
   }
 }
@@ -108,4 +111,11 @@ function plusOffset(
 
 function about(deg: number, halfWidthDeg: number): (number | null)[] {
   return Number.isNaN(halfWidthDeg) ? [null, null] : [deg - halfWidthDeg, deg + halfWidthDeg]
+}
+
+/** Step of the reading: from rows of seconds where there are some. */
+function resolutionOf(record: NacelleRecord, days: readonly YawDay[]): number | null {
+  const steps = days.map(({ stepDeg }) => stepDeg).filter((step) => step > 0)
+  if (steps.length > 0) return medianOf(steps)
+  return Number.isNaN(record.resolutionDeg) ? null : record.resolutionDeg
 }
