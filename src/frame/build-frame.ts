@@ -5,6 +5,7 @@ import type { ScoringSettings, SiteFile, TurbineSetup } from '../sheet/index.ts'
 import { acrossNorth, type AcrossNorth, type LoggedAngle } from './across-north.ts'
 import { buildCalendar, type Calendar } from './calendar.ts'
 import { curveAndRange } from './curve-and-range.ts'
+import { followsNacelle, withoutPosition } from './following-position.ts'
 import type { Frame, TurbineColumns, TurbineFrame } from './frame.ts'
 import { icedAnemometers, type IcedAnemometer } from './iced-anemometer.ts'
 import { sensorSpells } from './sensor-spells.ts'
@@ -55,14 +56,16 @@ export function buildFrame(farm: readonly TurbineColumns[], request: FrameReques
 }
 
 function buildTurbine(
-  columns: TurbineColumns,
+  logged: TurbineColumns,
   setup: TurbineSetup,
   calendar: Calendar,
   request: FrameRequest,
   iced: IcedAnemometer,
 ): TurbineFrame {
-  const { time, numbers, texts } = columns
   const { settings } = request
+  const follows = followsNacelle(logged, request.intervalS * 1000)
+  const columns = follows ? logged : withoutPosition(logged)
+  const { time, numbers, texts } = columns
   const n = time.length
   const missing = new Float64Array(n).fill(NaN)
   const windSpeed = numbers['wind_speed'] ?? missing
@@ -88,6 +91,11 @@ function buildTurbine(
   )
   const rated = ratedPowerOf(power, setup, request.ratedPowerKw)
   const notes = [...angles.notes, ...air.notes]
+  if (!follows) {
+    notes.push(
+      'nacelle_position jumps about as no nacelle can: no other number leans on it, and what needs it cannot be told',
+    )
+  }
 
   const { reason, running, limited } = setAsideBeforeCurve(
     {
@@ -178,7 +186,11 @@ function buildTurbine(
     averagedAcrossNorth: angles.counts,
     spells: faults.spells,
     power,
-    nacellePosition: nacelle ?? missing,
+    // As it came, so that what is wrong with it can be told.
+    nacellePosition:
+      logged.numbers['nacelle_position'] && !follows
+        ? logged.numbers['nacelle_position']
+        : (nacelle ?? missing),
     referenceYawError: numbers['reference_yaw_error'] ?? missing,
     referenceDirection: numbers['reference_direction'] ?? missing,
     indicatedDirection,
