@@ -2,9 +2,9 @@ import { createHash } from 'node:crypto'
 import { existsSync, mkdirSync, readdirSync, readFileSync, renameSync, writeFileSync } from 'node:fs'
 import { join } from 'node:path'
 import v8 from 'node:v8'
-import { buildFrame, type Frame } from '../../src/frame/index.ts'
+import { buildFrame, type Frame, type TurbineColumns } from '../../src/frame/index.ts'
 import { simulateFarm, type FarmScenario, type SimulatedFarm } from '../../src/simulate/index.ts'
-import type { ScoringSettings } from '../../src/sheet/index.ts'
+import type { ScoringSettings, SiteFile } from '../../src/sheet/index.ts'
 
 /** Where made-up farms and worked-out results are kept; not committed. */
 export const CACHE = join(import.meta.dirname, '..', '..', '.cache', 'study')
@@ -56,32 +56,34 @@ export function simulator(): string {
 
 /** The frame as the program would build it from the farm's log and site file. */
 export function frameOf(farm: SimulatedFarm, settings: ScoringSettings): Frame {
-  const { scenario } = farm
-  return buildFrame(
-    farm.turbines.map((turbine) => ({
+  return buildFrame(columnsOf(farm), { settings, intervalS: farm.scenario.rateS, site: siteOf(farm) })
+}
+
+/** The rows of a farm with all the decimals that the simulator has. */
+export function columnsOf(farm: SimulatedFarm): TurbineColumns[] {
+  return farm.turbines.map((turbine) => ({
+    turbine: turbine.turbine,
+    time: turbine.timeMs,
+    numbers: turbine.columns,
+    texts: { status: turbine.status },
+  }))
+}
+
+/** The site file of a farm, signs stated. */
+export function siteOf({ scenario, turbines }: SimulatedFarm): SiteFile {
+  return {
+    timezone: scenario.timezone,
+    runningStatus: ['run', 'limited'],
+    turbines: turbines.map((turbine) => ({
       turbine: turbine.turbine,
-      time: turbine.timeMs,
-      numbers: turbine.columns,
-      texts: { status: turbine.status },
+      model: scenario.model,
+      ratedPowerKw: scenario.ratedPowerKw,
+      rotorDiameterM: scenario.rotorDiameterM,
+      hubHeightM: scenario.hubHeightM,
+      altitudeM: scenario.altitudeM,
+      eastingM: turbine.truth.eastingM,
+      northingM: turbine.truth.northingM,
+      vane: { logged: scenario.vaneLogged, sign: 1 as const },
     })),
-    {
-      settings,
-      intervalS: scenario.rateS,
-      site: {
-        timezone: scenario.timezone,
-        runningStatus: ['run', 'limited'],
-        turbines: farm.turbines.map((turbine) => ({
-          turbine: turbine.turbine,
-          model: scenario.model,
-          ratedPowerKw: scenario.ratedPowerKw,
-          rotorDiameterM: scenario.rotorDiameterM,
-          hubHeightM: scenario.hubHeightM,
-          altitudeM: scenario.altitudeM,
-          eastingM: turbine.truth.eastingM,
-          northingM: turbine.truth.northingM,
-          vane: { logged: scenario.vaneLogged, sign: 1 as const },
-        })),
-      },
-    },
-  )
+  }
 }
