@@ -34,31 +34,52 @@ export interface IcedAnemometer {
  * @returns one per turbine, in order; nothing where there are fewer than three turbines or no air temperature.
  */
 export function icedAnemometers(farm: readonly TurbineColumns[], intervalMs: number): IcedAnemometer[] {
-  const speeds = farm.map(({ time, numbers }) => {
-    const byTime = new Map<number, number>()
-    const speed = numbers['wind_speed']
-    if (speed) time.forEach((at, i) => byTime.set(Math.round(at / intervalMs), speed[i]!))
-    return byTime
-  })
+  const slotOf = (at: number): number => Math.round(at / intervalMs)
   const isCold = farm.some(({ numbers }) => numbers['air_temperature']?.some((value) => value <= ICE_MAX_C))
-  return farm.map((columns, k) => {
+  const readings =
+    isCold && farm.length > FEWEST_OTHERS ? sortedBySlot(farm, slotOf) : new Map<number, Float64Array>()
+  return farm.map((columns) => {
     const none = { spells: [], inside: new Uint8Array(columns.time.length) }
     const temperature = columns.numbers['air_temperature']
     const speed = columns.numbers['wind_speed']
     if (farm.length <= FEWEST_OTHERS || !isCold || !temperature || !speed) return none
-    const others = speeds.filter((_, j) => j !== k)
     const ratio = Float64Array.from(columns.time, (at, i) => {
-      const slot = Math.round(at / intervalMs)
-      const known = others.flatMap((byTime) => {
-        const value = byTime.get(slot) ?? NaN
-        return Number.isNaN(value) ? [] : [value]
-      })
-      const usual = known.length >= FEWEST_OTHERS ? medianOf(known) : NaN
+      const usual = medianOfOthers(readings.get(slotOf(at)), speed[i]!)
       if (!(usual >= COMPARED_MIN_MS)) return NaN
       return Math.log(Math.max(LEAST_SHARE, speed[i]! / usual))
     })
     return spellsOf(columns, runningMedian(ratio), temperature, intervalMs)
   })
+}
+
+/** Wind speeds of all turbines at each time, in rising order. */
+function sortedBySlot(
+  farm: readonly TurbineColumns[],
+  slotOf: (at: number) => number,
+): Map<number, Float64Array> {
+  const bySlot = new Map<number, number[]>()
+  for (const { time, numbers } of farm) {
+    const speed = numbers['wind_speed']
+    if (!speed) continue
+    for (let i = 0; i < time.length; i++) {
+      if (Number.isNaN(speed[i]!)) continue
+      const slot = slotOf(time[i]!)
+      const there = bySlot.get(slot)
+      if (there) there.push(speed[i]!)
+      else bySlot.set(slot, [speed[i]!])
+    }
+  }
+  return new Map([...bySlot].map(([slot, there]) => [slot, Float64Array.from(there).sort()]))
+}
+
+/** Median of the readings without the turbine's own; NaN with fewer than two others. */
+function medianOfOthers(sorted: Float64Array | undefined, own: number): number {
+  if (!sorted) return NaN
+  const at = Number.isNaN(own) ? sorted.length : sorted.indexOf(own)
+  const count = sorted.length - (at < sorted.length ? 1 : 0)
+  if (count < FEWEST_OTHERS) return NaN
+  const other = (rank: number): number => sorted[rank < at ? rank : rank + 1]!
+  return (other((count - 1) >> 1) + other(count >> 1)) / 2
 }
 
 function spellsOf(
