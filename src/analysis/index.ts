@@ -5,7 +5,12 @@ export { pricesOver, type Prices } from './energy/prices.ts'
 export { powerCurveTable } from './energy/power-curve-table.ts'
 export { readiness, type Block } from './sensors/readiness.ts'
 export { score, type Score } from './energy/score.ts'
-export { SHOWN_EXPONENTS, staticOffset, type StaticOffsetAnswer } from './offset/static-offset.ts'
+export {
+  OWN_ANEMOMETER,
+  SHOWN_EXPONENTS,
+  staticOffset,
+  type StaticOffsetAnswer,
+} from './offset/static-offset.ts'
 export { vaneStatistics } from './vane-statistics.ts'
 export { verdictOf, type Verdict } from './offset/verdict.ts'
 export { yawError } from './yaw-error.ts'

@@ -14,6 +14,7 @@ import {
   staticOffset,
   vaneHighRate,
   vaneStatistics,
+  OWN_ANEMOMETER,
   verdictOf,
   yawActivity,
   yawError,
@@ -166,6 +167,17 @@ function judge(block: Block | null, answer: StaticOffsetAnswer, settings: Scorin
   if (answer.disagreement !== null) {
     return { verdict: 'undetermined', code: 'estimates-disagree', text: answer.disagreement }
   }
+  if (answer.standing && isResponseOpen(answer, settings)) {
+    const [low, high] = answer.standing.standingInterval95Deg
+    return {
+      verdict: 'undetermined',
+      code: 'response-not-known',
+      text:
+        `the response of the anemometer to the vane is not known, and 0.1 % per degree of it moves m by 3.3 degrees: ` +
+        `${answer.standing.standingDeg.toFixed(1)} degrees (95 %: ${low.toFixed(1)} to ${high.toFixed(1)}) rests on a range of responses; ` +
+        'neighbours, a reference instrument, a month at 1 Hz, or a known response would settle it',
+    }
+  }
   if (answer.standing) {
     return verdictOf(
       answer.standing.standingDeg,
@@ -179,4 +191,12 @@ function judge(block: Block | null, answer: StaticOffsetAnswer, settings: Scorin
   }
   const failure = answer.failure ?? { code: 'no-fit', text: 'no estimate' }
   return { verdict: 'undetermined', code: failure.code, text: failure.text }
+}
+
+/**
+ * Whether the estimate in front takes the anemometer's response from the range of a setting. Farms have been seen at the end of any such
+ * range, all turbines alike: there an interval says how far m may be off, and is no ground for a climb.
+ */
+function isResponseOpen({ sheet }: StaticOffsetAnswer, settings: ScoringSettings): boolean {
+  return settings.assumedResponsePctPerDeg === null && sheet.method === OWN_ANEMOMETER
 }

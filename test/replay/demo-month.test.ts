@@ -209,6 +209,7 @@ test('a lone turbine whose response is not known is undetermined, and the sheet 
   expect(high - low).toBeGreaterThan(2 * 9) // 9 to 13 degrees either way
   expect(high - low).toBeLessThan(2 * 13)
   expect(verdict).toBe('undetermined')
+  expect(lone.turbines[0]!.reasonCode).toBe('response-not-known')
   expect(score).toBeNull()
   expect(staticOffset.furtherNote).toMatch(/reference.*neighbours.*1 Hz/)
   expect(lone.worklist).toEqual([])

@@ -19,6 +19,8 @@ import { NORMAL_95 } from './resampled-spread.ts'
 
 /** Exponents shown side by side: a low field value, the disk rule, and the cos-cubed rule. */
 export const SHOWN_EXPONENTS = [1.4, 2, 3] as const
+/** The estimate that takes the anemometer's response from a setting. */
+export const OWN_ANEMOMETER = 'power against vane, own anemometer'
 /**
  * Slow vane noise that the rotor does not feel flattens power against vane, so that m comes out too small by 2 to 9 %
  * (measured on simulated farms). Without a second vane its size is not known: half-width as a share of |m|.
@@ -136,7 +138,7 @@ export function staticOffset(
   })
   const method = anemometer.measured
     ? 'power against vane, own anemometer corrected for its response'
-    : 'power against vane, own anemometer'
+    : OWN_ANEMOMETER
   // All of them read the same power with the same exponent, which therefore cannot part them.
   const own = { offsetDeg, halfWidthDeg: offsetHalf }
   const others = request.farmEstimates ?? []
