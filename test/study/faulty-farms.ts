@@ -108,8 +108,13 @@ export async function sheetOf(farm: SimulatedFarm, fine?: SimulatedFarm): Promis
   )
 }
 
+/** What the rows of a second of a turbine told: a sound one is looked at once. */
+const records = new WeakMap<SimulatedTurbine, HighRateRecord>()
+
 function examined(frames: readonly TurbineFrame[], fine: SimulatedFarm): HighRateRecord[] {
   return frames.map((frame, i) => {
+    const known = records.get(fine.turbines[i]!)
+    if (known) return known
     const { turbine, time, numbers } = loggedColumns(fine, fine.turbines[i]!)
     const channels = HIGH_RATE_CHANNELS.filter((name) => name in numbers)
     const days: HighRateRecord['days'][number][] = []
@@ -122,7 +127,9 @@ function examined(frames: readonly TurbineFrame[], fine: SimulatedFarm): HighRat
       }
       days.push(examineDay(highRateRows(frame, dayMs, span)))
     }
-    return { turbine, days }
+    const record = { turbine, days }
+    records.set(fine.turbines[i]!, record)
+    return record
   })
 }
 
