@@ -100,12 +100,49 @@ test('the intervals of the turbines that stand off hold the truth, and the estim
 test('the energy account is that of the simulation', () => {
   for (const truth of DEMO_TRUTH.turbines) {
     const { producedMwh, static: loss } = turbineOf(sheet, truth.turbine).energyLoss
-    // Rows that by status do not run, or lost a cell, are not counted: up to 0.9 % of this month.
+    // Rows that by status do not run, or lost a cell, are not counted: up to 0.9 % of this month; nor those in which the
+    // vane of Q03 stood still, in strong wind: 3 % more.
     expect(producedMwh! / truth.producedMwh - 1, truth.turbine).toBeLessThan(0.001)
-    expect(producedMwh! / truth.producedMwh - 1, truth.turbine).toBeGreaterThan(-0.01)
+    expect(producedMwh! / truth.producedMwh - 1, truth.turbine).toBeGreaterThan(
+      truth.turbine === 'Q03' ? -0.04 : -0.01,
+    )
     if (turbineOf(sheet, truth.turbine).verdict !== 'offset') continue
     expect(loss.windowInterval95Mwh[0], truth.turbine).toBeLessThan(truth.lostStaticMwh)
     expect(loss.windowInterval95Mwh[1], truth.turbine).toBeGreaterThan(truth.lostStaticMwh)
+  }
+})
+
+test('the five faults of the month are named with their kind and time, and no sensor besides', () => {
+  const HOUR_MS = 3_600_000
+  const expected = {
+    'vane-iced': ['vane', 'icing'],
+    'nacelle-shift': ['nacelle-position', 'position-step'],
+    'anemometer-gain': ['anemometer', 'gain-drift'],
+    'vane-noise': ['vane', 'noise-changed'],
+    'nacelle-zero-lost': ['nacelle-position', 'zero-lost'],
+  }
+  expect(DEMO_TRUTH.faults.map(({ kind }) => kind).sort()).toEqual(Object.keys(expected).sort())
+  for (const { turbine, kind, from } of DEMO_TRUTH.faults) {
+    const { sensors, attribution } = turbineOf(sheet, turbine)
+    const told = sensors.filter(({ severity }) => severity !== 'info')
+    expect(
+      told.map((one) => [one.sensor, one.kind]),
+      turbine,
+    ).toEqual([expected[kind as keyof typeof expected]])
+    // Gain is told in spells of six hours, the others by rows.
+    const { at, steps } = told[0]!.detail as { at?: string; steps?: { at: string }[] }
+    const since = at ?? steps?.[0]?.at ?? told[0]!.from!
+    expect(Math.abs(Date.parse(since) - Date.parse(from)), kind).toBeLessThanOrEqual(12 * HOUR_MS)
+    expect(attribution.evidence.length, turbine).toBeGreaterThan(0)
+    expect(attribution.wouldSettle[0], turbine).toMatch(/^At the desk/)
+  }
+  const faulty = new Set(DEMO_TRUTH.faults.map(({ turbine }) => turbine))
+  for (const { turbine, sensors } of sheet.turbines) {
+    if (!faulty.has(turbine))
+      expect(
+        sensors.filter(({ severity }) => severity !== 'info'),
+        turbine,
+      ).toEqual([])
   }
 })
 

@@ -18,6 +18,7 @@ const json = (path: string): unknown => JSON.parse(readFileSync(join(ROOT, path)
 export const DEMO_SITE = json('data-demo/quern-hill.site.json') as SiteFile
 export const DEMO_TRUTH = json('data-demo/quern-hill.truth.json') as {
   log: { dataLines: number; rows: number; cut: number; unreadable: number; repeated: number }
+  faults: { turbine: string; kind: string; from: string; to: string }[]
   turbines: {
     turbine: string
     offsetDeg: number

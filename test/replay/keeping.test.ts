@@ -259,5 +259,9 @@ test('a vane that stands still blocks its turbine and no other', async () => {
   expect(turbines[0]!.sensors).toHaveLength(1)
   expect(turbines[0]!.staticOffset.estimateDeg).toBeNull()
   expect(turbines[1]).toMatchObject({ turbine: 'Q06', verdict: 'offset' })
-  expect(worklist.map(({ turbine }) => turbine)).toEqual(['Q06'])
+  // The vane is a reason to go there, behind the turbine that stands off, and no number is given to enter.
+  expect(worklist.map(({ turbine, addToVaneDeg }) => [turbine, addToVaneDeg === null])).toEqual([
+    ['Q06', false],
+    ['Q04', true],
+  ])
 })
