@@ -57,15 +57,9 @@ export function warningsOf(sheet: ScoreSheet): { turbine: string; name: string; 
 
 export async function faultStudy(farms: number, print: (text: string) => void): Promise<void> {
   const tallies = FAULT_CASES.map(newTally)
-  const alarms = new Map<string, number>()
-  let soundDays = 0
+  await soundFarms(farms, print)
   for (let k = 0; k < farms; k++) {
-    const sound = cachedFarm(randomScenario(FIRST_SEED + k, { turbines: TURBINES, days: DAYS }))
-    soundDays += TURBINES * DAYS
-    for (const { turbine, name, text } of warningsOf(await sheetOf(sound))) {
-      alarms.set(name, (alarms.get(name) ?? 0) + 1)
-      print(`<!-- false alarm: farm ${k}, ${turbine}, ${text} -->`)
-    }
+    const sound = soundFarm(k)
     for (const cases of inGroups(FAULT_CASES, k)) {
       await tryCases(sound, k, cases, (fault, i, found) => {
         tallies[i]!.add(found)
@@ -78,12 +72,27 @@ export async function faultStudy(farms: number, print: (text: string) => void): 
   FAULT_CASES.forEach((one, i) => {
     print(lineOf(one, tallies[i]!))
   })
-  const years = soundDays / YEAR_DAYS
+}
+
+/** How often a sound turbine is warned of. */
+export async function soundFarms(farms: number, print: (text: string) => void): Promise<void> {
+  const alarms = new Map<string, number>()
+  for (let k = 0; k < farms; k++) {
+    for (const { turbine, name, text } of warningsOf(await sheetOf(soundFarm(k)))) {
+      alarms.set(name, (alarms.get(name) ?? 0) + 1)
+      print(`<!-- false alarm: farm ${k}, ${turbine}, ${text} -->`)
+    }
+  }
+  const years = (farms * TURBINES * DAYS) / YEAR_DAYS
   const total = [...alarms.values()].reduce((sum, n) => sum + n, 0)
   print(
-    `\nSound turbines: ${years.toFixed(1)} turbine-years, ${total} findings at warn or fault, ${(total / years).toFixed(2)} a turbine-year` +
+    `Sound turbines: ${years.toFixed(1)} turbine-years, ${total} findings at warn or fault, ${(total / years).toFixed(2)} a turbine-year` +
       (total > 0 ? ` (${[...alarms].map(([name, n]) => `${name} ${n}`).join(', ')})` : ''),
   )
+}
+
+function soundFarm(k: number): SimulatedFarm {
+  return cachedFarm(randomScenario(FIRST_SEED + k, { turbines: TURBINES, days: DAYS }))
 }
 
 /** Groups of cases that are tried together, each at a turbine of its own; cases that chill the farm together. */
@@ -169,10 +178,11 @@ function changeIn(turbine: TurbineSheet, fromMs: number): Found | null {
   return errorH < 96 ? { warned: true, errorH } : null
 }
 
-/** A step says when it happened, and between which rows; others say when they began. */
+/** A step says when it happened, or the first of several did; others say when they began. */
 function startOf({ from, detail }: SensorFinding): number {
-  const at = detail['at']
-  if (typeof at === 'string') return Date.parse(at)
+  const { at, steps } = detail as { at?: unknown; steps?: { at?: unknown }[] }
+  const dated = at ?? (Array.isArray(steps) ? steps[0]?.at : undefined)
+  if (typeof dated === 'string') return Date.parse(dated)
   return from === null ? -Infinity : Date.parse(from)
 }
 
