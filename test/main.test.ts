@@ -149,7 +149,7 @@ test.skipIf(!BUILT)(
     expect(err).toBe('')
     expect(status).toBe(0) // three days settle nothing
     expect(out).toContain('Worklist of mill-farm, ')
-    expect(out).toContain('Without a verdict, and so neither on the list nor aligned:')
+    expect(out).toContain('Without a verdict, and so neither on the list nor aligned; most at stake first:')
     const second = await startService()
     const worklist: unknown = await (await fetch(`${second.url}/v1/sites/mill-farm/worklist`)).json()
     expect(worklist).toMatchObject({ site: 'mill-farm', worklist: [] })

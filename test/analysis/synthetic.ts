@@ -54,7 +54,9 @@ export function syntheticColumns(options: Synthetic = {}): TurbineColumns {
   for (let i = 0; i < n; i++) {
     if (i % 144 === 0) level = dayNoise * draw()
     gust = 0.9 * gust + 0.3 * draw()
-    const speed = Math.min(11.5, Math.max(4.5, 8 + 2.4 * Math.sin(i / 50) + gust))
+    // Turned back at the ends, not cut: an anemometer that repeats itself counts as stuck.
+    const drawn = 8 + 2.4 * Math.sin(i / 50) + gust
+    const speed = drawn > 11.5 ? 23 - drawn : drawn < 4.5 ? 9 - drawn : drawn
     time[i] = Date.parse('2026-01-01T00:00:00Z') + i * TEN_MINUTES
     vane[i] = meanVaneDeg + Math.max(-12, Math.min(12, vaneSdDeg * draw()))
     const faced = Math.cos((vane[i]! + offsetDeg) * RAD) ** (exponent / 3)

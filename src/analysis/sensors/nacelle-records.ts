@@ -67,6 +67,9 @@ export function nacelleRecords(frame: Frame, reversed: readonly boolean[]): Farm
   const stuck = hushStuck(frame, grid, heard)
   const state = frame.turbines.map((turbine, i): NacelleRecord['state'] => {
     if (turbine.nacellePosition.every((position) => Number.isNaN(position))) return 'missing'
+    // The frame gives no direction where the position follows no nacelle.
+    const told = (values: Float64Array): boolean => values.some((value) => !Number.isNaN(value))
+    if (told(turbine.vane) && !told(turbine.indicatedDirection)) return 'unrelated'
     return reversed[i] ? 'reversed' : 'compared'
   })
   hushUnsteady(frame, grid, heard, state)
