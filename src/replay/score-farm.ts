@@ -2,13 +2,15 @@ import {
   attributions,
   clockLags,
   dayBlocks,
+  joinReports,
   nacelleRecords,
   northByWakes,
   pricesOver,
   signChecks,
   surveyedNorth,
-  type HighRateRecord,
   vaneAndAnemometer,
+  vaneIdleBias,
+  type HighRateRecord,
   withTrueNorth,
   type TurbineEvent,
 } from '../analysis/index.ts'
@@ -63,7 +65,8 @@ export async function scoreFarm(
     signs.map(({ agrees, neighboursAgree }) => agrees === false || neighboursAgree === false),
   )
   const wakes = northByWakes(frame, north.consensusDeg, dayWeights)
-  const sensors = vaneAndAnemometer(frame, settings)
+  const idle = vaneIdleBias(frame, north.consensusDeg)
+  const sensors = vaneAndAnemometer(frame, settings).map((report, i) => joinReports([report, idle[i]!]))
   const prices = pricesOver(site.value, {
     timezone: frame.calendar.timezone,
     fromMs: frame.fromMs,
