@@ -58,6 +58,19 @@ export async function scoreFarm(
 
   const highRate = request.examine ? await request.examine(frame.turbines) : []
   onTurbine(0, frame.turbines.length)
+  const { intervalS: rowS, fromMs, toMs, turbines: rows } = frame
+  // Begun first: where there are worker threads it goes on beside the questions below.
+  const compared =
+    settings.assumedResponsePctPerDeg === null
+      ? scorers.compare({
+          farm: { intervalS: rowS, fromMs, toMs, turbines: rows },
+          days,
+          dayWeights,
+          settings,
+        })
+      : null
+  // Whoever fails first is told; a comparison that fails beside it must not end the process.
+  compared?.catch(() => undefined)
   const signs = signChecks(frame)
   const clocks = clockLags(frame)
   const north = nacelleRecords(
@@ -72,16 +85,7 @@ export async function scoreFarm(
     fromMs: frame.fromMs,
     toMs: frame.toMs,
   })
-  const { intervalS: rowS, fromMs, toMs, turbines: rows } = frame
-  const neighbours =
-    settings.assumedResponsePctPerDeg === null
-      ? await scorers.compare({
-          farm: { intervalS: rowS, fromMs, toMs, turbines: rows },
-          days,
-          dayWeights,
-          settings,
-        })
-      : null
+  const neighbours = await compared
 
   let done = 0
   const scored = Promise.all(
