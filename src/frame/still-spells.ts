@@ -108,9 +108,9 @@ export function stillSpells(input: StillInput): StillSpells {
   spells.sort((a, b) => a.fromMs - b.fromMs)
   for (let i = 0; i < n; i++) {
     if (inside[i] === 1) continue
-    const near = (j: number): boolean =>
-      inside[j] === 1 && Math.abs(time[j]! - time[i]!) <= 1.5 * input.intervalMs
-    if (near(i - 1) || near(i + 1)) beside[i] = 1
+    const before = inside[i - 1] === 1 && time[i]! - time[i - 1]! <= 1.5 * input.intervalMs
+    const after = inside[i + 1] === 1 && time[i + 1]! - time[i]! <= 1.5 * input.intervalMs
+    if (before || after) beside[i] = 1
   }
   return { spells, inside, beside }
 }

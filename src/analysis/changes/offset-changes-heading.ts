@@ -156,8 +156,11 @@ export function medianOfOthers(local: GridChannel, cleaned: GridChannel): GridCh
     for (let i = 0; i < k; i++) {
       const others = order.length - (rank[i]! < order.length ? 1 : 0)
       if (others < 2) continue
-      const at = (r: number): number => cleaned[order[r >= rank[i]! ? r + 1 : r]!]![t]!
-      out[i]![t] = (at((others - 1) >> 1) + at(others >> 1)) / 2
+      const lower = (others - 1) >> 1
+      const upper = others >> 1
+      const below = cleaned[order[lower + (lower >= rank[i]! ? 1 : 0)]!]![t]!
+      const above = cleaned[order[upper + (upper >= rank[i]! ? 1 : 0)]!]![t]!
+      out[i]![t] = (below + above) / 2
     }
   }
   return out

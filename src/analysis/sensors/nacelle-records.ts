@@ -1,7 +1,7 @@
 import { RAD_PER_DEG, wrap180, wrap360 } from '../../kernel/angle/index.ts'
 import { medianOf } from '../../kernel/stats/index.ts'
 import { resolutionOf } from '../../kernel/motion/index.ts'
-import type { Frame } from '../../frame/index.ts'
+import type { Frame, TurbineFrame } from '../../frame/index.ts'
 import {
   headingSteps,
   runningDirection,
@@ -58,6 +58,7 @@ export interface FarmNorth {
  */
 export function nacelleRecords(frame: Frame, reversed: readonly boolean[]): FarmNorth {
   const grid = farmGrid(frame)
+  if (frame.turbines.length < 3) return withoutOthers(frame, grid, reversed)
   const heard = runningDirection(grid).map((values, i) => {
     if (reversed[i]) return new Float64Array(values.length).fill(NaN)
     const still = vaneStill(frame.turbines[i]!)
@@ -97,16 +98,40 @@ export function nacelleRecords(frame: Frame, reversed: readonly boolean[]): Farm
       slips,
       stuck: stuck[i]!,
       jumps: positionJumps(turbine, atRows(grid, i, consensusDeg)),
-      resolutionDeg:
-        turbine.intervalS <= SINGLE_READINGS_S
-          ? resolutionOf(
-              turbine.time.map((ms) => ms / 1000),
-              turbine.nacellePosition,
-            ).stepDeg || NaN
-          : NaN,
+      resolutionDeg: resolutionOfReading(turbine),
     }
   })
   return { turbines, consensusDeg }
+}
+
+/** Two turbines tell of neither which one is off, one of nothing. */
+function withoutOthers(frame: Frame, grid: FarmGrid, reversed: readonly boolean[]): FarmNorth {
+  const consensusDeg = new Float64Array(grid.length).fill(NaN)
+  const turbines = frame.turbines.map((turbine, i): NacelleRecord => {
+    const logged = turbine.nacellePosition.some((position) => !Number.isNaN(position))
+    return {
+      state: !logged ? 'missing' : reversed[i] ? 'reversed' : 'alone',
+      heading: null,
+      levels: [],
+      zeroLost: null,
+      slips: [],
+      stuck: [],
+      jumps: positionJumps(turbine, atRows(grid, i, consensusDeg)),
+      resolutionDeg: resolutionOfReading(turbine),
+    }
+  })
+  return { turbines, consensusDeg }
+}
+
+/** Means of an interval show no step of the reading. */
+function resolutionOfReading({ intervalS, time, nacellePosition }: TurbineFrame): number {
+  if (intervalS > SINGLE_READINGS_S) return NaN
+  return (
+    resolutionOf(
+      time.map((ms) => ms / 1000),
+      nacellePosition,
+    ).stepDeg || NaN
+  )
 }
 
 /** Values on the farm's clock, at the rows of one turbine. */
