@@ -2,6 +2,7 @@ import { changeStudy } from './change-points.study.ts'
 import { correctionStudy } from './corrections.study.ts'
 import { faultStudy, soundFarms } from './faults.study.ts'
 import { energyStudy } from './energy.study.ts'
+import { halvesStudy } from './halves.study.ts'
 import { highRateFaults } from './high-rate-faults.study.ts'
 import { honestAnemometers } from './honest-anemometers.study.ts'
 import { slippedAndFrozen } from './slipped-and-frozen.study.ts'
@@ -28,4 +29,5 @@ if (name === 'all' || name === 'energy') energyStudy(Number(count), print)
 if (['all', 'north', 'wakes'].includes(name)) wakeNorthStudy(Number(count), print)
 if (name === 'all' || name === 'slipped') await slippedAndFrozen(Number(count), print)
 if (name === 'all' || name === 'faults-1hz') await highRateFaults(Number(count), print)
+if (name === 'all' || name === 'halves') halvesStudy(Number(count), print)
 if (name === 'sound') await soundFarms(Number(count), print)
