@@ -26,8 +26,8 @@ export function halvesStudy(farms: number, print: (text: string) => void): void 
       }),
     )
     const [first, second] = [misalignments(half(farm, 0)), misalignments(half(farm, 1))]
-    const apart = first!
-      .map((value, i) => Math.abs(value - second![i]!))
+    const apart = first
+      .map((value, i) => Math.abs(value - second[i]!))
       .filter((value) => !Number.isNaN(value))
     medians.push(median(apart))
     all.push(...apart)
